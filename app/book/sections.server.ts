@@ -1,0 +1,97 @@
+import { createHash } from 'node:crypto'
+import type { Database } from '~database/connection.server'
+import { recordHistory } from '~/projects/history.server'
+import { madeFrom, type SectionKey, type SectionStatus, sections } from './sections'
+
+interface SectionRow {
+  section: SectionKey
+  digest: string | null
+  changed_at: Date | null
+  checked_digest: string | null
+  checked_at: Date | null
+  checked_by_name: string | null
+}
+
+function combined(section: SectionKey, digests: Map<SectionKey, string | null>): string {
+  const hash = createHash('sha256')
+  for (const key of [section, ...madeFrom[section]]) hash.update(`${key}=${digests.get(key) ?? ''};`)
+  return hash.digest('hex')
+}
+
+async function sectionRows(db: Database, projectId: number): Promise<SectionRow[]> {
+  return db('book_sections')
+    .leftJoin('users', 'users.id', 'book_sections.checked_by')
+    .where('project_id', projectId)
+    .select('section', 'digest', 'changed_at', 'checked_digest', 'checked_at', 'users.name as checked_by_name')
+}
+
+/**
+ * Records what a section holds now; call it in the transaction of the change.
+ * `content` is anything JSON can hold; its SHA-256 becomes the section's digest, null when there is nothing.
+ */
+export async function recordSection(
+  db: Database,
+  projectId: number,
+  section: SectionKey,
+  content: unknown,
+  userId: number,
+): Promise<void> {
+  const digest =
+    content === null ? null : createHash('sha256').update(JSON.stringify(content)).digest('hex')
+  const values = { digest, changed_at: new Date(), changed_by: userId }
+  await db('book_sections')
+    .insert({ project_id: projectId, section, ...values })
+    .onConflict(['project_id', 'section'])
+    .merge(values)
+}
+
+/** The state of every section of a book, in order: what the spine shows. */
+export async function sectionStates(db: Database, projectId: number): Promise<SectionStatus[]> {
+  const rows = new Map((await sectionRows(db, projectId)).map((row) => [row.section, row]))
+  const digests = new Map([...rows].map(([key, row]) => [key, row.digest]))
+  return sections.map(({ key }) => {
+    const row = rows.get(key)
+    const state = !row?.digest
+      ? 'empty'
+      : !row.checked_digest
+        ? 'drafted'
+        : row.checked_digest === combined(key, digests)
+          ? 'checked'
+          : 'changed since check'
+    return {
+      key,
+      state,
+      changedAt: row?.changed_at ?? null,
+      checkedAt: row?.checked_at ?? null,
+      checkedBy: row?.checked_by_name ?? null,
+    }
+  })
+}
+
+/** One digest over the named sections: tells whether a run or a package still belongs to the book as it stands. */
+export async function digestOf(db: Database, projectId: number, keys: readonly SectionKey[]): Promise<string> {
+  const rows = await sectionRows(db, projectId)
+  const digests = new Map(rows.map((row) => [row.section, row.digest]))
+  const hash = createHash('sha256')
+  for (const key of keys) hash.update(`${key}=${digests.get(key) ?? ''};`)
+  return hash.digest('hex')
+}
+
+/** Marks a section as checked in its present state. Returns false when there is nothing in it to check. */
+export async function checkSection(
+  db: Database,
+  projectId: number,
+  section: SectionKey,
+  userId: number,
+): Promise<boolean> {
+  return db.transaction(async (trx) => {
+    const rows = await trx('book_sections').where({ project_id: projectId }).forUpdate().select('section', 'digest')
+    const digests = new Map<SectionKey, string | null>(rows.map((row) => [row.section, row.digest]))
+    if (!digests.get(section)) return false
+    await trx('book_sections')
+      .where({ project_id: projectId, section })
+      .update({ checked_digest: combined(section, digests), checked_at: new Date(), checked_by: userId })
+    await recordHistory(trx, { projectId, userId, section, action: 'checked section', subject: section })
+    return true
+  })
+}
