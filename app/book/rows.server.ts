@@ -11,6 +11,8 @@ export interface RowKind {
   schema: ZodType
   /** What the history calls a row: its name, usually. */
   label: (body: never) => string
+  /** What the section holds besides rows (imports, say), for its digest. */
+  alsoHolds?: (db: Database, projectId: number) => Promise<unknown>
 }
 
 interface StoredRow {
@@ -161,9 +163,11 @@ export async function saveRows(
         reason: options.reason,
       })
     }
-    const touched = new Set(changes.map((change) => kinds[change.kind]?.section))
-    for (const section of touched) {
-      if (section) await recordSection(trx, projectId, section, await sectionContent(trx, projectId, section), userId)
+    const touched = new Map(
+      changes.map((change) => [kinds[change.kind]?.section, kinds[change.kind]?.alsoHolds] as const),
+    )
+    for (const [section, alsoHolds] of touched) {
+      if (section) await recordRowSection(trx, { projectId, section, userId, alsoHolds })
     }
     return { ok: true, rows: saved }
   })
@@ -190,11 +194,21 @@ async function nextPosition(trx: Database, projectId: number, kind: string): Pro
   return Number(row?.last ?? 0) + 1
 }
 
-async function sectionContent(trx: Database, projectId: number, section: SectionKey): Promise<unknown> {
+/**
+ * Records the digest of a section made of rows and, where it has them, other things; call it in the transaction of
+ * the change.
+ */
+export async function recordRowSection(
+  trx: Database,
+  options: { projectId: number; section: SectionKey; userId: number; alsoHolds?: RowKind['alsoHolds'] },
+): Promise<void> {
+  const { projectId, section, userId, alsoHolds } = options
   const rows = await trx('book_rows')
     .where({ project_id: projectId, section })
     .whereNull('recorded_to')
     .orderBy('id')
     .select('id', 'version')
-  return rows.length === 0 ? null : rows
+  const others = (await alsoHolds?.(trx, projectId)) ?? null
+  const content = rows.length === 0 && others === null ? null : { rows, others }
+  await recordSection(trx, projectId, section, content, userId)
 }
