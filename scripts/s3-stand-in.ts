@@ -1,0 +1,34 @@
+import { createServer } from 'node:http'
+import S3rver from 's3rver'
+import AWSAccount from 's3rver/lib/models/account.js'
+import { environment } from '../app/environment.server.ts'
+import { runUnderParent } from './services/under-parent.ts'
+
+/**
+ * The demo's object store: the S3 protocol over a folder (first argument), on loopback.
+ * It checks no signature, so everything that does not name our random access key is turned away at the door.
+ */
+const { s3 } = environment()
+const folder = process.argv[2]
+if (!folder) throw new Error('Give the folder that keeps the objects.')
+
+AWSAccount.DUMMY_ACCOUNT.createKeyPair(s3.accessKey, s3.secretKey)
+const store = new S3rver({
+  directory: folder,
+  silent: true,
+  vhostBuckets: false,
+  configureBuckets: [{ name: s3.bucket, configs: [] }],
+})
+await store.configureBuckets()
+const answer = store.callback()
+
+const server = createServer((request, response) => {
+  const named = `${request.headers.authorization ?? ''} ${decodeURIComponent(request.url ?? '')}`
+  if (!named.includes(`Credential=${s3.accessKey}/`)) {
+    response.writeHead(403).end()
+    return
+  }
+  answer(request, response)
+})
+const { hostname, port } = new URL(s3.endpoint)
+server.listen(Number(port), hostname, () => runUnderParent(() => server.close()))

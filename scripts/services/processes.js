@@ -1,0 +1,86 @@
+import { spawn } from 'node:child_process'
+import { closeSync, openSync, readFileSync } from 'node:fs'
+import { CannotStart } from './cannot-start.js'
+
+/**
+ * Starts long-running processes and stops them in the reverse order.
+ *
+ * Each gets a session of its own, so that Ctrl-C in the terminal reaches only the process that started them and
+ * the order of stopping is ours. A Node child gets a channel: it sends 'ready', and ends by itself when the
+ * channel breaks, that is when we were killed.
+ */
+export function createProcesses({ onUnexpectedEnd }) {
+  const running = []
+  let stopping
+
+  /**
+   * @param {object} what
+   * @param {string} what.name words for messages, such as "the database"
+   * @param {string} what.command
+   * @param {string[]} what.arguments
+   * @param {Record<string, string | undefined>} what.environment
+   * @param {string} [what.log] file that receives its output; without one it shares ours
+   * @param {boolean} [what.channel] whether it is a Node child that reports 'ready'
+   * @param {number} [what.patience] milliseconds that it may take to stop before it is killed
+   */
+  async function start(what) {
+    const log = what.log ? openSync(what.log, 'a', 0o600) : undefined
+    const output = log ?? 'inherit'
+    const child = spawn(what.command, what.arguments, {
+      env: what.environment,
+      stdio: what.channel ? ['ignore', output, output, 'ipc'] : ['ignore', output, output],
+      detached: true,
+    })
+    if (log !== undefined) closeSync(log)
+    const entry = { ...what, child, ended: undefined }
+    const failure = new Promise((_, reject) => {
+      child.once('error', (error) => reject(new CannotStart(`${what.name} did not start: ${error.message}`)))
+      child.once('exit', (code, signal) => {
+        entry.ended = signal ?? code
+        reject(new CannotStart(`${what.name} stopped by itself (${entry.ended}).${endOf(what.log)}`))
+      })
+    })
+    let isReady = false
+    failure.catch((error) => {
+      if (isReady && !stopping) onUnexpectedEnd(error)
+    })
+    running.push(entry)
+    if (what.channel) {
+      const ready = new Promise((resolve) => {
+        child.on('message', (message) => {
+          if (message === 'ready') resolve(undefined)
+        })
+      })
+      await Promise.race([ready, failure])
+    } else if (what.ready) {
+      await Promise.race([what.ready(() => entry.ended !== undefined), failure])
+    }
+    isReady = true
+    return child
+  }
+
+  async function stopOne(entry) {
+    if (entry.ended !== undefined || entry.child.pid === undefined) return
+    const ended = new Promise((resolve) => entry.child.once('exit', resolve))
+    entry.child.kill('SIGTERM')
+    const killer = setTimeout(() => entry.child.kill('SIGKILL'), entry.patience ?? 10_000)
+    await ended
+    clearTimeout(killer)
+  }
+
+  /** Stops everything, last started first. Calling it again waits for the same stop. */
+  function stopAll() {
+    stopping ??= (async () => {
+      for (const entry of running.toReversed()) await stopOne(entry)
+    })()
+    return stopping
+  }
+
+  return { start, stopAll }
+}
+
+function endOf(log) {
+  if (!log) return ''
+  const lines = readFileSync(log, 'utf8').trim().split('\n').slice(-12)
+  return ` The end of ${log}:\n${lines.map((line) => `  ${line}`).join('\n')}`
+}

@@ -1,0 +1,30 @@
+/**
+ * Runs something that lasts until it is told to stop, by Ctrl-C, by a closed terminal or by SIGTERM, and then
+ * stops it once, however often it is told.
+ *
+ * @param {() => Promise<void>} stop
+ * @returns {{ told: Promise<void>, stopNow: (failure?: Error) => Promise<never> }}
+ */
+import { CannotStart } from './cannot-start.js'
+
+export function untilTold(stop) {
+  let stopping = false
+
+  async function stopNow(failure) {
+    if (stopping) return
+    stopping = true
+    if (failure) report(failure)
+    else console.log('\nStopping …')
+    await stop()
+    if (!failure) console.log('Stopped.')
+    process.exit(failure ? 1 : 0)
+  }
+
+  for (const signal of ['SIGINT', 'SIGTERM', 'SIGHUP']) process.on(signal, () => stopNow())
+  return { stopNow }
+}
+
+/** Prints why something did not work: alone when the person can act on it, with its stack when it is our bug. */
+export function report(failure) {
+  console.error(failure instanceof CannotStart ? `\n${failure.message}\n` : failure)
+}
