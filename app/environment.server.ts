@@ -6,11 +6,18 @@ const flag = z.enum(['true', 'false']).transform((text) => text === 'true')
 
 /** Every environment variable that the application reads, and what it is for. */
 const variables = z.object({
-  LAVANT_MODE: z.enum(['demo', 'production']).describe('demo: invented data and local stand-ins; production: neither'),
+  LAVANT_MODE: z
+    .enum(['demo', 'production'])
+    .describe('demo: invented data and local stand-ins; production: neither'),
   LAVANT_HOST: z.string().default('127.0.0.1').describe('address the web server listens on'),
   LAVANT_PORT: port.default(3000).describe('port the web server listens on'),
   LAVANT_ADDRESS: z.url().describe('public address, the only one that mails and PDFs print'),
-  LAVANT_TRUSTED_PROXIES: z.coerce.number().int().min(0).default(0).describe('proxies in front whose forwarded address is believed'),
+  LAVANT_TRUSTED_PROXIES: z.coerce
+    .number()
+    .int()
+    .min(0)
+    .default(0)
+    .describe('proxies in front whose forwarded address is believed'),
   LAVANT_DATABASE_HOST: z.string(),
   LAVANT_DATABASE_PORT: port.default(3306),
   LAVANT_DATABASE_NAME: z.string(),
@@ -29,7 +36,10 @@ const variables = z.object({
   LAVANT_MAIL_FROM: z.string().describe('sender of every mail'),
   LAVANT_SESSION_SECRET: secret.describe('signs cookies'),
   LAVANT_CODE_SECRET: secret.describe('encrypts the sign-in flow and keys the hashes of codes'),
-  LAVANT_MAILBOX: z.string().optional().describe('demo only: folder in which the SMTP stand-in keeps received mail'),
+  LAVANT_MAILBOX: z
+    .string()
+    .optional()
+    .describe('demo only: folder in which the SMTP stand-in keeps received mail'),
 })
 
 export interface Environment {

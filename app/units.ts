@@ -63,13 +63,28 @@ export const units = {
   'l/s': { dimension: 'rate', factor: 0.001, label: 'l/s', also: ['L/s'] },
   'ft3/d': { dimension: 'rate', factor: foot ** 3 / day, label: 'ft³/d', also: ['ft3/day'] },
   'ft3/s': { dimension: 'rate', factor: foot ** 3, label: 'ft³/s', also: ['cfs'] },
-  gpm: { dimension: 'rate', factor: (231 * (foot / 12) ** 3) / 60, label: 'US gpm', also: ['us gpm', 'gal/min'] },
+  gpm: {
+    dimension: 'rate',
+    factor: (231 * (foot / 12) ** 3) / 60,
+    label: 'US gpm',
+    also: ['us gpm', 'gal/min'],
+  },
   'imp gpm': { dimension: 'rate', factor: 0.00454609 / 60, label: 'imp gpm', also: ['igpm'] },
   'ML/a': { dimension: 'rate', factor: 1000 / year, label: 'ML/a', also: ['ML/yr'] },
   'm3/d/m': { dimension: 'line flux', factor: 1 / day, label: 'm³/d per m', also: ['m3/d per m', 'm2/d'] },
   'm3/s/m': { dimension: 'line flux', factor: 1, label: 'm³/s per m', also: ['m3/s per m', 'm2/s'] },
-  'ft3/d/ft': { dimension: 'line flux', factor: foot ** 2 / day, label: 'ft³/d per ft', also: ['ft3/d per ft', 'ft2/d'] },
-  'ft3/s/ft': { dimension: 'line flux', factor: foot ** 2, label: 'ft³/s per ft', also: ['ft3/s per ft', 'ft2/s'] },
+  'ft3/d/ft': {
+    dimension: 'line flux',
+    factor: foot ** 2 / day,
+    label: 'ft³/d per ft',
+    also: ['ft3/d per ft', 'ft2/d'],
+  },
+  'ft3/s/ft': {
+    dimension: 'line flux',
+    factor: foot ** 2,
+    label: 'ft³/s per ft',
+    also: ['ft3/s per ft', 'ft2/s'],
+  },
   '1/m': { dimension: 'per length', factor: 1, label: '1/m' },
   '1/ft': { dimension: 'per length', factor: 1 / foot, label: '1/ft' },
   '1/d': { dimension: 'leakance', factor: 1 / day, label: '1/d' },
@@ -77,7 +92,11 @@ export const units = {
   kPa: { dimension: 'pressure', factor: 1000 / waterWeight, label: 'kPa' },
   hPa: { dimension: 'pressure', factor: 100 / waterWeight, label: 'hPa', also: ['mbar'] },
   bar: { dimension: 'pressure', factor: 1e5 / waterWeight, label: 'bar' },
-  psi: { dimension: 'pressure', factor: (0.45359237 * 9.80665) / (foot / 12) ** 2 / waterWeight, label: 'psi' },
+  psi: {
+    dimension: 'pressure',
+    factor: (0.45359237 * 9.80665) / (foot / 12) ** 2 / waterWeight,
+    label: 'psi',
+  },
   '-': { dimension: 'none', factor: 1, label: '–', also: [''] },
 } as const satisfies Record<string, UnitDefinition>
 
@@ -157,11 +176,15 @@ export type ParsedQuantity = { ok: true; quantity: Quantity } | { ok: false; mes
 export function parseQuantity(text: string, dimension: Dimension, columnUnit: UnitName): ParsedQuantity {
   const tidy = text.trim().replace(/−/g, '-').replace(/²/g, '2').replace(/³/g, '3')
   const match = tidy.match(/^([+-]?(?:\d[\d\s\u00a0]*(?:[.,]\d*)?|[.,]\d+)(?:[eE][+-]?\d+)?)\s*(.*)$/)
-  if (!match) return { ok: false, message: tidy === '' ? 'A number is needed.' : `"${text}" is not a number.` }
+  if (!match)
+    return { ok: false, message: tidy === '' ? 'A number is needed.' : `"${text}" is not a number.` }
   const [, digits = '', rest = ''] = match
   const compact = digits.replace(/[\s\u00a0]/g, '')
   if (/^[+-]?\d{1,3},\d{3}$/.test(compact)) {
-    return { ok: false, message: `"${compact}" may mean ${compact.replace(',', '')} or ${compact.replace(',', '.')}: write one of them.` }
+    return {
+      ok: false,
+      message: `"${compact}" may mean ${compact.replace(',', '')} or ${compact.replace(',', '.')}: write one of them.`,
+    }
   }
   const value = Number(compact.replace(',', '.'))
   if (!Number.isFinite(value)) return { ok: false, message: `"${text}" is not a number.` }
@@ -214,7 +237,11 @@ function superscript(exponent: number): string {
 }
 
 /** A quantity in a unit of choice, with its label: "14.0 m/d". */
-export function formatQuantity(quantity: Quantity, unit: UnitName = quantity.unit, decimals?: number): string {
+export function formatQuantity(
+  quantity: Quantity,
+  unit: UnitName = quantity.unit,
+  decimals?: number,
+): string {
   const label = unit === '-' ? '' : ` ${unitLabel(unit)}`
   return formatNumber(convert(quantity, unit), decimals) + label
 }

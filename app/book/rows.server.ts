@@ -1,6 +1,6 @@
 import type { ZodType } from 'zod'
-import type { Database } from '~database/connection.server'
 import { recordHistory } from '~/projects/history.server'
+import type { Database } from '~database/connection.server'
 import type { Row, RowChange, RowConflict, RowProblem, SaveAnswer } from './row'
 import type { SectionKey } from './sections'
 import { recordSection } from './sections.server'
@@ -45,9 +45,19 @@ export async function listRows<Body>(
     .orderBy('position')
     .orderBy('recorded_from')
     .orderBy('book_rows.id')
-    .select<StoredRow[]>('book_rows.id', 'version', 'kind', 'position', 'body', 'recorded_from', 'users.name as recorded_by_name')
+    .select<StoredRow[]>(
+      'book_rows.id',
+      'version',
+      'kind',
+      'position',
+      'body',
+      'recorded_from',
+      'users.name as recorded_by_name',
+    )
   if (asKnownOn) {
-    query.where('recorded_from', '<=', asKnownOn).where((or) => or.whereNull('recorded_to').orWhere('recorded_to', '>', asKnownOn))
+    query
+      .where('recorded_from', '<=', asKnownOn)
+      .where((or) => or.whereNull('recorded_to').orWhere('recorded_to', '>', asKnownOn))
   } else {
     query.whereNull('recorded_to')
   }
@@ -79,7 +89,13 @@ export async function findRow<Body>(
  */
 export async function saveRows(
   db: Database,
-  options: { projectId: number; userId: number; changes: RowChange[]; kinds: Record<string, RowKind>; reason?: string },
+  options: {
+    projectId: number
+    userId: number
+    changes: RowChange[]
+    kinds: Record<string, RowKind>
+    reason?: string
+  },
 ): Promise<SaveAnswer> {
   const { projectId, userId, changes, kinds } = options
   const problems: RowProblem[] = []
@@ -87,13 +103,21 @@ export async function saveRows(
   for (const change of changes) {
     const kind = kinds[change.kind]
     if (!kind) {
-      problems.push({ id: change.id, field: '', message: `There is no kind of row called "${change.kind}" here.` })
+      problems.push({
+        id: change.id,
+        field: '',
+        message: `There is no kind of row called "${change.kind}" here.`,
+      })
     } else if (change.op !== 'delete') {
       const body = kind.schema.safeParse(change.body)
       if (body.success) bodies.set(change, body.data)
       else {
         problems.push(
-          ...body.error.issues.map((issue) => ({ id: change.id, field: issue.path.join('.'), message: issue.message })),
+          ...body.error.issues.map((issue) => ({
+            id: change.id,
+            field: issue.path.join('.'),
+            message: issue.message,
+          })),
         )
       }
     }
@@ -173,14 +197,29 @@ export async function saveRows(
   })
 }
 
-async function currentRows(trx: Database, projectId: number, changes: RowChange[]): Promise<Map<string, StoredRow>> {
+async function currentRows(
+  trx: Database,
+  projectId: number,
+  changes: RowChange[],
+): Promise<Map<string, StoredRow>> {
   const rows = await trx('book_rows')
     .join('users', 'users.id', 'book_rows.recorded_by')
     .where({ project_id: projectId })
-    .whereIn('book_rows.id', changes.map((change) => change.id))
+    .whereIn(
+      'book_rows.id',
+      changes.map((change) => change.id),
+    )
     .whereNull('recorded_to')
     .forUpdate()
-    .select<StoredRow[]>('book_rows.id', 'version', 'kind', 'position', 'body', 'recorded_from', 'users.name as recorded_by_name')
+    .select<StoredRow[]>(
+      'book_rows.id',
+      'version',
+      'kind',
+      'position',
+      'body',
+      'recorded_from',
+      'users.name as recorded_by_name',
+    )
   return new Map(rows.map((row) => [row.id, row]))
 }
 

@@ -1,6 +1,6 @@
 import { createHash } from 'node:crypto'
-import type { Database } from '~database/connection.server'
 import { recordHistory } from '~/projects/history.server'
+import type { Database } from '~database/connection.server'
 import { madeFrom, type SectionKey, type SectionStatus, sections } from './sections'
 
 interface SectionRow {
@@ -22,7 +22,14 @@ async function sectionRows(db: Database, projectId: number): Promise<SectionRow[
   return db('book_sections')
     .leftJoin('users', 'users.id', 'book_sections.checked_by')
     .where('project_id', projectId)
-    .select('section', 'digest', 'changed_at', 'checked_digest', 'checked_at', 'users.name as checked_by_name')
+    .select(
+      'section',
+      'digest',
+      'changed_at',
+      'checked_digest',
+      'checked_at',
+      'users.name as checked_by_name',
+    )
 }
 
 /**
@@ -36,8 +43,7 @@ export async function recordSection(
   content: unknown,
   userId: number,
 ): Promise<void> {
-  const digest =
-    content === null ? null : createHash('sha256').update(JSON.stringify(content)).digest('hex')
+  const digest = content === null ? null : createHash('sha256').update(JSON.stringify(content)).digest('hex')
   const values = { digest, changed_at: new Date(), changed_by: userId }
   await db('book_sections')
     .insert({ project_id: projectId, section, ...values })
@@ -69,7 +75,11 @@ export async function sectionStates(db: Database, projectId: number): Promise<Se
 }
 
 /** One digest over the named sections: tells whether a run or a package still belongs to the book as it stands. */
-export async function digestOf(db: Database, projectId: number, keys: readonly SectionKey[]): Promise<string> {
+export async function digestOf(
+  db: Database,
+  projectId: number,
+  keys: readonly SectionKey[],
+): Promise<string> {
   const rows = await sectionRows(db, projectId)
   const digests = new Map(rows.map((row) => [row.section, row.digest]))
   const hash = createHash('sha256')
@@ -85,7 +95,10 @@ export async function checkSection(
   userId: number,
 ): Promise<boolean> {
   return db.transaction(async (trx) => {
-    const rows = await trx('book_sections').where({ project_id: projectId }).forUpdate().select('section', 'digest')
+    const rows = await trx('book_sections')
+      .where({ project_id: projectId })
+      .forUpdate()
+      .select('section', 'digest')
     const digests = new Map<SectionKey, string | null>(rows.map((row) => [row.section, row.digest]))
     if (!digests.get(section)) return false
     await trx('book_sections')

@@ -105,7 +105,8 @@ export async function getVerified(key: string, sha256: string): Promise<Buffer> 
   for await (const chunk of await getObjectStream(key)) chunks.push(chunk as Buffer)
   const buffer = Buffer.concat(chunks)
   const found = createHash('sha256').update(buffer).digest('hex')
-  if (found !== sha256) throw new Error(`Stored object ${key} is damaged: SHA-256 ${found}, expected ${sha256}.`)
+  if (found !== sha256)
+    throw new Error(`Stored object ${key} is damaged: SHA-256 ${found}, expected ${sha256}.`)
   return buffer
 }
 
@@ -130,7 +131,14 @@ export interface FileRecord {
 /** Enters a stored object as a file of the project; returns its id. */
 export async function recordFile(
   db: Database,
-  file: { projectId: number; kind: string; name: string; contentType: string; stored: StoredObject; userId: number },
+  file: {
+    projectId: number
+    kind: string
+    name: string
+    contentType: string
+    stored: StoredObject
+    userId: number
+  },
 ): Promise<number> {
   const [id] = await db('files').insert({
     project_id: file.projectId,
@@ -148,7 +156,11 @@ export async function recordFile(
 }
 
 /** A file of this project, or undefined. */
-export async function findFile(db: Database, projectId: number, fileId: number): Promise<FileRecord | undefined> {
+export async function findFile(
+  db: Database,
+  projectId: number,
+  fileId: number,
+): Promise<FileRecord | undefined> {
   return db<FileRecord>('files').where({ id: fileId, project_id: projectId }).first()
 }
 

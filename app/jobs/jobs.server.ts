@@ -89,7 +89,11 @@ function startWaiting(): void {
   }
 }
 
-type Message = { kind: 'progress' } | { kind: 'done' } | { kind: 'refused'; message: string } | { kind: 'cancelled' }
+type Message =
+  | { kind: 'progress' }
+  | { kind: 'done' }
+  | { kind: 'refused'; message: string }
+  | { kind: 'cancelled' }
 
 async function follow({ jobId, request }: Waiting, worker: Worker): Promise<void> {
   const db = database()
@@ -100,12 +104,16 @@ async function follow({ jobId, request }: Waiting, worker: Worker): Promise<void
         const { kind: _, ...progress } = message
         writing = writing
           .then(async () => {
-            await db('jobs').where({ id: jobId, state: 'running' }).update({ progress: JSON.stringify(progress) })
+            await db('jobs')
+              .where({ id: jobId, state: 'running' })
+              .update({ progress: JSON.stringify(progress) })
           })
           .catch((error: unknown) => console.error(`Job ${jobId} progress:`, error))
       } else resolve({ message })
     })
-    worker.on('error', (error) => resolve({ error: error instanceof Error ? error : new Error(String(error)) }))
+    worker.on('error', (error) =>
+      resolve({ error: error instanceof Error ? error : new Error(String(error)) }),
+    )
     worker.on('exit', () => resolve({ error: new Error('The thread ended before it had an answer.') }))
   })
   let state: 'done' | 'failed' | 'cancelled' = 'failed'
@@ -152,7 +160,8 @@ export async function cancelJob(jobId: number): Promise<void> {
 /** Resolves when the job has ended; for tests and for answers that wait a while. */
 export async function jobEnded(jobId: number): Promise<void> {
   await ending.get(jobId)
-  while (waiting.some((entry) => entry.jobId === jobId)) await new Promise((resolve) => setTimeout(resolve, 50))
+  while (waiting.some((entry) => entry.jobId === jobId))
+    await new Promise((resolve) => setTimeout(resolve, 50))
   await ending.get(jobId)
 }
 

@@ -43,5 +43,13 @@ export async function recentHistory(db: Database, projectId: number, limit = 200
     .where('history.project_id', projectId)
     .orderBy('history.id', 'desc')
     .limit(limit)
-    .select('history.id', 'history.at', 'users.name as person', 'history.section', 'history.action', 'history.subject', 'history.reason')
+    .select(
+      'history.id',
+      'history.at',
+      'users.name as person',
+      'history.section',
+      'history.action',
+      'history.subject',
+      'history.reason',
+    )
 }

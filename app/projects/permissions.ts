@@ -65,6 +65,10 @@ export function can<V extends Verb>(member: Pick<Member, 'role'>, verb: V, subje
 /** The whole table, for the page that shows it and the test that walks it. */
 export function permissionTable(): { verb: string; subject: string; roles: readonly Role[] }[] {
   return Object.entries(table).flatMap(([verb, subjects]) =>
-    Object.entries(subjects).map(([subject, allowed]) => ({ verb, subject, roles: allowed as readonly Role[] })),
+    Object.entries(subjects).map(([subject, allowed]) => ({
+      verb,
+      subject,
+      roles: allowed as readonly Role[],
+    })),
   )
 }

@@ -26,7 +26,8 @@ export function isTimeZone(name: string): boolean {
   }
 }
 
-const line = (max: number, message: string) => z.string({ error: message }).trim().min(1, message).max(max, `At most ${max} characters.`)
+const line = (max: number, message: string) =>
+  z.string({ error: message }).trim().min(1, message).max(max, `At most ${max} characters.`)
 
 export const projectSchema = z.object({
   number: line(40, 'Give the project its number.'),
@@ -39,7 +40,9 @@ export const projectSchema = z.object({
     .min(1024, 'EPSG codes start at 1024.')
     .max(32767, 'EPSG codes end at 32767.'),
   verticalDatum: line(120, 'Say what levels are measured from.'),
-  timeZone: z.string({ error: 'Choose the time zone of the site.' }).refine(isTimeZone, 'This is not a time zone name such as Europe/London.'),
+  timeZone: z
+    .string({ error: 'Choose the time zone of the site.' })
+    .refine(isTimeZone, 'This is not a time zone name such as Europe/London.'),
   lengthUnit: z.enum(['m', 'ft']),
   timeUnit: z.enum(['d', 's']),
 })

@@ -119,7 +119,10 @@ export async function updateProgress(
   userId: number,
 ): Promise<void> {
   await db.transaction(async (trx) => {
-    const before = await trx<ProjectRow>('projects').where({ id: projectId }).forUpdate().first('stage', 'next_step')
+    const before = await trx<ProjectRow>('projects')
+      .where({ id: projectId })
+      .forUpdate()
+      .first('stage', 'next_step')
     await trx('projects').where({ id: projectId }).update({ stage: lines.stage, next_step: lines.nextStep })
     await recordHistory(trx, {
       projectId,

@@ -7,9 +7,7 @@ export async function up(database: Knex): Promise<void> {
     table.integer('project_id').unsigned().references('projects.id')
     table.integer('user_id').unsigned().notNullable().references('users.id')
     table.enum('kind', ['solve', 'import', 'draw']).notNullable()
-    table
-      .enum('state', ['queued', 'running', 'done', 'failed', 'cancelled', 'interrupted'])
-      .notNullable()
+    table.enum('state', ['queued', 'running', 'done', 'failed', 'cancelled', 'interrupted']).notNullable()
     table.json('progress')
     table.string('error', 2000)
     table.dateTime('created_at', { precision: 3 }).notNullable()

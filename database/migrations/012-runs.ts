@@ -10,9 +10,7 @@ export async function up(database: Knex): Promise<void> {
     table.integer('case_version').unsigned().notNullable()
     table.string('case_name', 120).notNullable()
     table.integer('job_id').unsigned().references('jobs.id')
-    table
-      .enum('state', ['queued', 'running', 'done', 'failed', 'cancelled', 'interrupted'])
-      .notNullable()
+    table.enum('state', ['queued', 'running', 'done', 'failed', 'cancelled', 'interrupted']).notNullable()
     table.specificType('input', 'longtext').notNullable()
     table.string('input_sha256', 64).notNullable()
     table.string('sections_digest', 64).notNullable()

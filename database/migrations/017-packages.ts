@@ -7,7 +7,15 @@ export async function up(database: Knex): Promise<void> {
     table.integer('project_id').unsigned().notNullable().references('projects.id')
     table.string('revision', 10).notNullable()
     table
-      .enum('status', ['draft', 'shared for check', 'checked', 'approved', 'issued', 'superseded', 'withdrawn'])
+      .enum('status', [
+        'draft',
+        'shared for check',
+        'checked',
+        'approved',
+        'issued',
+        'superseded',
+        'withdrawn',
+      ])
       .notNullable()
     table.string('purpose', 300).notNullable()
     table.string('reason', 500).notNullable()
