@@ -127,7 +127,7 @@ export function shownUnit(dimension: Dimension, project: ProjectUnits): UnitName
     case 'rate':
       return `${length}3/${time}`
     case 'line flux':
-      return `${length}3/${time}/${length}`
+      return length === 'm' ? `m3/${time}/m` : `ft3/${time}/ft`
     case 'per length':
       return `1/${length}`
     case 'leakance':
