@@ -2,6 +2,7 @@ import { createServer } from 'node:http'
 import S3rver from 's3rver'
 import AWSAccount from 's3rver/lib/models/account.js'
 import { environment } from '../app/environment.server.ts'
+import { closed, listening } from './services/listening.ts'
 import { runUnderParent } from './services/under-parent.ts'
 
 /**
@@ -31,4 +32,5 @@ const server = createServer((request, response) => {
   answer(request, response)
 })
 const { hostname, port } = new URL(s3.endpoint)
-server.listen(Number(port), hostname, () => runUnderParent(() => server.close()))
+await listening(server, Number(port), hostname)
+runUnderParent(() => closed(server))

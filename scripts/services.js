@@ -9,18 +9,16 @@ import { dirname, join, resolve } from 'node:path'
 import { fileURLToPath } from 'node:url'
 import { parseArgs } from 'node:util'
 import { CannotStart } from './services/cannot-start.js'
-import { startDemoServices } from './services/demo-services.js'
+import { demoVariables, startDemoServices } from './services/demo-services.js'
 import { ensureDebianPackages, ensureNodePackages, ensureNodeVersion } from './services/machine.js'
+import { claimFolder } from './services/only-run.js'
+import { portFrom } from './services/ports.js'
 import { createProcesses } from './services/processes.js'
 import { untilTold } from './services/until-told.js'
 
 const root = dirname(dirname(fileURLToPath(import.meta.url)))
-let cleanUp = () => {}
-const processes = createProcesses({ onUnexpectedEnd: (failure) => stopNow(failure) })
-const { stopNow } = untilTold(async () => {
-  await processes.stopAll()
-  cleanUp()
-})
+const processes = createProcesses({ root, onUnexpectedEnd: (failure) => stopNow(failure) })
+const { stopNow } = untilTold(() => processes.stopAll())
 
 try {
   const { values } = parseArgs({
@@ -28,22 +26,17 @@ try {
   })
   if (!values.data)
     throw new CannotStart('Give the folder for the data: node scripts/services.js --data FOLDER')
-  const from = Number(values['ports-from'])
+  const from = portFrom({ '--ports-from': values['ports-from'] }, '--ports-from')
   ensureNodeVersion(root)
   ensureDebianPackages(['mariadb-server-core', 'mariadb-client-core'])
   ensureNodePackages(root)
   const folder = resolve(values.data)
-  const services = await startDemoServices({
-    processes,
-    root,
-    folder,
-    ports: { database: from, s3: from + 1, smtp: from + 2, web: 3000 },
-    schema: 'lavant_dev',
-    throwAway: true,
-  })
-  cleanUp = services.cleanUp
-  const lines = Object.entries(services.variables).map(([name, value]) => `export ${name}='${value}'`)
-  publish(join(folder, 'environment.json'), JSON.stringify(services.variables, null, 2))
+  const ports = { database: from, s3: from + 1, smtp: from + 2, web: 3000 }
+  const variables = demoVariables({ folder, ports, schema: 'lavant_dev' })
+  processes.afterwards(claimFolder(folder))
+  await startDemoServices({ processes, root, folder, ports, variables, throwAway: true })
+  const lines = Object.entries(variables).map(([name, value]) => `export ${name}='${value}'`)
+  publish(join(folder, 'environment.json'), JSON.stringify(variables, null, 2))
   publish(join(folder, 'environment.sh'), lines.join('\n'))
   console.log(`${lines.join('\n')}\n\nReady. Ctrl-C stops them.`)
 } catch (failure) {

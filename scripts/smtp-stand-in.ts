@@ -48,4 +48,6 @@ const server = new SMTPServer({
   },
 })
 server.on('error', (error) => console.error(error))
-server.listen(smtp.port, smtp.host, () => runUnderParent(() => server.close(() => {})))
+server.listen(smtp.port, smtp.host, () =>
+  runUnderParent(() => new Promise<void>((done) => server.close(done))),
+)

@@ -5,28 +5,17 @@ import { claimPort } from './ports.js'
 import { secretsIn } from './secrets.js'
 
 /**
- * Starts what Lavant needs around it on this machine: MariaDB, the S3 stand-in and the SMTP stand-in.
+ * The environment variables that point the application at the services of this machine.
  *
  * @param {object} options
- * @param {ReturnType<typeof import('./processes.js').createProcesses>} options.processes
- * @param {string} options.root folder of the project
  * @param {string} options.folder absolute folder of all data
  * @param {{ web: number, database: number, s3: number, smtp: number }} options.ports
  * @param {string} options.schema
- * @param {boolean} options.throwAway
- * @returns {Promise<{ variables: Record<string, string>, cleanUp: () => void }>} the environment variables that
- *   point the application at them, and what is left to do after they have stopped
+ * @returns {Record<string, string>}
  */
-export async function startDemoServices({ processes, root, folder, ports, schema, throwAway }) {
+export function demoVariables({ folder, ports, schema }) {
   const secrets = secretsIn(folder)
-  const logs = join(folder, 'logs')
-  const mailbox = join(folder, 'mailbox')
-  const objects = join(folder, 's3')
-  for (const path of [logs, mailbox, objects]) {
-    mkdirSync(path, { recursive: true, mode: 0o700 })
-    chmodSync(path, 0o700)
-  }
-  const variables = {
+  return {
     LAVANT_MODE: 'demo',
     LAVANT_HOST: '127.0.0.1',
     LAVANT_PORT: String(ports.web),
@@ -50,18 +39,36 @@ export async function startDemoServices({ processes, root, folder, ports, schema
     LAVANT_MAIL_FROM: 'Lavant <lavant@mail.invalid>',
     LAVANT_SESSION_SECRET: secrets.sessionSecret,
     LAVANT_CODE_SECRET: secrets.codeSecret,
-    LAVANT_MAILBOX: mailbox,
+    LAVANT_MAILBOX: join(folder, 'mailbox'),
     LAVANT_DATA: folder,
   }
-  const removeSocket = await startMariadb({
+}
+
+/**
+ * Starts what Lavant needs around it on this machine: MariaDB, the S3 stand-in and the SMTP stand-in.
+ *
+ * @param {object} options
+ * @param {ReturnType<typeof import('./processes.js').createProcesses>} options.processes
+ * @param {string} options.root folder of the project
+ * @param {string} options.folder absolute folder of all data
+ * @param {{ database: number, s3: number, smtp: number }} options.ports
+ * @param {Record<string, string>} options.variables of demoVariables
+ * @param {boolean} options.throwAway
+ */
+export async function startDemoServices({ processes, root, folder, ports, variables, throwAway }) {
+  const logs = join(folder, 'logs')
+  const objects = join(folder, 's3')
+  for (const path of [logs, variables.LAVANT_MAILBOX, objects])
+    mkdirSync(path, { recursive: true, mode: 0o700 })
+  await startMariadb({
     processes,
     folder: join(folder, 'mariadb'),
     log: join(logs, 'database.log'),
     port: ports.database,
     portVariable: 'LAVANT_DATABASE_PORT',
-    schema,
+    schema: variables.LAVANT_DATABASE_NAME,
     user: variables.LAVANT_DATABASE_USER,
-    secrets,
+    secrets: secretsIn(folder),
     throwAway,
   })
   await claimPort(ports.s3, 'LAVANT_S3_PORT', 'the S3 stand-in')
@@ -92,5 +99,4 @@ export async function startDemoServices({ processes, root, folder, ports, schema
       channel: true,
     }),
   ])
-  return { variables, cleanUp: removeSocket }
 }

@@ -169,7 +169,6 @@ async function ready({ port, user, password, data, hasEnded }) {
  * @param {string} options.user
  * @param {ReturnType<typeof import('./secrets.js').secretsIn>} options.secrets
  * @param {boolean} options.throwAway small, quick to write, and with the right to make lavant_test… schemas
- * @returns {Promise<() => void>} removes the socket's folder; to be called after the server has stopped
  */
 export async function startMariadb({
   processes,
@@ -188,6 +187,7 @@ export async function startMariadb({
   await initialise(folder, schema)
   // The path of a socket may have 107 characters at most, which a clone deep in a home folder would exceed.
   const nearby = mkdtempSync(join(tmpdir().length > 60 ? '/tmp' : tmpdir(), 'lavant-'))
+  processes.afterwards(() => rmSync(nearby, { recursive: true, force: true }))
   const first = join(nearby, 'accounts.sql')
   writeFileSync(first, accounts({ schema, user, secrets, withTestSchemas: throwAway }), { mode: 0o600 })
   await processes.start({
@@ -219,5 +219,4 @@ export async function startMariadb({
     ready: (hasEnded) => ready({ port, user, password: secrets.databasePassword, data, hasEnded }),
   })
   rmSync(first)
-  return () => rmSync(nearby, { recursive: true, force: true })
 }

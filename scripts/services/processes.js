@@ -1,4 +1,5 @@
 import { spawn } from 'node:child_process'
+import { once } from 'node:events'
 import { closeSync, openSync, readFileSync } from 'node:fs'
 import { CannotStart } from './cannot-start.js'
 
@@ -9,8 +10,9 @@ import { CannotStart } from './cannot-start.js'
  * the order of stopping is ours. A Node child gets a channel: it sends 'ready', and ends by itself when the
  * channel breaks, that is when we were killed.
  */
-export function createProcesses({ onUnexpectedEnd }) {
+export function createProcesses({ root, onUnexpectedEnd }) {
   const running = []
+  const cleanUps = []
   let stopping
 
   /**
@@ -27,6 +29,7 @@ export function createProcesses({ onUnexpectedEnd }) {
     const log = what.log ? openSync(what.log, 'a', 0o600) : undefined
     const output = log ?? 'inherit'
     const child = spawn(what.command, what.arguments, {
+      cwd: root,
       env: what.environment,
       stdio: what.channel ? ['ignore', output, output, 'ipc'] : ['ignore', output, output],
       detached: true,
@@ -62,21 +65,52 @@ export function createProcesses({ onUnexpectedEnd }) {
   async function stopOne(entry) {
     if (entry.ended !== undefined || entry.child.pid === undefined) return
     const ended = new Promise((resolve) => entry.child.once('exit', resolve))
-    entry.child.kill('SIGTERM')
-    const killer = setTimeout(() => entry.child.kill('SIGKILL'), entry.patience ?? 10_000)
+    signalGroup(entry.child, 'SIGTERM')
+    const killer = setTimeout(() => signalGroup(entry.child, 'SIGKILL'), entry.patience ?? 10_000)
     await ended
     clearTimeout(killer)
+  }
+
+  /** Runs a Node script of ours to its end. Throws CannotStart when it fails, having said why itself. */
+  async function run(name, script, environment) {
+    const child = spawn(process.execPath, ['--import', 'tsx', script], {
+      cwd: root,
+      env: environment,
+      stdio: ['ignore', 'inherit', 'inherit'],
+      detached: true,
+    })
+    const entry = { name, child, ended: undefined }
+    running.push(entry)
+    const [code, signal] = await once(child, 'exit')
+    entry.ended = signal ?? code
+    if (code !== 0) throw new CannotStart(`${name} failed${signal ? ` (${signal})` : ''}; see above.`)
+  }
+
+  /** Enters what is to be tidied away once every process has stopped. */
+  function afterwards(cleanUp) {
+    cleanUps.push(cleanUp)
   }
 
   /** Stops everything, last started first. Calling it again waits for the same stop. */
   function stopAll() {
     stopping ??= (async () => {
       for (const entry of running.toReversed()) await stopOne(entry)
+      for (const cleanUp of cleanUps.toReversed()) cleanUp()
     })()
     return stopping
   }
 
-  return { start, stopAll }
+  return { start, run, afterwards, stopAll }
+}
+
+/** Each child leads a group of its own, so that what it started in turn is reached as well. */
+function signalGroup(child, signal) {
+  try {
+    process.kill(-child.pid, signal)
+  } catch (error) {
+    // Gone already: its exit is about to be reported.
+    if (error.code !== 'ESRCH') throw error
+  }
 }
 
 function endOf(log) {

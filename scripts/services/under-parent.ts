@@ -1,15 +1,19 @@
 /**
  * Tells the process that started this one that it is ready, and ends it on SIGTERM or when that process is gone:
- * `close` lets go of what keeps the event loop alive; what is still open a few seconds later is cut.
+ * `close` lets the work in hand finish, for `patienceMilliseconds` at most.
  */
 export function runUnderParent(close: () => unknown, patienceMilliseconds = 5_000): void {
   let closing = false
-  function end() {
+  async function end() {
     if (closing) return
     closing = true
-    setTimeout(() => process.exit(0), patienceMilliseconds).unref()
-    if (process.connected) process.disconnect()
-    close()
+    setTimeout(() => process.exit(0), patienceMilliseconds)
+    try {
+      await close()
+    } catch (error) {
+      console.error(error)
+    }
+    process.exit(0)
   }
   process.on('SIGTERM', end)
   process.on('SIGINT', end)

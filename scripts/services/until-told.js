@@ -1,12 +1,13 @@
+import { CannotStart } from './cannot-start.js'
+
 /**
  * Runs something that lasts until it is told to stop, by Ctrl-C, by a closed terminal or by SIGTERM, and then
  * stops it once, however often it is told.
  *
  * @param {() => Promise<void>} stop
- * @returns {{ told: Promise<void>, stopNow: (failure?: Error) => Promise<never> }}
+ * @returns {{ stopNow: (failure?: unknown) => Promise<void> }} `stopNow` stops it from within: a failure is reported and
+ *   makes the process end with 1
  */
-import { CannotStart } from './cannot-start.js'
-
 export function untilTold(stop) {
   let stopping = false
 
