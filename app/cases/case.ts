@@ -1,8 +1,48 @@
 import { z } from 'zod'
 import { coordinate, positive, quantity, text } from '~/book/field'
+import type { Row } from '~/book/row'
+import { type Dimension, type Quantity, units } from '~/units'
 
-/** Quantities of other sections' rows that a case may set for itself. */
-export const overridable = ['rate', 'k', 'recharge', 'level'] as const
+/**
+ * Quantities of other sections' rows that a case may set for itself: the rate of a well, the recharge of a zone, the
+ * hydraulic conductivity k of a wall or a material (ky keeps its ratio to kx), the level of a boundary along its
+ * whole line, the flux of a boundary.
+ */
+export const overridable = ['rate', 'recharge', 'k', 'level', 'flux'] as const
+export type Overridable = (typeof overridable)[number]
+
+export const overrideDimension: Record<Overridable, Dimension> = {
+  rate: 'rate',
+  recharge: 'conductivity',
+  k: 'conductivity',
+  level: 'length',
+  flux: 'line flux',
+}
+
+const anyQuantity = z.union([
+  quantity('rate'),
+  quantity('conductivity'),
+  quantity('length'),
+  quantity('line flux'),
+])
+
+const overrideSchema = z
+  .strictObject({ rowId: z.string().min(1), quantity: z.enum(overridable), value: anyQuantity })
+  .refine((o) => units[o.value.unit].dimension === overrideDimension[o.quantity], {
+    path: ['value'],
+    error: 'The unit does not belong to this quantity.',
+  })
+  .refine((o) => o.quantity === 'level' || o.value.value >= 0, {
+    path: ['value'],
+    error: 'This quantity carries no sign: its direction is chosen in section 3.',
+  })
+export type Override = z.infer<typeof overrideSchema>
+
+/** Relative to the right-hand side of the equations; what a run is held to when the case sheet says nothing. */
+export const defaultTolerance = 1e-10
+
+/** More cells than this are refused: a run would hold a server thread for too long. */
+export const mostCells = 1_000_000
 
 /**
  * A calculation case. The base case holds all settings; another case holds only what differs: blank inherits.
@@ -22,15 +62,17 @@ export const caseSchema = z
     cellSize: positive('length', 'The cell size').nullable().default(null),
     tolerance: z
       .number()
-      .gt(0)
+      .gt(0, 'A tolerance must be above 0.')
       .max(1e-4, 'A tolerance above 1e-4 is too loose for heads.')
       .nullable()
       .default(null),
     overrides: z
-      .array(
-        z.strictObject({ rowId: z.string().min(1), quantity: z.enum(overridable), value: quantityOfAny() }),
-      )
-      .default([]),
+      .array(overrideSchema)
+      .default([])
+      .refine(
+        (list) => new Set(list.map((o) => `${o.rowId} ${o.quantity}`)).size === list.length,
+        'A case can set a quantity once only.',
+      ),
   })
   .superRefine((c, context) => {
     if (!c.isBase) return
@@ -40,7 +82,47 @@ export const caseSchema = z
     }
   })
 export type Case = z.infer<typeof caseSchema>
+export type Extent = NonNullable<Case['extent']>
 
-function quantityOfAny() {
-  return z.union([quantity('rate'), quantity('conductivity'), quantity('length'), quantity('line flux')])
+/** What a case comes to once blanks have taken the value of the base case. */
+export interface CaseSettings {
+  flow: 'confined' | 'unconfined' | null
+  extent: Extent | null
+  cellSize: Quantity | null
+  tolerance: number
+  overrides: Override[]
+}
+
+export function baseCase(cases: readonly Row<Case>[]): Row<Case> | undefined {
+  return cases.find((row) => row.body.isBase)
+}
+
+/** The settings in force for a case: its own, else the base case's. */
+export function settingsOf(base: Case | undefined, own: Case): CaseSettings {
+  const inherited = own.isBase ? undefined : base
+  const set = new Set(own.overrides.map((o) => `${o.rowId} ${o.quantity}`))
+  return {
+    flow: own.flow ?? inherited?.flow ?? null,
+    extent: own.extent ?? inherited?.extent ?? null,
+    cellSize: own.cellSize ?? inherited?.cellSize ?? null,
+    tolerance: own.tolerance ?? inherited?.tolerance ?? defaultTolerance,
+    overrides: [
+      ...own.overrides,
+      ...(inherited?.overrides ?? []).filter((o) => !set.has(`${o.rowId} ${o.quantity}`)),
+    ],
+  }
+}
+
+/** The value that a case sets for a quantity of a row, or undefined where the row's own value holds. */
+export function overrideOf(
+  overrides: readonly Override[],
+  rowId: string,
+  quantity: Overridable,
+): Quantity | undefined {
+  return overrides.find((o) => o.rowId === rowId && o.quantity === quantity)?.value
+}
+
+/** The cases that set a quantity of a row; whoever deletes that row is told of them first. */
+export function casesSetting(cases: readonly Row<Case>[], rowId: string): Row<Case>[] {
+  return cases.filter((row) => row.body.overrides.some((o) => o.rowId === rowId))
 }
