@@ -92,8 +92,8 @@ async function startEverything() {
     await claimPort(ports.web, 'LAVANT_PORT', 'the web server')
     await startDemoServices({ processes, root, folder, ports, variables, throwAway: false })
   }
-  await processes.run('Migrating the database', 'scripts/migrate.ts', environment)
-  if (isDemo) await processes.run('Setting up the demo', 'scripts/seed.ts', environment)
+  if (isDemo) await processes.run('Setting up the demo', 'scripts/set-up-demo.ts', environment, [folder])
+  else await processes.run('Migrating the database', 'scripts/migrate.ts', environment)
   if (!isDevelopment) {
     const { isBuildCurrent } = await source('scripts/services/build-stamp.ts')
     if (!isBuildCurrent(root)) {

@@ -10,7 +10,7 @@ import {
   writeFileSync,
 } from 'node:fs'
 import { tmpdir } from 'node:os'
-import { join } from 'node:path'
+import { dirname, join } from 'node:path'
 import { setTimeout as pause } from 'node:timers/promises'
 import { CannotStart } from './cannot-start.js'
 import { claimPort } from './ports.js'
@@ -33,20 +33,22 @@ function run(command, options) {
   })
 }
 
-/** Processes of an earlier run that still serve this data folder. */
+/** Command line of a process; empty for one that ended while we looked, or that is hidden from us. */
+function wordsOf(pid) {
+  try {
+    return readFileSync(`/proc/${pid}/cmdline`, 'utf8').split('\0')
+  } catch {
+    return []
+  }
+}
+
+/** Servers of an earlier run that still hold this data folder, each with the path of its socket. */
 function serversOf(data) {
   return readdirSync('/proc')
     .filter((entry) => /^\d+$/.test(entry))
-    .filter((pid) => {
-      try {
-        const words = readFileSync(`/proc/${pid}/cmdline`, 'utf8').split('\0')
-        return words[0] === SERVER && words.includes(`--datadir=${data}`)
-      } catch {
-        // A process that ended while we looked, or one of another person.
-        return false
-      }
-    })
-    .map(Number)
+    .map((pid) => ({ pid: Number(pid), words: wordsOf(pid) }))
+    .filter(({ words }) => words[0] === SERVER && words.includes(`--datadir=${data}`))
+    .map(({ pid, words }) => ({ pid, socket: words.find((word) => word.startsWith('--socket='))?.slice(9) }))
 }
 
 function isAlive(pid) {
@@ -60,7 +62,7 @@ function isAlive(pid) {
 
 /** Lets a server that outlived its killed parent shut down in its own good order. */
 async function stopLeftovers(data) {
-  for (const pid of serversOf(data)) {
+  for (const { pid, socket } of serversOf(data)) {
     console.log('A database of an earlier run that was killed is still there: stopping it …')
     process.kill(pid, 'SIGTERM')
     for (let waited = 0; isAlive(pid); waited += 100) {
@@ -68,6 +70,8 @@ async function stopLeftovers(data) {
         throw new CannotStart(`The database of an earlier run (process ${pid}) does not stop.`)
       await pause(100)
     }
+    if (/\/lavant-\w{6}\/mariadb\.sock$/.test(socket ?? ''))
+      rmSync(dirname(socket), { recursive: true, force: true })
   }
 }
 

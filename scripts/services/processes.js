@@ -72,8 +72,8 @@ export function createProcesses({ root, onUnexpectedEnd }) {
   }
 
   /** Runs a Node script of ours to its end. Throws CannotStart when it fails, having said why itself. */
-  async function run(name, script, environment) {
-    const child = spawn(process.execPath, ['--import', 'tsx', script], {
+  async function run(name, script, environment, words = []) {
+    const child = spawn(process.execPath, ['--import', 'tsx', script, ...words], {
       cwd: root,
       env: environment,
       stdio: ['ignore', 'inherit', 'inherit'],

@@ -22,6 +22,11 @@ export function untilTold(stop) {
   }
 
   for (const signal of ['SIGINT', 'SIGTERM', 'SIGHUP']) process.on(signal, () => stopNow())
+  // npm passes a signal on to a shell between us, which dies of it without telling: then we have a new parent.
+  const parent = process.ppid
+  if (process.env.npm_lifecycle_event) {
+    setInterval(() => process.ppid !== parent && stopNow(), 500).unref()
+  }
   return { stopNow }
 }
 
