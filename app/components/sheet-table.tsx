@@ -11,11 +11,10 @@ export function SheetTable({ label, columns, rows, units, empty, noun, nouns }: 
     )
   }
   return (
-    // biome-ignore lint/a11y/noNoninteractiveTabindex: a region that scrolls must be reachable by keyboard
-    <div
+    <section
       className="overflow-x-auto border border-rule"
+      // biome-ignore lint/a11y/noNoninteractiveTabindex: a region that scrolls must be reachable by keyboard
       tabIndex={0}
-      role="region"
       aria-label={`${label}, table`}
     >
       <table className="w-full border-collapse text-[0.93rem]">
@@ -57,7 +56,7 @@ export function SheetTable({ label, columns, rows, units, empty, noun, nouns }: 
           ))}
         </tbody>
       </table>
-    </div>
+    </section>
   )
 }
 

@@ -49,15 +49,7 @@ function quoteCell(cell: string): string {
   return /[\t\r\n"]/.test(cell) ? `"${cell.replaceAll('"', '""')}"` : cell
 }
 
-/**
- * A text cell that a spreadsheet would run as a formula gets an apostrophe in front, which spreadsheets read as
- * "this is text" (CWE-1236). Numbers are left alone, so that −3 stays a number.
- */
-export function escapeFormula(text: string): string {
-  if (text !== '' && !Number.isNaN(Number(text))) return text
-  return /^[=+\-@\t\r]/.test(text) ? `'${text}` : text
-}
-
+/** Takes back what safeCell put in front of a text when it was copied. */
 function unescapeFormula(text: string): string {
   return /^'[=+\-@\t\r]/.test(text) ? text.slice(1) : text
 }

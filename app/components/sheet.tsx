@@ -4,7 +4,8 @@ import { Button } from './button'
 import { Notice } from './notice'
 import { type CellInput, cellText, headerUnit, readCell, type SheetColumn } from './sheet-cells'
 import { SheetTable } from './sheet-table'
-import { escapeFormula, readBlock, writeBlock } from './sheet-text'
+import { readBlock, writeBlock } from './sheet-text'
+import { safeCell } from './spreadsheet'
 
 /**
  * A sheet: rows of one kind, as on a calculation pad. Edited like a spreadsheet (type, paste a block, undo, sort),
@@ -164,7 +165,6 @@ export function Sheet(props: SheetProps) {
   const usedRows = asking.flatMap((id) => usedBy?.(id) ?? [])
 
   return (
-    // biome-ignore lint/a11y/noNoninteractiveTabindex: an empty sheet has no cell to hold the focus for a paste
     <section
       ref={frame}
       aria-label={label}
@@ -294,7 +294,7 @@ function copyText(column: SheetColumn, row: SheetRow, units: ProjectUnits): stri
     ? column.reads(row.body)
     : (typed?.text ?? cellText(column, row.body[column.field], units))
   return column.editor === 'text' || column.editor === 'choice' || typed || column.reads
-    ? escapeFormula(text)
+    ? safeCell(text)
     : text
 }
 
