@@ -53,7 +53,7 @@ function plainText({ headers, body }: Part): string | undefined {
   if (!/^text\/plain/i.test(type)) return undefined
   const encoding = (headers.get('content-transfer-encoding') ?? '7bit').toLowerCase()
   if (encoding === 'base64') return Buffer.from(body, 'base64').toString('utf8')
-  if (encoding === 'quoted-printable') return unquote(body.replaceAll(/[ \t]*=\r?\n/g, ''))
+  if (encoding === 'quoted-printable') return unquote(body.replaceAll(/=[ \t]*\r?\n/g, ''))
   return Buffer.from(body, 'latin1').toString('utf8')
 }
 
