@@ -47,7 +47,6 @@ export default [
     route('readings/imports/:importId/receipt', 'routes/project/import-receipt.ts'),
     route('readings/instruments/:instrumentId/series', 'routes/project/series.ts'),
     route('fit/download', 'routes/project/fit-download.ts'),
-    route('packages', 'routes/project/packages.ts'),
     route('packages/:packageId', 'routes/project/package-state.ts'),
     route('packages/:packageId/pdf', 'routes/project/package-pdf.ts'),
   ]),

@@ -1,25 +1,5 @@
 import type { Database } from '~database/connection.server'
-
-export type PackageStatus =
-  | 'draft'
-  | 'shared for check'
-  | 'checked'
-  | 'approved'
-  | 'issued'
-  | 'superseded'
-  | 'withdrawn'
-
-export interface Signature {
-  role: 'originator' | 'checker' | 'approver'
-  name: string
-  at: string
-}
-
-export interface TitleBlockFacts {
-  revision: string | null
-  status: PackageStatus | null
-  signatures: Signature[]
-}
+import type { PackageStatus, Signature, TitleBlockFacts } from './title-block'
 
 /** The latest revision of the package and who has signed it: what the title block of every page shows. */
 export async function titleBlockFacts(db: Database, projectId: number): Promise<TitleBlockFacts> {

@@ -24,6 +24,7 @@ export async function up(database: Knex): Promise<void> {
     table.dateTime('fit_date', { precision: 3 })
     table.specificType('gathered', 'longtext')
     table.string('input_sha256', 64)
+    table.string('sections_digest', 64)
     table.integer('job_id').unsigned().references('jobs.id')
     table.integer('file_id').unsigned().references('files.id')
     table.string('pdf_sha256', 64)
