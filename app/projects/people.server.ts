@@ -1,6 +1,7 @@
 import { endSessionsOf } from '~/sign-in/sessions.server'
 import type { Database } from '~database/connection.server'
 import { recordHistory } from './history.server'
+import type { Role } from './permissions'
 import type { PersonInput } from './person'
 
 export interface Person {
@@ -36,6 +37,20 @@ function fromRow(row: UserRow): Person {
 export async function listPeople(db: Database): Promise<Person[]> {
   const rows = await db<UserRow>('users').orderByRaw('left_at is not null').orderBy('name')
   return rows.map(fromRow)
+}
+
+/** Everybody who may sign in, with the roles they hold somewhere: for the demo, where one chooses whom to be. */
+export async function peopleWithRoles(db: Database): Promise<(Person & { roles: Role[] })[]> {
+  const people = (await listPeople(db)).filter((person) => !person.leftAt)
+  const held = await db('members')
+    .whereNull('to_at')
+    .distinct('user_id', 'role')
+    .orderBy('role')
+    .select<{ user_id: number; role: Role }[]>()
+  return people.map((person) => ({
+    ...person,
+    roles: held.filter((row) => row.user_id === person.id).map((row) => row.role),
+  }))
 }
 
 /** The person behind an e-mail address in lower case. */
@@ -89,12 +104,15 @@ async function lockedPerson(
   return { row, otherAdministrators: administrators.filter(({ id }) => id !== userId).length }
 }
 
-/** Makes somebody an administrator, or no longer one. Their sessions end, since their rights changed. */
+/**
+ * Makes somebody an administrator, or no longer one. Their sessions end, since their rights changed. Without `byUserId` it is the
+ * doing of whoever runs the server.
+ */
 export async function setAdministrator(
   db: Database,
   userId: number,
   isAdministrator: boolean,
-  byUserId: number,
+  byUserId?: number,
 ): Promise<PersonRefusal | undefined> {
   return db.transaction(async (trx) => {
     const { row, otherAdministrators } = await lockedPerson(trx, userId)

@@ -1,12 +1,6 @@
 import { z } from 'zod'
+import { emailSchema } from '~/sign-in/email'
 import { roles } from './permissions'
-
-export const emailSchema = z
-  .string({ error: 'Give the e-mail address.' })
-  .trim()
-  .toLowerCase()
-  .max(254, 'An e-mail address has at most 254 characters.')
-  .pipe(z.email('This is not an e-mail address.'))
 
 export const personSchema = z.object({
   name: z

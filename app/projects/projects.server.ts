@@ -1,3 +1,4 @@
+import { createHash } from 'node:crypto'
 import type { Database } from '~database/connection.server'
 import { recordHistory } from './history.server'
 import type { Role } from './permissions'
@@ -66,10 +67,29 @@ export async function projectsOf(db: Database, userId: number): Promise<(Project
   return rows.map((row) => ({ ...fromRow(row), role: row.role }))
 }
 
-/** Every project of the firm, for administrators: the list only, no content. */
-export async function allProjects(db: Database): Promise<Project[]> {
-  const rows = await db<ProjectRow>('projects').orderBy('created_at', 'desc')
-  return rows.map(fromRow)
+export interface ProjectLine {
+  id: number
+  number: string
+  title: string
+  client: string
+  managers: string[]
+}
+
+/** Every project of the firm with its project managers, for administrators: the list only, no content. */
+export async function allProjects(db: Database): Promise<ProjectLine[]> {
+  const rows = await db<ProjectRow>('projects')
+    .orderBy('created_at', 'desc')
+    .select('id', 'number', 'title', 'client')
+  const managers = await db('members')
+    .join('users', 'users.id', 'members.user_id')
+    .where('members.role', 'project manager')
+    .whereNull('members.to_at')
+    .orderBy('users.name')
+    .select<{ project_id: number; name: string }[]>('members.project_id', 'users.name')
+  return rows.map((row) => ({
+    ...row,
+    managers: managers.filter((manager) => manager.project_id === row.id).map((manager) => manager.name),
+  }))
 }
 
 /** Creates a project and makes its creator the project manager. Throws on a number already taken (ER_DUP_ENTRY). */
@@ -90,25 +110,71 @@ export async function createProject(db: Database, input: ProjectInput, userId: n
   })
 }
 
-/** Changes the settings of a project; the change and its before and after go to the history. */
+/** The settings of a project as its form has them. */
+export function settingsOf(project: Project): ProjectInput {
+  return {
+    number: project.number,
+    title: project.title,
+    client: project.client,
+    calcReference: project.calcReference,
+    crsEpsg: project.crsEpsg,
+    verticalDatum: project.verticalDatum,
+    timeZone: project.timeZone,
+    lengthUnit: project.units.length,
+    timeUnit: project.units.time,
+  }
+}
+
+/** Short text that changes with the settings: a form carries the one it was made from. */
+export function settingsVersion(project: Project): string {
+  return createHash('sha256')
+    .update(JSON.stringify(settingsOf(project)))
+    .digest('hex')
+    .slice(0, 16)
+}
+
+/**
+ * Changes the settings of a project; the change and its before and after go to the history. `seen` is the
+ * settingsVersion that the form was made from; when somebody else saved meanwhile, nothing is changed and the
+ * answer says so. Throws on a number already taken (ER_DUP_ENTRY).
+ */
 export async function updateProject(
   db: Database,
   projectId: number,
   input: ProjectInput,
   userId: number,
-): Promise<void> {
-  await db.transaction(async (trx) => {
-    const before = await trx<ProjectRow>('projects').where({ id: projectId }).forUpdate().first()
+  seen: string,
+): Promise<'changed meanwhile' | undefined> {
+  return db.transaction(async (trx) => {
+    const row = await trx<ProjectRow>('projects').where({ id: projectId }).forUpdate().first()
+    if (!row) throw new Error(`There is no project ${projectId}.`)
+    const before = fromRow(row)
+    if (settingsVersion(before) !== seen) return 'changed meanwhile'
     await trx('projects').where({ id: projectId }).update(toRow(input))
     await recordHistory(trx, {
       projectId,
       userId,
       action: 'changed settings',
       subject: input.number,
-      before,
+      before: settingsOf(before),
       after: input,
     })
+    return undefined
   })
+}
+
+/** A project of this number that the same person made less than a minute ago: the same form sent twice. */
+export async function justCreated(db: Database, number: string, userId: number): Promise<number | undefined> {
+  const row = await db('projects')
+    .where({ number, created_by: userId })
+    .where('created_at', '>', new Date(Date.now() - 60_000))
+    .first<{ id: number } | undefined>('id')
+  return row?.id
+}
+
+/** Whether MariaDB refused a value because another row has it. */
+export function isNumberTaken(error: unknown): boolean {
+  return error instanceof Error && 'code' in error && error.code === 'ER_DUP_ENTRY'
 }
 
 /** The two lines that the client reads first: where the work stands, and what comes next. */
