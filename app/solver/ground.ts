@@ -1,0 +1,183 @@
+import type { Grid } from './grid'
+import { centresOf } from './grid'
+import type { Material, Model, Surface } from './model'
+import { ModelError, requireFinite, requirePositive } from './model-error'
+import { checkedPolygon, visitCellsInside } from './polygon'
+import { surfaceThrough } from './surface'
+
+/**
+ * The ground under one or more cells: layers from the bottom up, each with base and top level (top may be infinite in
+ * unconfined flow) and conductivity along x and y. Levels are above the model's datum until `shiftLevels` is applied.
+ */
+export interface Profile {
+  base: number[]
+  top: number[]
+  kx: number[]
+  ky: number[]
+}
+
+export interface GroundOnGrid {
+  /** 1 where ground covers the cell's centre. */
+  active: Uint8Array
+  /** Index into `profiles`, -1 outside. */
+  profileOf: Int32Array
+  profiles: Profile[]
+}
+
+/** Which profile lies under each cell. A later entry replaces earlier ones; no entry leaves the cell outside. */
+export function groundOnGrid(model: Model, grid: Grid): GroundOnGrid {
+  const conductivities = new Map<string, { kx: number; ky: number }>()
+  model.materials.forEach((material, index) => {
+    if (conductivities.has(material.name)) {
+      throw new ModelError(`materials[${index}].name`, `the name "${material.name}" is used twice`)
+    }
+    conductivities.set(material.name, conductivityOf(material, `materials[${index}]`))
+  })
+  const count = grid.columns * grid.rows
+  const active = new Uint8Array(count)
+  const profileOf = new Int32Array(count).fill(-1)
+  const profiles: Profile[] = []
+  const xCentres = centresOf(grid.xEdges)
+  const yCentres = centresOf(grid.yEdges)
+  if (model.ground.length === 0) throw new ModelError('ground', 'there is no ground: give at least one entry')
+  model.ground.forEach((entry, index) => {
+    const path = `ground[${index}]`
+    const profileAt = layersOf(model, entry, path, conductivities)
+    const level = profileAt.constant ? profiles.push(profileAt.at(0, 0)) - 1 : -1
+    function cover(cell: number): void {
+      active[cell] = 1
+      if (level >= 0) profileOf[cell] = level
+      else {
+        const j = Math.floor(cell / grid.columns)
+        const i = cell - j * grid.columns
+        profileOf[cell] = profiles.push(profileAt.at(xCentres[i] as number, yCentres[j] as number)) - 1
+      }
+    }
+    if (entry.polygon) visitCellsInside(grid, checkedPolygon(entry.polygon, `${path}.polygon`), cover)
+    else for (let cell = 0; cell < count; cell++) cover(cell)
+  })
+  if (!active.includes(1)) throw new ModelError('ground', 'no ground entry covers the centre of any cell')
+  return { active, profileOf, profiles }
+}
+
+function conductivityOf(material: Material, path: string): { kx: number; ky: number } {
+  const kx = requirePositive(material.kx, `${path}.kx`)
+  const ky = requirePositive(material.ky, `${path}.ky`)
+  const angle = requireFinite(material.angle ?? 0, `${path}.angle`)
+  if (kx === ky || angle % 180 === 0) return { kx, ky }
+  if (angle % 90 === 0) return { kx: ky, ky: kx }
+  throw new ModelError(
+    `${path}.angle`,
+    `principal directions at ${angle} degrees to the grid are not computed by this version; 0 and 90 are`,
+  )
+}
+
+interface ProfileMaker {
+  constant: boolean
+  at: (x: number, y: number) => Profile
+}
+
+function layersOf(
+  model: Model,
+  entry: Model['ground'][number],
+  path: string,
+  conductivities: Map<string, { kx: number; ky: number }>,
+): ProfileMaker {
+  if (entry.layers && (entry.material !== undefined || entry.base !== undefined || entry.top !== undefined)) {
+    throw new ModelError(path, 'give either layers, or material, base and top')
+  }
+  const given = entry.layers ?? [{ material: entry.material ?? '', base: entry.base, top: entry.top }]
+  if (given.length === 0) throw new ModelError(`${path}.layers`, 'there is no layer')
+  // The file lists layers from the top down; a profile holds them from the bottom up.
+  const layers = given
+    .map((layer, index) => {
+      const place = entry.layers ? `${path}.layers[${index}]` : path
+      const conductivity = conductivities.get(layer.material)
+      if (!conductivity) throw new ModelError(`${place}.material`, `there is no material "${layer.material}"`)
+      const open = layer.top === undefined && model.flow === 'unconfined' && index === 0
+      if (layer.top === undefined && !open) throw new ModelError(`${place}.top`, 'a top level is needed here')
+      if (layer.base === undefined) throw new ModelError(`${place}.base`, 'a base level is needed')
+      return {
+        place,
+        conductivity,
+        base: levelOf(layer.base, `${place}.base`),
+        top: layer.top === undefined ? openTop : levelOf(layer.top, `${place}.top`),
+      }
+    })
+    .reverse()
+  function at(x: number, y: number): Profile {
+    const profile: Profile = { base: [], top: [], kx: [], ky: [] }
+    let below = Number.NEGATIVE_INFINITY
+    for (const layer of layers) {
+      const base = layer.base.at(x, y)
+      const top = layer.top.at(x, y)
+      const where = layer.base.constant && layer.top.constant ? '' : ` at (${x}, ${y})`
+      if (base >= top) {
+        throw new ModelError(layer.place, `the base ${base} is not below the top ${top}${where}`)
+      }
+      if (base < below - 1e-9 * Math.max(1, Math.abs(below))) {
+        throw new ModelError(
+          layer.place,
+          `its base ${base} lies below the top ${below} of the layer under it${where}`,
+        )
+      }
+      below = top
+      profile.base.push(base)
+      profile.top.push(top)
+      profile.kx.push(layer.conductivity.kx)
+      profile.ky.push(layer.conductivity.ky)
+    }
+    return profile
+  }
+  return { constant: layers.every((layer) => layer.base.constant && layer.top.constant), at }
+}
+
+interface Level {
+  constant: boolean
+  at: (x: number, y: number) => number
+}
+
+const openTop: Level = { constant: true, at: () => Number.POSITIVE_INFINITY }
+
+function levelOf(value: number | Surface, path: string): Level {
+  if (typeof value === 'number') {
+    const level = requireFinite(value, path)
+    return { constant: true, at: () => level }
+  }
+  return { constant: false, at: surfaceThrough(value.xyz, `${path}.xyz`) }
+}
+
+/** Moves every level of the profiles down by `reference`, in place. */
+export function shiftLevels(profiles: Profile[], reference: number): void {
+  for (const profile of profiles) {
+    profile.base = profile.base.map((level) => level - reference)
+    profile.top = profile.top.map((level) => level - reference)
+  }
+}
+
+/** Saturated thickness at head `h`. */
+export function thicknessAt(profile: Profile, h: number): number {
+  let thickness = 0
+  for (let l = 0; l < profile.base.length; l++) {
+    const base = profile.base[l] as number
+    const top = profile.top[l] as number
+    if (h > base) thickness += Math.min(h, top) - base
+  }
+  return thickness
+}
+
+/** Sum over the layers of k x saturated thickness at head `h`. `k` is the profile's kx, ky or any list of its length. */
+export function transmissivityAt(profile: Profile, k: number[], h: number): number {
+  let sum = 0
+  for (let l = 0; l < profile.base.length; l++) {
+    const base = profile.base[l] as number
+    const top = profile.top[l] as number
+    if (h > base) sum += (k[l] as number) * (Math.min(h, top) - base)
+  }
+  return sum
+}
+
+/** Thickness of all layers; infinite without a top. */
+export function fullThickness(profile: Profile): number {
+  return thicknessAt(profile, Number.POSITIVE_INFINITY)
+}

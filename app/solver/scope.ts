@@ -1,0 +1,37 @@
+import type { Model } from './model'
+import { ModelError, requirePositive } from './model-error'
+
+/** Refuses by name, with its path, everything a model file may hold that this version does not compute. */
+export function refuseWhatIsNotComputed(model: Model): void {
+  if (model.kind !== 'plan') throw notYet('kind', 'a vertical section')
+  if (model.flow !== 'confined' && model.flow !== 'unconfined') {
+    throw new ModelError(
+      'flow',
+      `"${model.flow}" belongs to a vertical section; in plan it is confined or unconfined`,
+    )
+  }
+  if (model.time.kind !== 'steady') throw notYet('time.kind', 'transient flow')
+  if (model.solver?.method === 'multigrid') throw notYet('solver.method', 'the multigrid method')
+  if (model.solver?.tolerance !== undefined) {
+    const tolerance = requirePositive(model.solver.tolerance, 'solver.tolerance')
+    if (tolerance > 1e-3) throw new ModelError('solver.tolerance', 'above 0.001 the heads would mean little')
+  }
+  model.boundaries?.forEach((boundary, index) => {
+    if (boundary.kind === 'seepage face') {
+      throw notYet(
+        `boundaries[${index}].kind`,
+        `"${boundary.name}": a seepage face (it belongs to a vertical section)`,
+      )
+    }
+  })
+  const want = model.want
+  if (want?.verify) throw notYet('want.verify', 'the verification of a run')
+  if (want?.sensitivities && want.sensitivities.length > 0)
+    throw notYet('want.sensitivities', 'sensitivities')
+  if (want?.responses) throw notYet('want.responses', 'response coefficients')
+  if (want?.flowLines && want.flowLines.length > 0) throw notYet('want.flowLines', 'flow lines')
+}
+
+function notYet(path: string, what: string): ModelError {
+  return new ModelError(path, `not computed by this version: ${what}`)
+}
