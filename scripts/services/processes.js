@@ -15,6 +15,10 @@ export function createProcesses({ root, onUnexpectedEnd }) {
   const cleanUps = []
   let stopping
 
+  function refuseWhileStopping() {
+    if (stopping) throw new CannotStart('Stopping.')
+  }
+
   /**
    * @param {object} what
    * @param {string} what.name words for messages, such as "the database"
@@ -26,6 +30,7 @@ export function createProcesses({ root, onUnexpectedEnd }) {
    * @param {number} [what.patience] milliseconds that it may take to stop before it is killed
    */
   async function start(what) {
+    refuseWhileStopping()
     const log = what.log ? openSync(what.log, 'a', 0o600) : undefined
     const output = log ?? 'inherit'
     const child = spawn(what.command, what.arguments, {
@@ -71,19 +76,34 @@ export function createProcesses({ root, onUnexpectedEnd }) {
     clearTimeout(killer)
   }
 
-  /** Runs a Node script of ours to its end. Throws CannotStart when it fails, having said why itself. */
-  async function run(name, script, environment, words = []) {
-    const child = spawn(process.execPath, ['--import', 'tsx', script, ...words], {
+  /**
+   * Runs a command to its end and returns its exit code, or the name of the signal that ended it.
+   * @param {string} command
+   * @param {string[]} words
+   * @param {Record<string, string | undefined>} environment
+   * @param {number} [limit] milliseconds after which it is stopped
+   */
+  async function finish(command, words, environment, limit) {
+    refuseWhileStopping()
+    const child = spawn(command, words, {
       cwd: root,
       env: environment,
       stdio: ['ignore', 'inherit', 'inherit'],
       detached: true,
     })
-    const entry = { name, child, ended: undefined }
+    const entry = { name: command, child, ended: undefined }
     running.push(entry)
+    const timer = limit && setTimeout(() => stopOne(entry), limit)
     const [code, signal] = await once(child, 'exit')
+    clearTimeout(timer)
     entry.ended = signal ?? code
-    if (code !== 0) throw new CannotStart(`${name} failed${signal ? ` (${signal})` : ''}; see above.`)
+    return entry.ended
+  }
+
+  /** Runs a TypeScript script of ours to its end. Throws CannotStart when it fails, having said why itself. */
+  async function run(name, script, environment, words = []) {
+    const ended = await finish(process.execPath, ['--import', 'tsx', script, ...words], environment)
+    if (ended !== 0) throw new CannotStart(`${name} failed (${ended}); see above.`)
   }
 
   /** Enters what is to be tidied away once every process has stopped. */
@@ -100,7 +120,7 @@ export function createProcesses({ root, onUnexpectedEnd }) {
     return stopping
   }
 
-  return { start, run, afterwards, stopAll }
+  return { start, finish, run, afterwards, stopAll }
 }
 
 /** Each child leads a group of its own, so that what it started in turn is reached as well. */

@@ -4,11 +4,12 @@ import { CannotStart } from './cannot-start.js'
  * Runs something that lasts until it is told to stop, by Ctrl-C, by a closed terminal or by SIGTERM, and then
  * stops it once, however often it is told.
  *
- * @param {() => Promise<void>} stop
+ * @param {(failure?: unknown) => Promise<void>} stop
+ * @param {number} [codeWhenTold] exit code after a signal
  * @returns {{ stopNow: (failure?: unknown) => Promise<void> }} `stopNow` stops it from within: a failure is reported and
  *   makes the process end with 1
  */
-export function untilTold(stop) {
+export function untilTold(stop, codeWhenTold = 0) {
   let stopping = false
 
   async function stopNow(failure) {
@@ -16,11 +17,13 @@ export function untilTold(stop) {
     stopping = true
     if (failure) report(failure)
     else console.log('\nStopping …')
-    await stop()
+    await stop(failure)
     if (!failure) console.log('Stopped.')
-    process.exit(failure ? 1 : 0)
+    process.exit(failure ? 1 : codeWhenTold)
   }
 
+  // A terminal or a pipe that has gone must not keep us from stopping in good order.
+  for (const output of [process.stdout, process.stderr]) output.on('error', () => {})
   for (const signal of ['SIGINT', 'SIGTERM', 'SIGHUP']) process.on(signal, () => stopNow())
   // npm passes a signal on to a shell between us, which dies of it without telling: then we have a new parent.
   const parent = process.ppid
