@@ -13,7 +13,14 @@ export interface Row<Body> {
 export type RowChange =
   | { op: 'add'; kind: string; id: string; body: unknown }
   | { op: 'edit'; kind: string; id: string; version: number; body: unknown }
-  | { op: 'delete'; kind: string; id: string; version: number }
+  | {
+      op: 'delete'
+      kind: string
+      id: string
+      version: number
+      /** The person was told where else the row is used, and wants it gone from there too. */
+      alsoElsewhere?: boolean
+    }
 
 export interface RowProblem {
   id: string
@@ -28,6 +35,14 @@ export interface RowConflict {
   /** What is in force now; null when somebody deleted the row. */
   theirs: { version: number; body: unknown; by: string; at: string } | null
   yours: unknown
+}
+
+/** Another row that uses this one. */
+export interface RowUse {
+  /** "case C2 wall to -14" */
+  words: string
+  /** True where the other row cannot do without: a zone without its material. The deletion is refused. */
+  holds: boolean
 }
 
 /** Answer to a save: all changes or none. */

@@ -12,14 +12,18 @@ export interface DraftRow {
   typed: Readonly<Record<string, { text: string; message: string }>>
   problems: readonly RowProblem[]
   state: 'saved' | 'unsaved' | 'conflict'
+  /** Who recorded the version in force, and when; '' for a row that is not saved yet. */
+  recordedBy: string
+  recordedFrom: string
 }
 
 export type Body = Record<string, unknown>
 
 export type RowEdit =
-  | { op: 'set'; id: string; cells: Record<string, CellInput> }
+  /** `typing` marks keystrokes in a form: a run of them in one field is undone together. */
+  | { op: 'set'; id: string; cells: Record<string, CellInput>; typing?: boolean }
   | { op: 'add'; id: string; kind: string; body: Body; cells: Record<string, CellInput> }
-  | { op: 'delete'; id: string }
+  | { op: 'delete'; id: string; alsoElsewhere?: boolean }
 
 /** Where the saving stands. `attention` counts cells that must be put right before their rows can be saved. */
 export type Saving =
@@ -60,8 +64,8 @@ export interface RowsStoreOptions {
   /** Schema of each kind of row that this page edits. */
   schemas: Readonly<Record<string, ZodType>>
   send: (changes: RowChange[]) => Promise<Sent>
-  /** After each save: the page asks for the states of the sections again. */
-  onSaved?: () => void
+  /** After each answer: the page reads again what changed around the rows. */
+  onAnswer?: () => void
   /** Where drafts wait out a reload or an expired session; null without one. */
   shelf?: { read: () => string | null; write: (text: string | null) => void }
   saveAfterMilliseconds?: number
@@ -80,6 +84,8 @@ interface Base {
   kind: string
   version: number
   body: Body
+  recordedBy?: string
+  recordedFrom?: string
 }
 
 type Cell = { value: unknown } | { text: string; message: string }
@@ -129,6 +135,8 @@ export function createRowsStore(options: RowsStoreOptions): RowsStore {
   const base = new Map<string, Base>()
   let drafts: Draft[] = []
   const conflicts = new Map<string, DraftConflict>()
+  /** Deleted rows that the person wants gone from everywhere they are used. */
+  const everywhere = new Set<string>()
   let undoSteps: Step[][] = []
   let redoSteps: Step[][] = []
   const listeners = new Set<() => void>()
@@ -144,9 +152,13 @@ export function createRowsStore(options: RowsStoreOptions): RowsStore {
 
   function take(rows: readonly Row<unknown>[]) {
     for (const row of rows) {
-      base.set(row.id, { kind: row.kind, version: row.version, body: row.body as Body })
+      base.set(row.id, baseOf(row, row.body as Body))
       drafts.push({ id: row.id, kind: row.kind, body: row.body as Body, typed: {} })
     }
+  }
+
+  function baseOf({ kind, version, recordedBy, recordedFrom }: Row<unknown>, body: Body): Base {
+    return { kind, version, body, recordedBy, recordedFrom }
   }
 
   function problemsOf(draft: Draft): RowProblem[] {
@@ -192,6 +204,8 @@ export function createRowsStore(options: RowsStoreOptions): RowsStore {
         typed: draft.typed,
         problems,
         state: conflicts.has(draft.id) ? 'conflict' : changed ? 'unsaved' : 'saved',
+        recordedBy: base.get(draft.id)?.recordedBy ?? '',
+        recordedFrom: base.get(draft.id)?.recordedFrom ?? '',
       }
     })
     const unsaved = rows.some((row) => row.state !== 'saved') || removed().length > 0
@@ -225,7 +239,10 @@ export function createRowsStore(options: RowsStoreOptions): RowsStore {
   function ready(): RowChange[] {
     const changes: RowChange[] = []
     for (const [id, known] of removed()) {
-      if (!conflicts.has(id)) changes.push({ op: 'delete', kind: known.kind, id, version: known.version })
+      if (conflicts.has(id)) continue
+      const { kind, version } = known
+      const change = { op: 'delete', kind, id, version } as const
+      changes.push(everywhere.has(id) ? { ...change, alsoElsewhere: true } : change)
     }
     for (const draft of drafts) {
       if (conflicts.has(draft.id) || !isChanged(draft)) continue
@@ -271,7 +288,7 @@ export function createRowsStore(options: RowsStoreOptions): RowsStore {
       failures += 1
     }
     tell()
-    if (sent.kind === 'answer' && sent.answer.ok) options.onSaved?.()
+    if (sent.kind === 'answer') options.onAnswer?.()
   }
 
   function accept(batch: RowChange[], saved: { id: string; version: number }[]) {
@@ -359,6 +376,7 @@ export function createRowsStore(options: RowsStoreOptions): RowsStore {
         steps.push({ op: 'add', draft: added, index: drafts.length - 1 })
       } else if (draft && edit.op === 'delete') {
         drafts = drafts.filter((one) => one !== draft)
+        if (edit.alsoElsewhere) everywhere.add(edit.id)
         steps.push({ op: 'delete', draft, index })
       } else if (draft && edit.op === 'set') {
         const after = Object.fromEntries(
@@ -373,7 +391,9 @@ export function createRowsStore(options: RowsStoreOptions): RowsStore {
       }
     }
     if (steps.length === 0) return
-    undoSteps = [...undoSteps, steps].slice(-200)
+    const [edit] = edits
+    const joined = edit?.op === 'set' && edit.typing ? joinTyping(undoSteps.at(-1), steps) : null
+    undoSteps = joined ? [...undoSteps.slice(0, -1), joined] : [...undoSteps, steps].slice(-200)
     redoSteps = []
     tell()
     schedule()
@@ -433,7 +453,7 @@ export function createRowsStore(options: RowsStoreOptions): RowsStore {
         draft && known?.version === row.version && sameBody(known.body, row.body)
           ? draft.body
           : (row.body as Body)
-      base.set(row.id, { kind: row.kind, version: row.version, body })
+      base.set(row.id, baseOf(row, body))
       next.push({ id: row.id, kind: row.kind, body, typed: {} })
     }
     for (const draft of drafts) {
@@ -519,6 +539,15 @@ export function createRowsStore(options: RowsStoreOptions): RowsStore {
     restore,
     resolve,
   }
+}
+
+/** Both steps as one where they are keystrokes in the same field of the same row. */
+function joinTyping(before: Step[] | undefined, after: Step[]): Step[] | null {
+  const [first, ...more] = before ?? []
+  const [last, ...others] = after
+  if (first?.op !== 'set' || last?.op !== 'set' || more.length > 0 || others.length > 0) return null
+  const same = first.id === last.id && Object.keys(first.after).join() === Object.keys(last.after).join()
+  return same ? [{ ...first, after: last.after }] : null
 }
 
 interface Shelved {

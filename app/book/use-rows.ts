@@ -36,7 +36,7 @@ export interface RowsEditor {
    * Rows of one kind whose body the schema takes, for drawings and totals: shown as typed, a moment before they are
    * saved. A row that cannot be read yet is left out.
    */
-  sound: <B>(kind: string) => { id: string; version: number; body: B }[]
+  sound: <B>(kind: string) => Row<B>[]
   /** Props of a Sheet. */
   sheet: (kind: string) => { rows: readonly SheetRow[]; edits: SheetEdits | undefined }
   /** One gesture, undone as a whole: what a drawing calls when a vertex was dragged. */
@@ -119,7 +119,7 @@ export function useRows(initial: readonly Row<unknown>[], options: UseRowsOption
       rows: initial,
       schemas,
       send: (changes) => sendRows(projectId, changes),
-      onSaved: () => {
+      onAnswer: () => {
         if (mounted.current) revalidate.current()
       },
       shelf:
@@ -177,9 +177,10 @@ export function useRows(initial: readonly Row<unknown>[], options: UseRowsOption
       conflicts: snapshot.conflicts,
       rows,
       sound<B>(kind: string) {
-        return rows(kind).flatMap((row) => {
-          const read = schemas[kind]?.safeParse(row.body)
-          return read?.success ? [{ id: row.id, version: row.version, body: read.data as B }] : []
+        return rows(kind).flatMap(({ id, version, body, recordedBy, recordedFrom }, position) => {
+          const read = schemas[kind]?.safeParse(body)
+          if (!read?.success) return []
+          return [{ id, kind, version, position, body: read.data as B, recordedBy, recordedFrom }]
         })
       },
       sheet(kind: string) {

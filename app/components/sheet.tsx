@@ -40,8 +40,8 @@ export interface SheetProps {
   empty?: string
   /** Remarks that refuse nothing (a value outside common practice), by row id. */
   warnings?: Readonly<Record<string, readonly SheetNote[]>>
-  /** Where else a row is used, in words ("case C2: rate"); deleting such a row asks first. */
-  usedBy?: (id: string) => readonly string[]
+  /** Where else a row is used; deleting such a row asks first, or says why it must stay. */
+  usedBy?: (id: string) => readonly SheetUse[]
   /** Row chosen here or in the drawing; the other follows. */
   selectedId?: string | null
   onSelect?: (id: string | null) => void
@@ -60,6 +60,13 @@ export interface SheetNote {
   message: string
 }
 
+export interface SheetUse {
+  /** "case C2" */
+  words: string
+  /** The other row cannot do without this one. */
+  holds: boolean
+}
+
 export interface SheetRow {
   id: string
   body: Record<string, unknown>
@@ -75,7 +82,7 @@ export interface SheetRow {
 export type SheetEdit =
   | { op: 'set'; id: string; cells: Record<string, CellInput> }
   | { op: 'add'; id: string; body: Record<string, unknown>; cells: Record<string, CellInput> }
-  | { op: 'delete'; id: string }
+  | { op: 'delete'; id: string; alsoElsewhere?: boolean }
 
 export interface SheetEdits {
   apply: (edits: SheetEdit[]) => void
@@ -120,7 +127,7 @@ export function Sheet(props: SheetProps) {
       setAsking(ids)
       return
     }
-    edits.apply(ids.map((id) => ({ op: 'delete', id })))
+    edits.apply(ids.map((id) => ({ op: 'delete', id, alsoElsewhere: sure })))
     setAsking([])
     setPicked([])
     frame.current?.focus()
@@ -162,7 +169,8 @@ export function Sheet(props: SheetProps) {
   }
 
   const notes = noteList(props)
-  const usedRows = asking.flatMap((id) => usedBy?.(id) ?? [])
+  const uses = asking.flatMap((id) => usedBy?.(id) ?? [])
+  const held = uses.some((use) => use.holds)
 
   return (
     <section
@@ -224,18 +232,27 @@ export function Sheet(props: SheetProps) {
         </span>
       </div>
       {asking.length > 0 && (
-        <Notice tone="warn" live title={`Delete ${asking.length === 1 ? `this ${noun}` : `these ${nouns}`}?`}>
-          <p>{usedRows.length === 1 ? 'It is used elsewhere:' : 'Used elsewhere:'}</p>
+        <Notice
+          tone="warn"
+          live
+          title={
+            held
+              ? `${asking.length === 1 ? `This ${noun} is` : 'Some of these are'} needed elsewhere and must stay:`
+              : `Delete ${asking.length === 1 ? `this ${noun}` : `these ${nouns}`} there too?`
+          }
+        >
           <ul className="my-1 list-disc pl-5">
-            {usedRows.map((use) => (
-              <li key={use}>{use}</li>
+            {uses.map((use) => (
+              <li key={use.words}>{use.words}</li>
             ))}
           </ul>
           <p className="mt-2 flex gap-2">
-            <Button look="danger" onClick={() => remove(asking, true)}>
-              Delete there too
-            </Button>
-            <Button onClick={() => setAsking([])}>Keep</Button>
+            {!held && (
+              <Button look="danger" onClick={() => remove(asking, true)}>
+                Delete there too
+              </Button>
+            )}
+            <Button onClick={() => setAsking([])}>{held ? 'Close' : 'Keep'}</Button>
           </p>
         </Notice>
       )}

@@ -1,5 +1,6 @@
 import { z } from 'zod'
 import { coordinate, polygon, positive, quantity, source, text, within } from '~/book/field'
+import { convert } from '~/units'
 
 const optionalStorage = positive('per length', 'Specific storage').nullable().default(null)
 const optionalFraction = (what: string) =>
@@ -25,14 +26,19 @@ export const materialSchema = z
 export type Material = z.infer<typeof materialSchema>
 
 /** Where a material lies: everywhere (no polygon) or in a polygon; a later zone replaces earlier ones. */
-export const zoneSchema = z.strictObject({
-  name: text(80, 'Name the zone.'),
-  materialId: z.string({ error: 'Choose the material.' }).min(1, 'Choose the material.'),
-  polygon: polygon.nullable().default(null),
-  base: quantity('length'),
-  top: quantity('length').nullable().default(null),
-  source,
-})
+export const zoneSchema = z
+  .strictObject({
+    name: text(80, 'Name the zone.'),
+    materialId: z.string({ error: 'Choose the material.' }).min(1, 'Choose the material.'),
+    polygon: polygon.nullable().default(null),
+    base: quantity('length'),
+    top: quantity('length').nullable().default(null),
+    source,
+  })
+  .refine((zone) => !zone.top || convert(zone.top, zone.base.unit) > zone.base.value, {
+    path: ['top'],
+    error: 'The top level must lie above the base level.',
+  })
 export type Zone = z.infer<typeof zoneSchema>
 
 /** A named point where heads are wanted; an instrument may refer to one. */
