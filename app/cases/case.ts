@@ -121,8 +121,3 @@ export function overrideOf(
 ): Quantity | undefined {
   return overrides.find((o) => o.rowId === rowId && o.quantity === quantity)?.value
 }
-
-/** The cases that set a quantity of a row; whoever deletes that row is told of them first. */
-export function casesSetting(cases: readonly Row<Case>[], rowId: string): Row<Case>[] {
-  return cases.filter((row) => row.body.overrides.some((o) => o.rowId === rowId))
-}

@@ -120,25 +120,6 @@ export function freezeCase(inputs: CaseInputs, caseId: string): FreezeAnswer {
   }
   if (problems.length > 0 || !flow || !extent || !cellSize || !grid) return { ok: false, problems }
 
-  const rowIds = new Set(
-    [
-      ...inputs.materials,
-      ...inputs.wells,
-      ...inputs.rechargeZones,
-      ...inputs.boundaries,
-      ...inputs.walls,
-    ].map((row) => row.id),
-  )
-  for (const override of settings.overrides) {
-    if (!rowIds.has(override.rowId))
-      notices.push({
-        section: 'cases',
-        row: own.body.name,
-        rowId: own.id,
-        message: 'A value of this case belongs to a row that was deleted: it has no effect.',
-      })
-  }
-
   const inside = inputs.points.filter((row) => within(extent, row.body))
   const outside = inputs.points.filter((row) => !within(extent, row.body))
   for (const point of outside) {
@@ -305,7 +286,7 @@ function touches(extent: NonNullable<CaseSettings['extent']>, line: readonly [nu
   return false
 }
 
-function sameNames<Body extends { name: string }>(rows: readonly Row<Body>[]): Row<Body>[] {
+function sameNames(rows: readonly Row<{ name: string }>[]): Row<{ name: string }>[] {
   const seen = new Set<string>()
   return rows.filter(({ body: { name } }) => {
     if (seen.has(name)) return true
