@@ -21,11 +21,11 @@ export function Confirm({
   disabled?: boolean
 }) {
   return (
-    <details className="text-left">
-      <summary className="inline-block rounded px-2 py-1 text-[0.9rem] text-bourne hover:underline">
+    <details>
+      <summary className="inline-block rounded py-0.5 pr-2 text-[0.9rem] text-bourne hover:underline">
         {label}
       </summary>
-      <p className="mt-1 mb-2 max-w-xs text-[0.9rem] whitespace-normal">{question}</p>
+      <p className="mt-1 mb-2 max-w-xs text-[0.9rem]">{question}</p>
       <Button type="submit" look="danger" name={name} value={value} disabled={disabled}>
         {yes}
       </Button>

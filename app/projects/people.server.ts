@@ -105,8 +105,8 @@ async function lockedPerson(
 }
 
 /**
- * Makes somebody an administrator, or no longer one. Their sessions end, since their rights changed. Without `byUserId` it is the
- * doing of whoever runs the server.
+ * Makes somebody an administrator, or no longer one. Their sessions end, since their rights changed.
+ * Without `byUserId` it is done by whoever runs the server.
  */
 export async function setAdministrator(
   db: Database,
@@ -135,7 +135,7 @@ export async function setAdministrator(
 export async function markAsLeft(
   db: Database,
   userId: number,
-  byUserId: number,
+  byUserId?: number,
 ): Promise<PersonRefusal | undefined> {
   return db.transaction(async (trx) => {
     const { row, otherAdministrators } = await lockedPerson(trx, userId)

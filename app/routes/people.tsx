@@ -4,7 +4,6 @@ import { data, Form, useNavigation } from 'react-router'
 import { z } from 'zod'
 import { Button } from '~/components/button'
 import { Confirm } from '~/components/confirm'
-import { DataTable } from '~/components/data-table'
 import { Field } from '~/components/field'
 import { fieldProps } from '~/components/form-field'
 import { FormMessage } from '~/components/form-message'
@@ -67,7 +66,7 @@ export async function action({ context, request }: Route.ActionArgs) {
         400,
       )
     }
-    return { ...submission.reply({ resetForm: true }), done: `${form.name} can sign in now.` }
+    return { ...submission.reply(), done: `${form.name} can sign in now.` }
   }
   const [refusal, done] = await change(form, user.userId)
   if (refusal) return data(submission.reply({ formErrors: [refusals[refusal]] }), 400)
@@ -104,32 +103,27 @@ export default function People({ loaderData, actionData }: Route.ComponentProps)
     <>
       <PageTitle title="People" />
       <FormMessage result={actionData} />
-      <DataTable
-        caption="People of the firm and of its clients"
-        rows={loaderData.people}
-        rowKey={(person) => person.id}
-        columns={[
-          { head: 'Name', cell: (person) => person.name },
-          { head: 'E-mail address', words: true, cell: (person) => person.email },
-          {
-            head: 'In the firm',
-            words: true,
-            cell: (person) => (person.isAdministrator ? 'administrator' : '–'),
-          },
-          {
-            head: 'State',
-            words: true,
-            cell: (person) =>
-              person.leftOn ? `left ${person.leftOn}` : person.hasSignedIn ? 'active' : 'not signed in yet',
-          },
-          {
-            head: 'Change',
-            words: true,
-            cell: (person) => <Change person={person} isMe={person.id === loaderData.me} />,
-          },
-        ]}
-      />
-      <AddPerson result={actionData} />
+      <ul className="border-t border-rule">
+        {loaderData.people.map((person) => (
+          <li
+            key={person.id}
+            className="grid gap-x-6 gap-y-1 border-b border-rule py-2.5 sm:grid-cols-[1fr_11rem_19rem]"
+          >
+            <div className="min-w-0">
+              <p className={`font-semibold ${person.leftOn ? 'text-flint-2' : ''}`}>
+                {person.name}
+                {person.isAdministrator && <span className="font-normal text-flint-2">, administrator</span>}
+              </p>
+              <p className="break-words text-flint-2">{person.email}</p>
+            </div>
+            <p className="text-flint-2">
+              {person.leftOn ? `left ${person.leftOn}` : person.hasSignedIn ? 'active' : 'not signed in yet'}
+            </p>
+            <Change person={person} isMe={person.id === loaderData.me} />
+          </li>
+        ))}
+      </ul>
+      <AddPerson key={loaderData.people.length} result={actionData} />
     </>
   )
 }
@@ -187,7 +181,7 @@ function Change({ person, isMe }: { person: PersonLine; isMe: boolean }) {
 
 function AddPerson({ result }: { result: Route.ComponentProps['actionData'] }) {
   const [form, fields] = useForm({
-    lastResult: result?.initialValue?.intent === 'add' || result?.initialValue === null ? result : undefined,
+    lastResult: result?.status === 'error' && result.initialValue?.intent === 'add' ? result : undefined,
     onValidate: ({ formData }) => parseWithZod(formData, { schema: personSchema }),
     shouldRevalidate: 'onInput',
   })

@@ -2,7 +2,6 @@ import { parseWithZod } from '@conform-to/zod/v4'
 import { data, Form, href, Link, useNavigation } from 'react-router'
 import { z } from 'zod'
 import { Button, LinkButton } from '~/components/button'
-import { DataTable } from '~/components/data-table'
 import { FormMessage } from '~/components/form-message'
 import { PageTitle } from '~/components/page-title'
 import { appointManager, mailInvitation } from '~/projects/members.server'
@@ -74,41 +73,33 @@ export default function Projects({ loaderData, actionData }: Route.ComponentProp
         }
       />
       <FormMessage result={actionData} />
-      <DataTable
-        caption="My projects"
-        rows={mine}
-        rowKey={(project) => project.id}
-        empty={
-          firm
+      {mine.length === 0 && (
+        <p className="border border-rule bg-chalk-2 px-3 py-2.5 text-flint-2">
+          {firm
             ? 'You are a member of no project. As an administrator you can make one.'
-            : 'You are a member of no project yet. A project manager can invite you.'
-        }
-        columns={[
-          {
-            head: 'Number',
-            cell: (project) => (
-              <Link to={href('/projects/:projectId', { projectId: String(project.id) })}>
-                {project.number}
-              </Link>
-            ),
-          },
-          {
-            head: 'Title',
-            words: true,
-            cell: (project) => (
-              <Link
-                to={href('/projects/:projectId', { projectId: String(project.id) })}
-                className="font-semibold"
-              >
-                {project.title}
-              </Link>
-            ),
-          },
-          { head: 'Client', words: true, cell: (project) => project.client },
-          { head: 'Stage', words: true, cell: (project) => project.stage || '–' },
-          { head: 'You are', words: true, cell: (project) => roleNames[project.role] },
-        ]}
-      />
+            : 'You are a member of no project yet. A project manager can invite you.'}
+        </p>
+      )}
+      <ul className="border-t border-rule empty:border-0">
+        {mine.map((project) => (
+          <li
+            key={project.id}
+            className="grid gap-x-6 gap-y-0.5 border-b border-rule py-3 sm:grid-cols-[9rem_1fr_auto]"
+          >
+            <p className="break-words text-flint-2">{project.number}</p>
+            <div className="min-w-0">
+              <h2 className="text-[1.15rem] leading-snug font-semibold">
+                <Link to={href('/projects/:projectId', { projectId: String(project.id) })}>
+                  {project.title}
+                </Link>
+              </h2>
+              <p>{project.client}</p>
+              {project.stage && <p className="text-flint-2">{project.stage}</p>}
+            </div>
+            <p className="text-flint-2">{roleNames[project.role]}</p>
+          </li>
+        ))}
+      </ul>
       {firm && (
         <section className="mt-10">
           <h2 className="text-[1.15rem] font-semibold">All projects of the firm</h2>
@@ -116,25 +107,25 @@ export default function Projects({ loaderData, actionData }: Route.ComponentProp
             As an administrator you can put somebody in charge of a project. Its calc book opens to its
             members only.
           </p>
-          <DataTable
-            caption="All projects of the firm"
-            rows={firm.projects}
-            rowKey={(project) => project.id}
-            columns={[
-              { head: 'Number', cell: (project) => project.number },
-              { head: 'Title', words: true, cell: (project) => project.title },
-              {
-                head: 'Project manager',
-                words: true,
-                cell: (project) => project.managers.join(', ') || 'nobody',
-              },
-              {
-                head: 'Appoint',
-                words: true,
-                cell: (project) => <Appoint project={project} people={firm.people} />,
-              },
-            ]}
-          />
+          <ul className="border-t border-rule empty:border-0">
+            {firm.projects.map((project) => (
+              <li
+                key={project.id}
+                className="grid items-start gap-x-6 gap-y-1 border-b border-rule py-2.5 sm:grid-cols-[9rem_1fr_auto]"
+              >
+                <p className="break-words text-flint-2">{project.number}</p>
+                <div>
+                  <p className="font-semibold">{project.title}</p>
+                  <p className="text-flint-2">
+                    {project.managers.length > 0
+                      ? `in charge: ${project.managers.join(', ')}`
+                      : 'nobody is in charge'}
+                  </p>
+                </div>
+                <Appoint project={project} people={firm.people} />
+              </li>
+            ))}
+          </ul>
         </section>
       )}
     </>

@@ -96,7 +96,7 @@ export async function action({ context, request }: Route.ActionArgs) {
     if (!answer.ok) return data(submission.reply({ fieldErrors: inviteRefusals[answer.refusal] }), 400)
     if (!answer.isNew) return { ...submission.reply(), done: `${form.email} is a member already.` }
     return {
-      ...submission.reply({ resetForm: true }),
+      ...submission.reply(),
       done: await mailed(project.id, answer.userId, user.name),
     }
   }
@@ -139,6 +139,7 @@ async function mailed(projectId: number, invitedId: number, invitedBy: string): 
 
 type Loaded = Route.ComponentProps['loaderData']
 type Result = Route.ComponentProps['actionData']
+type MemberLine = Loaded['members'][number]
 
 export default function Settings({ loaderData, actionData }: Route.ComponentProps) {
   return (
@@ -154,7 +155,7 @@ export default function Settings({ loaderData, actionData }: Route.ComponentProp
         Members
       </h2>
       <Members loaded={loaderData} />
-      {loaderData.mayManage && <Invite result={actionData} />}
+      {loaderData.mayManage && <Invite key={loaderData.members.length} result={actionData} />}
       <h2 className="mt-10 mb-1 text-[1.15rem] font-semibold">Who may do what</h2>
       <p className="mb-3 max-w-prose text-flint-2">
         Checker and approver of a package are never its originator. Administrators of the firm look after
@@ -167,7 +168,7 @@ export default function Settings({ loaderData, actionData }: Route.ComponentProp
 
 function SettingsForm({ loaded, result }: { loaded: Loaded; result: Result }) {
   const [form, fields] = useForm<ProjectInput>({
-    lastResult: result?.initialValue?.intent === 'settings' ? result : undefined,
+    lastResult: result?.status === 'error' && result.initialValue?.intent === 'settings' ? result : undefined,
     defaultValue: { ...loaded.settings, crsEpsg: String(loaded.settings.crsEpsg) },
     onValidate: ({ formData }) => parseWithZod(formData, { schema: projectSchema }),
     shouldRevalidate: 'onInput',
@@ -207,40 +208,28 @@ function SettingsList({ settings }: { settings: ProjectInput }) {
   )
 }
 
-type MemberLine = Loaded['members'][number]
-
 function Members({ loaded }: { loaded: Loaded }) {
   return (
-    <DataTable
-      caption="Members"
-      rows={loaded.members}
-      rowKey={(line) => line.userId}
-      columns={[
-        { head: 'Name', cell: (line) => line.name },
-        { head: 'E-mail address', words: true, cell: (line) => line.email },
-        {
-          head: 'Role',
-          words: true,
-          cell: (line) => (loaded.mayManage ? <RoleForm line={line} /> : roleNames[line.role]),
-        },
-        { head: 'Since', words: true, cell: (line) => line.since },
-        {
-          head: 'State',
-          words: true,
-          cell: (line) =>
-            line.hasSignedIn ? 'active' : <InvitedLine line={line} mayManage={loaded.mayManage} />,
-        },
-        ...(loaded.mayManage
-          ? [
-              {
-                head: 'Membership',
-                words: true,
-                cell: (line: MemberLine) => <EndMembership line={line} isMe={line.userId === loaded.me} />,
-              },
-            ]
-          : []),
-      ]}
-    />
+    <ul className="max-w-4xl border-t border-rule">
+      {loaded.members.map((line) => (
+        <li
+          key={line.userId}
+          className="grid items-start gap-x-6 gap-y-1.5 border-b border-rule py-2.5 md:grid-cols-[1fr_20rem_9rem]"
+        >
+          <div className="min-w-0">
+            <p className="font-semibold">{line.name}</p>
+            <p className="break-words text-flint-2">{line.email}</p>
+            {line.hasSignedIn ? (
+              <p className="text-[0.9rem] text-flint-2">member since {line.since}</p>
+            ) : (
+              <InvitedLine line={line} mayManage={loaded.mayManage} />
+            )}
+          </div>
+          {loaded.mayManage ? <RoleForm line={line} /> : <p>{roleNames[line.role]}</p>}
+          {loaded.mayManage && <EndMembership line={line} isMe={line.userId === loaded.me} />}
+        </li>
+      ))}
+    </ul>
   )
 }
 
@@ -276,8 +265,8 @@ function RoleOptions() {
 function InvitedLine({ line, mayManage }: { line: MemberLine; mayManage: boolean }) {
   const isBusy = useNavigation().state !== 'idle'
   return (
-    <div className="whitespace-nowrap">
-      invited, not signed in yet
+    <div className="flex flex-wrap gap-x-3 text-[0.9rem]">
+      <p className="text-ochre">invited {line.since}, not signed in yet</p>
       {mayManage && (
         <Form method="post">
           <input type="hidden" name="userId" value={line.userId} />
@@ -286,7 +275,7 @@ function InvitedLine({ line, mayManage }: { line: MemberLine; mayManage: boolean
             name="intent"
             value="send again"
             disabled={isBusy}
-            className="text-[0.9rem] text-bourne hover:underline"
+            className="text-bourne hover:underline"
           >
             Send the invitation again
           </button>
@@ -302,7 +291,7 @@ function EndMembership({ line, isMe }: { line: MemberLine; isMe: boolean }) {
     <Form method="post">
       <input type="hidden" name="userId" value={line.userId} />
       <Confirm
-        label="End"
+        label="End membership"
         question={`${isMe ? 'You' : line.name} will be signed out and not see this project any more. What was signed and recorded stays.`}
         yes="End the membership"
         name="intent"
@@ -376,7 +365,7 @@ function Permissions({ permissions }: { permissions: Loaded['permissions'] }) {
           words: true,
           cell: (line: Loaded['permissions'][number]) =>
             line.roles.includes(role) ? (
-              <span className="text-moss">
+              <span className="whitespace-nowrap text-moss">
                 <span aria-hidden>● </span>yes
               </span>
             ) : (
