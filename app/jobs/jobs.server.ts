@@ -1,5 +1,6 @@
 import { existsSync } from 'node:fs'
 import { join } from 'node:path'
+import { pathToFileURL } from 'node:url'
 import { Worker } from 'node:worker_threads'
 import { type Database, database } from '~database/connection.server'
 
@@ -29,7 +30,10 @@ const sources: Record<JobKind, string> = {
 function startThread(kind: JobKind, workerData: unknown): Worker {
   const built = join(process.cwd(), 'build/threads', `${kind}.js`)
   if (process.env.NODE_ENV === 'production' && existsSync(built)) return new Worker(built, { workerData })
-  return new Worker(join(process.cwd(), sources[kind]), { workerData, execArgv: ['--import', 'tsx'] })
+  // A thread of Node 20 does not take over `--import tsx`: it registers tsx itself, then loads the source.
+  const source = JSON.stringify(pathToFileURL(join(process.cwd(), sources[kind])).href)
+  const code = `import('tsx/esm/api').then(({ register }) => { register(); return import(${source}) })`
+  return new Worker(code, { eval: true, workerData })
 }
 
 export interface JobRequest<Done> {
