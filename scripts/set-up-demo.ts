@@ -24,10 +24,9 @@ async function setUpDemo(folder: string): Promise<void> {
       writeFileSync(mark, '', { mode: 0o600 })
     }
     console.log(migrationReport(await migrateDatabase(settings)))
-    // The demo's seed is being written: until then there is nobody to sign in as.
-    if (!(await database('users').first('id')) && existsSync('database/seeds/demo.ts')) {
+    if (!(await database('users').first('id'))) {
       console.log('Setting up the demo …')
-      const { seedDemo } = await import('../database/seeds/demo.ts')
+      const { seedDemo } = await import('./seed-demo.ts')
       await seedDemo(database)
     }
     rmSync(mark, { force: true })

@@ -30,7 +30,9 @@ describe('fit statistics', () => {
     const design = new Matrix(rows.map(([x, y]) => [1, x * 1000, y * 1000]))
     const plane = solve(design, Matrix.columnVector(rows.map(([, , h]) => h)))
     const modelled = design.mmul(plane).to1DArray()
-    const statistics = fitStatistics(rows.map(([, , measured], i) => ({ measured, modelled: modelled[i] ?? Number.NaN })))
+    const statistics = fitStatistics(
+      rows.map(([, , measured], i) => ({ measured, modelled: modelled[i] ?? Number.NaN })),
+    )
     expect(statistics?.n).toBe(85)
     expect(statistics?.bias).toBeCloseTo(0, 6)
     expect(statistics?.rmse).toBeCloseTo(61.184428, 5)

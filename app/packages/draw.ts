@@ -5,10 +5,11 @@ import pdfmake from 'pdfmake'
 import type { Content, ContentTable, TableCell, TDocumentDefinitions } from 'pdfmake/interfaces'
 import { lineLength, signedArea, type Vertex } from '~/book/field'
 import { sections } from '~/book/sections'
+import type { HeadField } from '~/heads/field'
 import { decodeHeads } from '~/solver/heads-buffer'
 import { convert, type Dimension, formatNumber, type Quantity, shownUnit, unitLabel } from '~/units'
+import { type DrawnFigure, drawdownFigure, headsFigure, oneToOneFigure, residualFigure } from './figures'
 import type { DrawRequest, GatheredContent, GatheredCover, GatheredRun } from './gathered'
-import { drawdownFigure, fitFigure, headsFigure } from './figures'
 import { statusMeaning } from './package'
 
 const ink = '#14191d'
@@ -67,7 +68,13 @@ export function packageDocument(request: DrawRequest): TDocumentDefinitions {
     },
     watermark: final
       ? undefined
-      : { text: cover.status === 'draft' ? 'DRAFT' : cover.status.toUpperCase(), color: alarm, opacity: 0.07, bold: true, angle: 52 },
+      : {
+          text: cover.status === 'draft' ? 'DRAFT' : cover.status.toUpperCase(),
+          color: alarm,
+          opacity: 0.07,
+          bold: true,
+          angle: 52,
+        },
     header: (page) =>
       page === 1
         ? null
@@ -75,7 +82,12 @@ export function packageDocument(request: DrawRequest): TDocumentDefinitions {
             margin: [62, 26, 48, 0],
             columns: [
               { text: content.project.title, color: grey, fontSize: 8.5 },
-              { text: `${reference}   ${final ? '' : cover.status.toUpperCase()}`.trim(), alignment: 'right', fontSize: 8.5, color: final ? grey : alarm },
+              {
+                text: `${reference}   ${final ? '' : cover.status.toUpperCase()}`.trim(),
+                alignment: 'right',
+                fontSize: 8.5,
+                color: final ? grey : alarm,
+              },
             ],
           },
     footer: (page, pages) => ({
@@ -136,8 +148,10 @@ function sub(no: string, title: string): Content {
 }
 
 const tableLayout = {
-  hLineWidth: (i: number, node: ContentTable) => (i === 0 || i === 1 || i === node.table.body.length ? 0.7 : 0.4),
-  hLineColor: (i: number, node: ContentTable) => (i === 0 || i === 1 || i === node.table.body.length ? grey : rule),
+  hLineWidth: (i: number, node: ContentTable) =>
+    i === 0 || i === 1 || i === node.table.body.length ? 0.7 : 0.4,
+  hLineColor: (i: number, node: ContentTable) =>
+    i === 0 || i === 1 || i === node.table.body.length ? grey : rule,
   vLineWidth: () => 0,
   paddingLeft: (i: number) => (i === 0 ? 2 : 5),
   paddingRight: () => 3,
@@ -199,11 +213,12 @@ function facts(rows: [string, string][]): Content {
   }
 }
 
-function figure(svg: string, no: string, caption: string, ratio: number): Content {
+function figure(no: string, { svg, ratio, caption }: DrawnFigure, lead: string, share = 1): Content {
+  const width = textWidth * share
   return {
     stack: [
-      { svg, width: textWidth, height: textWidth * ratio },
-      { text: [{ text: `Fig. ${no}  `, bold: true, color: ink }, caption], style: 'caption' },
+      { svg, width, height: width * ratio },
+      { text: [{ text: `Fig. ${no}  `, bold: true, color: ink }, lead, caption], style: 'caption' },
     ],
     unbreakable: true,
   }
@@ -228,13 +243,16 @@ function inUnit(content: GatheredContent, dimension: Dimension) {
   const unit = shownUnit(dimension, content.project.units)
   return {
     unit: unitLabel(unit),
-    show: (q: Quantity | null | undefined, decimals?: number) => (q ? formatNumber(convert(q, unit), decimals) : '–'),
+    show: (q: Quantity | null | undefined, decimals?: number) =>
+      q ? formatNumber(convert(q, unit), decimals) : '–',
   }
 }
 
 function localTime(content: GatheredContent, iso: string | null): string {
   if (!iso) return '–'
-  return DateTime.fromISO(iso, { zone: content.project.timeZone }).setLocale('en-GB').toFormat('d LLL yyyy HH:mm')
+  return DateTime.fromISO(iso, { zone: content.project.timeZone })
+    .setLocale('en-GB')
+    .toFormat('d LLL yyyy HH:mm')
 }
 
 function localDay(content: GatheredContent, iso: string | null): string {
@@ -250,7 +268,8 @@ function paragraph(label: string, text: string | undefined): Content[] {
 
 function coverPage(content: GatheredContent, cover: GatheredCover): Content[] {
   const { project } = content
-  const signature = (role: 'originator' | 'checker' | 'approver') => cover.signatures.find((s) => s.role === role)
+  const signature = (role: 'originator' | 'checker' | 'approver') =>
+    cover.signatures.find((s) => s.role === role)
   const signed = (role: 'originator' | 'checker' | 'approver', label: string): TableCell[] => {
     const found = signature(role)
     return [
@@ -260,7 +279,13 @@ function coverPage(content: GatheredContent, cover: GatheredCover): Content[] {
     ]
   }
   return [
-    { text: 'CALCULATION PACKAGE', fontSize: 9.5, characterSpacing: 1.4, color: grey, margin: [0, 28, 0, 26] },
+    {
+      text: 'CALCULATION PACKAGE',
+      fontSize: 9.5,
+      characterSpacing: 1.4,
+      color: grey,
+      margin: [0, 28, 0, 26],
+    },
     { text: project.title, fontSize: 28, bold: true, lineHeight: 1.05, margin: [0, 0, 0, 6] },
     { text: project.client, fontSize: 13, color: grey, margin: [0, 0, 0, 30] },
     facts([
@@ -270,7 +295,10 @@ function coverPage(content: GatheredContent, cover: GatheredCover): Content[] {
       ['Status', `${cover.status}: ${statusMeaning[cover.status]}`],
       ['Issued for', cover.purpose],
       ['Date', localDay(content, cover.issuedAt ?? cover.madeAt)],
-      ['Supersedes', cover.revisions.find((r) => r.revision !== cover.revision && r.issuedAt)?.revision ?? 'nothing'],
+      [
+        'Supersedes',
+        cover.revisions.find((r) => r.revision !== cover.revision && r.issuedAt)?.revision ?? 'nothing',
+      ],
       ['Distribution', cover.distribution || 'as the project manager decides'],
     ]),
     { text: 'Sign-off', style: 'sub' },
@@ -298,7 +326,10 @@ function coverPage(content: GatheredContent, cover: GatheredCover): Content[] {
     },
     facts([
       ['Input hash (SHA-256)', cover.inputSha256],
-      ['Run of record', `run ${content.run.number}, engine ${content.run.result.engine}, model file ${content.run.inputSha256}`],
+      [
+        'Run of record',
+        `run ${content.run.number}, engine ${content.run.result.engine}, model file ${content.run.inputSha256}`,
+      ],
       ['Levels', `${project.units.length}, ${project.verticalDatum}`],
       ['Grid reference system', `EPSG:${project.crsEpsg}`],
       ['Times', project.timeZone],
@@ -311,7 +342,9 @@ function coverPage(content: GatheredContent, cover: GatheredCover): Content[] {
 }
 
 function contentsPage(): Content {
-  return { toc: { title: { text: 'Contents', style: 'section', pageBreak: 'before' }, numberStyle: { color: grey } } }
+  return {
+    toc: { title: { text: 'Contents', style: 'section', pageBreak: 'before' }, numberStyle: { color: grey } },
+  }
 }
 
 // ---- sections -------------------------------------------------------------------------------------------------
@@ -411,7 +444,11 @@ function groundSection(content: GatheredContent): Content[] {
       [
         { head: 'Zone', cell: (z) => z.name },
         { head: 'Material', words: true, cell: (z) => name.get(z.materialId) ?? 'deleted' },
-        { head: 'Place', words: true, cell: (z) => (z.polygon ? `polygon of ${z.polygon.length} vertices` : 'everywhere') },
+        {
+          head: 'Place',
+          words: true,
+          cell: (z) => (z.polygon ? `polygon of ${z.polygon.length} vertices` : 'everywhere'),
+        },
         { head: 'Base', unit: level.unit, cell: (z) => level.show(z.base, 2) },
         { head: 'Top', unit: level.unit, cell: (z) => level.show(z.top, 2) },
         { head: 'Source', words: true, width: '*', cell: (z) => z.source || 'not stated' },
@@ -471,7 +508,8 @@ function waterSection(content: GatheredContent): Content[] {
         {
           head: 'Area',
           unit: `${length}²`,
-          cell: (r) => (r.polygon ? formatNumber(Math.abs(signedArea(r.polygon as Vertex[])), 0) : 'everywhere'),
+          cell: (r) =>
+            r.polygon ? formatNumber(Math.abs(signedArea(r.polygon as Vertex[])), 0) : 'everywhere',
         },
         { head: 'Source', words: true, width: '*', cell: (r) => r.source || 'not stated' },
       ],
@@ -490,7 +528,11 @@ function waterSection(content: GatheredContent): Content[] {
           unit: length,
           cell: (b) => (b.levels ? b.levels.map((q) => level.show(q, 2)).join(' … ') : '–'),
         },
-        { head: 'Flux', unit: flux.unit, cell: (b) => (b.flux ? `${flux.show(b.flux)} ${b.direction}` : '–') },
+        {
+          head: 'Flux',
+          unit: flux.unit,
+          cell: (b) => (b.flux ? `${flux.show(b.flux)} ${b.direction}` : '–'),
+        },
         { head: 'Conductance', unit: recharge.unit, cell: (b) => recharge.show(b.conductance) },
         { head: 'Source', words: true, width: '*', cell: (b) => b.source || 'not stated' },
       ],
@@ -504,7 +546,11 @@ function waterSection(content: GatheredContent): Content[] {
         { head: 'Wall', cell: (w) => w.name },
         { head: 'Length', unit: length, cell: (w) => formatNumber(lineLength(w.line as Vertex[]), 1) },
         { head: 'Thickness', unit: length, cell: (w) => level.show(w.thickness, 2) },
-        { head: 'K', unit: recharge.unit, cell: (w) => (w.k.value === 0 ? 'impermeable' : recharge.show(w.k)) },
+        {
+          head: 'K',
+          unit: recharge.unit,
+          cell: (w) => (w.k.value === 0 ? 'impermeable' : recharge.show(w.k)),
+        },
         { head: 'Source', words: true, width: '*', cell: (w) => w.source || 'not stated' },
       ],
       content.walls,
@@ -526,12 +572,20 @@ function casesSection(content: GatheredContent): Content[] {
         'Extent',
         `x ${formatNumber(model.extent.x[0], 1)} to ${formatNumber(model.extent.x[1], 1)} ${length}, y ${formatNumber(model.extent.y[0], 1)} to ${formatNumber(model.extent.y[1], 1)} ${length}`,
       ],
-      ['Grid', `${result.grid.columns} columns × ${result.grid.rows} rows, ${formatNumber(result.grid.active, 0)} cells active`],
+      [
+        'Grid',
+        `${result.grid.columns} columns × ${result.grid.rows} rows, ${formatNumber(result.grid.active, 0)} cells active`,
+      ],
       [
         'No-flow edges',
         result.noFlowEdges.length > 0 ? result.noFlowEdges.join(', ') : 'none: every edge has a boundary',
       ],
-      ...(content.against ? ([['Compared with', `run ${content.against.number}, case ${content.against.caseName}`]] as [string, string][]) : []),
+      ...(content.against
+        ? ([['Compared with', `run ${content.against.number}, case ${content.against.caseName}`]] as [
+            string,
+            string,
+          ][])
+        : []),
     ]),
     sub('4.2', 'Solver record'),
     ...runRecord(content, run),
@@ -543,12 +597,18 @@ function runRecord(content: GatheredContent, run: GatheredRun): Content[] {
   const settings = run.model.solver
   return [
     facts([
-      ['Run', `${run.number}, by ${run.by}, ${localTime(content, run.startedAt)} to ${localTime(content, run.endedAt)}`],
+      [
+        'Run',
+        `${run.number}, by ${run.by}, ${localTime(content, run.startedAt)} to ${localTime(content, run.endedAt)}`,
+      ],
       ['Engine', `Lavant engine ${result.engine}`],
       ['Method', methodWords(result.method)],
       ['Outcome', result.converged ? 'converged' : 'DID NOT CONVERGE: not to be used'],
       ['Sweeps', formatNumber(result.iterations, 0)],
-      ['Residual', `${scientific(result.residual)} of the right-hand side; asked ${scientific(settings?.tolerance ?? 1e-10)}`],
+      [
+        'Residual',
+        `${scientific(result.residual)} of the right-hand side; asked ${scientific(settings?.tolerance ?? 1e-10)}`,
+      ],
       ['Water-balance error', `${scientific(result.balance.errorPercent[0] ?? Number.NaN)} % of the inflow`],
       ['Model file (SHA-256)', run.inputSha256],
       ['Head field (SHA-256)', run.headsSha256],
@@ -580,23 +640,37 @@ function scientific(value: number): string {
 function headsSection({ content, heads, againstHeads }: DrawRequest): Content[] {
   const { run, against, project } = content
   const { result } = run
-  const field = decodeHeads(heads)
-  const first = headsFigure(content, field)
+  const field = decodedField(heads)
   const rate = unitLabel(shownUnit('rate', project.units))
-  const drawdown = against && againstHeads ? drawdownFigure(content, field, decodeHeads(againstHeads)) : null
+  const drawdown = against && againstHeads ? drawdownFigure(content, field, decodedField(againstHeads)) : null
   const againstHead = new Map(against?.result.points.map((p) => [p.name, p.head[0] ?? null]))
   const notConverged: Content[] = result.converged
     ? []
-    : [{ text: 'This run did not converge. Its heads are not a result.', color: alarm, bold: true, margin: [0, 0, 0, 6] }]
+    : [
+        {
+          text: 'This run did not converge. Its heads are not a result.',
+          color: alarm,
+          bold: true,
+          margin: [0, 0, 0, 6],
+        },
+      ]
   return [
     sectionTitle(5, 'Heads'),
     ...notConverged,
     sub('5.1', 'Head contours'),
-    figure(first.svg, '5.1', `Heads, ${project.units.length} ${project.verticalDatum}; case ${run.caseName}, run ${run.number}, ${localDay(content, run.endedAt)}. ${first.caption}`, first.ratio),
+    figure(
+      '5.1',
+      headsFigure(content, field),
+      `Heads, ${project.units.length} ${project.verticalDatum}; case ${run.caseName}, run ${run.number}, ${localDay(content, run.endedAt)}. `,
+    ),
     ...(drawdown && against
       ? [
           sub('5.2', 'Drawdown'),
-          figure(drawdown.svg, '5.2', `Drawdown in ${project.units.length} of run ${run.number} against run ${against.number} (${against.caseName}). ${drawdown.caption}`, drawdown.ratio),
+          figure(
+            '5.2',
+            drawdown,
+            `Drawdown in ${project.units.length} of run ${run.number} against run ${against.number} (${against.caseName}). `,
+          ),
         ]
       : []),
     sub('5.3', 'Heads at named points'),
@@ -614,7 +688,10 @@ function headsSection({ content, heads, againstHeads }: DrawRequest): Content[] 
                 cell: (p: (typeof result.points)[number]) => {
                   const before = againstHead.get(p.name)
                   const now = p.head[0]
-                  return formatNumber(typeof before === 'number' && typeof now === 'number' ? before - now : null, 3)
+                  return formatNumber(
+                    typeof before === 'number' && typeof now === 'number' ? before - now : null,
+                    3,
+                  )
                 },
               },
             ]
@@ -631,8 +708,16 @@ function headsSection({ content, heads, againstHeads }: DrawRequest): Content[] 
         { head: 'Well', cell: (w: (typeof result.wells)[number]) => w.name },
         { head: 'Requested', unit: rate, cell: (w) => formatNumber(w.requested[0] ?? null) },
         { head: 'Achieved', unit: rate, cell: (w) => formatNumber(w.achieved[0] ?? null) },
-        { head: 'Cell head', unit: project.units.length, cell: (w) => formatNumber(w.cellHead[0] ?? null, 2) },
-        { head: 'Head at well face', unit: project.units.length, cell: (w) => formatNumber(w.wellHead[0] ?? null, 2) },
+        {
+          head: 'Cell head',
+          unit: project.units.length,
+          cell: (w) => formatNumber(w.cellHead[0] ?? null, 2),
+        },
+        {
+          head: 'Head at well face',
+          unit: project.units.length,
+          cell: (w) => formatNumber(w.wellHead[0] ?? null, 2),
+        },
       ],
       result.wells,
     ),
@@ -643,6 +728,12 @@ function headsSection({ content, heads, againstHeads }: DrawRequest): Content[] 
         'Well losses are not in the head at the well face. The figures are not a substitute for the judgement of a qualified engineer; local codes and licensed practice govern.',
     ),
   ]
+}
+
+/** The field as figures want it: edges and heads. */
+function decodedField(buffer: Uint8Array): HeadField {
+  const { grid, heads } = decodeHeads(buffer)
+  return { xEdges: grid.xEdges, yEdges: grid.yEdges, heads }
 }
 
 function balanceTable(content: GatheredContent): Content {
@@ -688,7 +779,8 @@ function readingsSection(content: GatheredContent): Content[] {
         {
           head: 'Response zone',
           unit: length,
-          cell: (i) => (i.responseTop ? `${level.show(i.responseTop, 1)} to ${level.show(i.responseBase, 1)}` : '–'),
+          cell: (i) =>
+            i.responseTop ? `${level.show(i.responseTop, 1)} to ${level.show(i.responseBase, 1)}` : '–',
         },
         { head: 'Readings', cell: (i) => formatNumber(i.readings, 0) },
         { head: 'From', cell: (i) => localDay(content, i.first) },
@@ -726,13 +818,14 @@ function readingsSection(content: GatheredContent): Content[] {
   ]
 }
 
-function fitSection({ content }: DrawRequest): Content[] {
+function fitSection({ content, heads }: DrawRequest): Content[] {
   const { lines, statistics, date } = content.fit
   const { length } = content.project.units
   if (lines.length === 0) {
     return [sectionTitle(7, 'Fit'), { text: 'No readings were compared with this run.', color: grey }]
   }
-  const drawn = fitFigure(content)
+  const oneToOne = oneToOneFigure(content)
+  const plan = residualFigure(content, decodedField(heads))
   return [
     sectionTitle(7, 'Fit'),
     sub('7.1', 'Measured against modelled'),
@@ -762,13 +855,16 @@ function fitSection({ content }: DrawRequest): Content[] {
             ['RMSE', `${formatNumber(statistics.rmse, 3)} ${length}`],
             [
               'Scaled RMSE',
-              statistics.scaledRmse === null ? '–' : `${formatNumber(100 * statistics.scaledRmse, 1)} % of the measured range`,
+              statistics.scaledRmse === null
+                ? '–'
+                : `${formatNumber(100 * statistics.scaledRmse, 1)} % of the measured range`,
             ],
             ['Largest residual', `${signed(statistics.largest)} ${length}`],
           ]),
         ]
       : []),
-    ...(drawn ? [figure(drawn.svg, '7.1', drawn.caption, drawn.ratio)] : []),
+    ...(oneToOne ? [figure('7.1', oneToOne, '', 0.72)] : []),
+    ...(plan ? [figure('7.2', plan, `Residuals in ${length} at their instruments. `)] : []),
   ]
 }
 
@@ -786,9 +882,17 @@ function checksSection(content: GatheredContent): Content[] {
       'Estimates by hand or formula beside the computed figure',
       [
         { head: 'Result', words: true, width: 110, cell: (e) => e.result },
-        { head: 'Method', words: true, width: '*', cell: (e) => [e.method, e.working].filter(Boolean).join(': ') },
+        {
+          head: 'Method',
+          words: true,
+          width: '*',
+          cell: (e) => [e.method, e.working].filter(Boolean).join(': '),
+        },
         { head: 'Estimate', cell: (e) => `${formatNumber(e.value)} ${e.unit}` },
-        { head: 'Computed', cell: (e) => (e.computed === null ? '–' : `${formatNumber(e.computed)} ${e.unit}`) },
+        {
+          head: 'Computed',
+          cell: (e) => (e.computed === null ? '–' : `${formatNumber(e.computed)} ${e.unit}`),
+        },
         {
           head: 'Ratio',
           cell: (e) => (e.computed === null || e.value === 0 ? '–' : formatNumber(e.computed / e.value, 2)),
@@ -808,7 +912,10 @@ function packageSection(content: GatheredContent, cover: GatheredCover): Content
   return [
     sectionTitle(9, 'Package'),
     sub('9.1', 'Conclusions'),
-    { text: content.basis?.conclusions || 'No conclusion has been written in section 1.', margin: [0, 0, 0, 6] },
+    {
+      text: content.basis?.conclusions || 'No conclusion has been written in section 1.',
+      margin: [0, 0, 0, 6],
+    },
     sub('9.2', 'Limitations and cautions'),
     {
       ul: [

@@ -56,6 +56,7 @@ export interface PackageLine {
   pdfSha256: string | null
   inputSha256: string | null
   hasPdf: boolean
-  jobId: number | null
+  /** The PDF is being drawn. */
+  drawing: boolean
   signatures: Signature[]
 }

@@ -3,8 +3,8 @@ import canonicalize from 'canonicalize'
 import { digestOf, recordSection, sectionStates } from '~/book/sections.server'
 import { environment } from '~/environment.server'
 import { getVerified, putBuffer, recordFile } from '~/files/files.server'
-import { startJob } from '~/jobs/jobs.server'
 import { findRun, isStale, runHeads } from '~/heads/runs.server'
+import { startJob } from '~/jobs/jobs.server'
 import { recordHistory } from '~/projects/history.server'
 import type { Project } from '~/projects/project'
 import type { Database } from '~database/connection.server'
@@ -46,9 +46,16 @@ export async function listPackages(db: Database, projectId: number): Promise<Pac
   const rows = await db('packages')
     .join('users', 'users.id', 'packages.created_by')
     .leftJoin('runs', 'runs.id', 'packages.run_id')
+    .leftJoin('jobs', 'jobs.id', 'packages.job_id')
     .where({ 'packages.project_id': projectId })
     .orderBy('packages.id', 'desc')
-    .select<(Omit<PackageRow, 'gathered'> & { created_by_name: string; run_number: number | null })[]>(
+    .select<
+      (Omit<PackageRow, 'gathered'> & {
+        created_by_name: string
+        run_number: number | null
+        job_state: string | null
+      })[]
+    >(
       'packages.id',
       'packages.revision',
       'packages.status',
@@ -59,7 +66,7 @@ export async function listPackages(db: Database, projectId: number): Promise<Pac
       'packages.pdf_sha256',
       'packages.input_sha256',
       'packages.file_id',
-      'packages.job_id',
+      'jobs.state as job_state',
       'users.name as created_by_name',
       'runs.number as run_number',
     )
@@ -77,23 +84,28 @@ export async function listPackages(db: Database, projectId: number): Promise<Pac
       pdfSha256: row.pdf_sha256,
       inputSha256: row.input_sha256,
       hasPdf: row.file_id !== null,
-      jobId: row.job_id,
+      drawing: row.job_state === 'queued' || row.job_state === 'running',
       signatures: await signaturesOf(db, row.id),
     })),
   )
 }
 
-export async function findPackage(db: Database, projectId: number, packageId: number): Promise<PackageRow | undefined> {
+export async function findPackage(
+  db: Database,
+  projectId: number,
+  packageId: number,
+): Promise<PackageRow | undefined> {
   return db<PackageRow>('packages').where({ project_id: projectId, id: packageId }).first()
 }
 
 /** Why a run cannot stand in a package; null when it can. */
 async function runObjection(db: Database, project: Project, runId: number): Promise<string | null> {
   const run = await findRun(db, project.id, runId)
-  if (!run || run.state !== 'done' || !run.result) return 'Choose a run that has finished.'
+  if (run?.state !== 'done' || !run.result) return 'Choose a run that has finished.'
   if (!run.converged) return `Run ${run.number} did not converge, so it cannot be packaged.`
   const error = Math.abs(run.result.balance.errorPercent[0] ?? Number.POSITIVE_INFINITY)
-  if (!(error <= 0.1)) return `The water balance of run ${run.number} is out by ${error} %, so it cannot be packaged.`
+  if (!(error <= 0.1))
+    return `The water balance of run ${run.number} is out by ${error} %, so it cannot be packaged.`
   return null
 }
 
@@ -114,9 +126,17 @@ export async function makePackage(
   const sectionsDigest = await digestOf(db, project.id, printed)
   const made = await db.transaction(async (trx): Promise<Outcome> => {
     await trx('projects').where({ id: project.id }).forUpdate().first('id')
-    const taken = await trx<PackageRow>('packages').where({ project_id: project.id }).select('revision', 'status')
-    const open = taken.find((p) => p.status !== 'issued' && p.status !== 'superseded' && p.status !== 'withdrawn')
-    if (open) return { ok: false, message: `Revision ${open.revision} is still ${open.status}: finish or withdraw it first.` }
+    const taken = await trx<PackageRow>('packages')
+      .where({ project_id: project.id })
+      .select('revision', 'status')
+    const open = taken.find(
+      (p) => p.status !== 'issued' && p.status !== 'superseded' && p.status !== 'withdrawn',
+    )
+    if (open)
+      return {
+        ok: false,
+        message: `Revision ${open.revision} is still ${open.status}: finish or withdraw it first.`,
+      }
     const revision = nextRevision(taken.map((p) => p.revision))
     const [id] = await trx('packages').insert({
       project_id: project.id,
@@ -149,7 +169,8 @@ export async function gatherAgain(
   userId: number,
 ): Promise<Outcome> {
   const row = await findPackage(db, project.id, packageId)
-  if (!row || !isOpen(row.status)) return { ok: false, message: 'Only an open revision can be gathered again.' }
+  if (!row || !isOpen(row.status))
+    return { ok: false, message: 'Only an open revision can be gathered again.' }
   const frozen = freeze(
     await gatherContent(db, project, {
       runId: row.run_id,
@@ -166,7 +187,9 @@ export async function gatherAgain(
       sections_digest: sectionsDigest,
       status: 'draft',
     })
-    await noteChange(trx, project.id, userId, 'gathered package again', row.revision, { input: frozen.sha256 })
+    await noteChange(trx, project.id, userId, 'gathered package again', row.revision, {
+      input: frozen.sha256,
+    })
   })
   await startDrawing(db, project, packageId, userId)
   return { ok: true, packageId }
@@ -190,7 +213,10 @@ async function noteChange(
   subject: string,
   after?: unknown,
 ): Promise<void> {
-  const rows = await trx('packages').where({ project_id: projectId }).orderBy('id').select('id', 'status', 'input_sha256')
+  const rows = await trx('packages')
+    .where({ project_id: projectId })
+    .orderBy('id')
+    .select('id', 'status', 'input_sha256')
   await recordSection(trx, projectId, 'package', rows.length === 0 ? null : rows, userId)
   await recordHistory(trx, { projectId, userId, section: 'package', action, subject, after })
 }
@@ -217,7 +243,10 @@ export async function signPackage(
   const objection = await signObjection(db, project, packageId, role, userId)
   if (objection) return { ok: false, message: objection }
   const signed = await db.transaction(async (trx): Promise<Outcome> => {
-    const row = await trx<PackageRow>('packages').where({ id: packageId, project_id: project.id }).forUpdate().first()
+    const row = await trx<PackageRow>('packages')
+      .where({ id: packageId, project_id: project.id })
+      .forUpdate()
+      .first()
     if (!row || row.status !== statusAfter[role].from) {
       return { ok: false, message: 'Somebody else was quicker: the package has another status now.' }
     }
@@ -265,7 +294,9 @@ async function signObjection(
   }
   if (role === 'checker') {
     const states = await sectionStates(db, project.id)
-    const waiting = states.filter((s) => printed.some((key) => key === s.key) && s.state !== 'empty' && s.state !== 'checked')
+    const waiting = states.filter(
+      (s) => printed.some((key) => key === s.key) && s.state !== 'empty' && s.state !== 'checked',
+    )
     if (waiting.length > 0) {
       return `Check these sections first: ${waiting.map((s) => `${s.key} (${s.state})`).join(', ')}.`
     }
@@ -284,7 +315,9 @@ async function hasMadeAnyOf(
     db('packages').where({ id: packageId, created_by: userId }).first('id'),
     db('runs').where({ id: runId, created_by: userId }).first('id'),
     db('book_rows').where({ project_id: projectId, recorded_by: userId }).first('id'),
-    db('package_signatures').where({ package_id: packageId, user_id: userId, role: 'originator' }).first('package_id'),
+    db('package_signatures')
+      .where({ package_id: packageId, user_id: userId, role: 'originator' })
+      .first('package_id'),
   ])
   return found.some(Boolean)
 }
@@ -298,28 +331,38 @@ export async function issuePackage(
   project: Project,
   packageId: number,
   userId: number,
+  now = new Date(),
 ): Promise<Outcome> {
   const row = await findPackage(db, project.id, packageId)
   if (!row) return { ok: false, message: 'This package is no longer there.' }
-  if (row.status !== 'approved') return { ok: false, message: `A package that is ${row.status} cannot be issued.` }
-  const signatures = await db('package_signatures').where({ package_id: packageId }).select('role', 'user_id', 'signed_sha256')
+  if (row.status !== 'approved')
+    return { ok: false, message: `A package that is ${row.status} cannot be issued.` }
+  const signatures = await db('package_signatures')
+    .where({ package_id: packageId })
+    .select('role', 'user_id', 'signed_sha256')
   const by = (role: string) => signatures.find((s) => s.role === role)
   const originator = by('originator')
   const checker = by('checker')
   const approver = by('approver')
-  if (!originator || !checker || !approver) return { ok: false, message: 'Originator, checker and approver must all have signed.' }
+  if (!originator || !checker || !approver)
+    return { ok: false, message: 'Originator, checker and approver must all have signed.' }
   if (checker.user_id === originator.user_id || approver.user_id === originator.user_id) {
     return { ok: false, message: 'Checker and approver must not be the originator.' }
   }
   if (signatures.some((s) => s.signed_sha256 !== row.input_sha256)) {
-    return { ok: false, message: 'A signature covers another content than this package holds: gather and sign again.' }
+    return {
+      ok: false,
+      message: 'A signature covers another content than this package holds: gather and sign again.',
+    }
   }
   if (await bookHasMoved(db, project.id, packageId)) {
     return { ok: false, message: 'The book has changed since this package was gathered: gather it again.' }
   }
-  const under = row.job_id && (await db('jobs').where({ id: row.job_id }).whereIn('state', ['queued', 'running']).first('id'))
+  const under =
+    row.job_id &&
+    (await db('jobs').where({ id: row.job_id }).whereIn('state', ['queued', 'running']).first('id'))
   if (under) return { ok: false, message: 'The package is being drawn: wait until that is done.' }
-  await startDrawing(db, project, packageId, userId, new Date())
+  await startDrawing(db, project, packageId, userId, now)
   return { ok: true, packageId }
 }
 
@@ -331,7 +374,10 @@ export async function withdrawPackage(
   userId: number,
 ): Promise<Outcome> {
   return db.transaction(async (trx): Promise<Outcome> => {
-    const row = await trx<PackageRow>('packages').where({ id: packageId, project_id: project.id }).forUpdate().first()
+    const row = await trx<PackageRow>('packages')
+      .where({ id: packageId, project_id: project.id })
+      .forUpdate()
+      .first()
     if (!row || !isOpen(row.status)) return { ok: false, message: 'Only an open revision can be withdrawn.' }
     await trx('packages').where({ id: packageId }).update({ status: 'withdrawn' })
     await noteChange(trx, project.id, userId, 'withdrew package', row.revision)
@@ -365,13 +411,19 @@ export async function startDrawing(
     userId,
     kind: 'draw',
     workerData: { request },
-    onDone: async ({ pdf }) => storePdf(db, project, { packageId, userId, issuing, pdf: new Uint8Array(pdf) }),
+    onDone: async ({ pdf }) =>
+      storePdf(db, project, { packageId, userId, issuing, pdf: new Uint8Array(pdf) }),
   })
   await db('packages').where({ id: packageId }).update({ job_id: jobId })
   return jobId
 }
 
-async function gatherCover(db: Database, project: Project, row: PackageRow, issuing?: Date): Promise<GatheredCover> {
+async function gatherCover(
+  db: Database,
+  project: Project,
+  row: PackageRow,
+  issuing?: Date,
+): Promise<GatheredCover> {
   const maker = await db('users').where({ id: row.created_by }).first<{ name: string }>('name')
   const cover = await db('book_rows')
     .where({ project_id: project.id, kind: 'cover' })
@@ -398,7 +450,8 @@ async function gatherCover(db: Database, project: Project, row: PackageRow, issu
     signatures: await signaturesOf(db, row.id),
     revisions: revisions.map((r) => ({
       revision: r.revision,
-      status: r.id === row.id && issuing ? 'issued' : r.status === 'issued' && issuing ? 'superseded' : r.status,
+      status:
+        r.id === row.id && issuing ? 'issued' : r.status === 'issued' && issuing ? 'superseded' : r.status,
       reason: r.reason,
       issuedAt: (r.id === row.id ? issuing : r.issued_at)?.toISOString() ?? null,
     })),
@@ -422,7 +475,10 @@ async function storePdf(
   const { packageId, userId, issuing, pdf } = drawn
   const row = await findPackage(db, project.id, packageId)
   if (!row) throw new Error(`Package ${packageId} is no longer there.`)
-  const stored = await putBuffer(pdf, { folder: `projects/${project.id}/packages`, contentType: 'application/pdf' })
+  const stored = await putBuffer(pdf, {
+    folder: `projects/${project.id}/packages`,
+    contentType: 'application/pdf',
+  })
   await db.transaction(async (trx) => {
     const name = `${project.calcReference} ${row.revision}${issuing ? '' : ` ${row.status}`}.pdf`
     const fileId = await recordFile(trx, {
@@ -433,7 +489,9 @@ async function storePdf(
       stored,
       userId,
     })
-    const open = trx('packages').where({ id: packageId }).whereIn('status', ['draft', 'shared for check', 'checked', 'approved'])
+    const open = trx('packages')
+      .where({ id: packageId })
+      .whereIn('status', ['draft', 'shared for check', 'checked', 'approved'])
     if (!issuing) {
       await open.update({ file_id: fileId, pdf_sha256: stored.sha256 })
       return
@@ -446,7 +504,8 @@ async function storePdf(
       issued_at: issuing,
       issued_by: userId,
     })
-    if (changed === 0) throw new Error(`Revision ${row.revision} is no longer approved, so it was not issued.`)
+    if (changed === 0)
+      throw new Error(`Revision ${row.revision} is no longer approved, so it was not issued.`)
     await noteChange(trx, project.id, userId, 'issued package', row.revision, { pdf: stored.sha256 })
   })
 }
@@ -463,5 +522,10 @@ export async function packagePdf(
     .where({ id: row.file_id, project_id: projectId })
     .first<{ name: string; s3_key: string; sha256: string } | undefined>('name', 's3_key', 'sha256')
   if (!file) return undefined
-  return { name: file.name, bytes: await getVerified(file.s3_key, file.sha256), sha256: file.sha256, status: row.status }
+  return {
+    name: file.name,
+    bytes: await getVerified(file.s3_key, file.sha256),
+    sha256: file.sha256,
+    status: row.status,
+  }
 }

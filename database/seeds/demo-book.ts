@@ -252,7 +252,25 @@ export const demoInstruments = (
   name,
   ...at(place),
   kind,
-  pipeTop,
+  levels: [
+    {
+      from: '2025-11-03T09:00:00Z',
+      level: pipeTop,
+      reason: 'First survey',
+      source: 'Survey sheet SV-11, 3 November 2025',
+    },
+    // A lorry bent the standpipe: 0.30 m was cut off and the new top levelled the same day.
+    ...(name === 'P2'
+      ? [
+          {
+            from: '2026-05-12T10:30:00Z',
+            level: Number((pipeTop - 0.3).toFixed(2)),
+            reason: 'Casing cut by 0.30 m after damage, resurveyed',
+            source: 'Survey sheet SV-19, 12 May 2026',
+          },
+        ]
+      : []),
+  ],
   groundLevel: metres(ground),
   responseTop: metres(-5),
   responseBase: metres(-8),

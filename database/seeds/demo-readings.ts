@@ -6,8 +6,8 @@
 export interface DemoHead {
   name: string
   kind: string
-  /** Level of the pipe top, metres above datum. */
-  pipeTop: number
+  /** Level of the pipe top, metres above datum, from each instant on. */
+  pipeTop: { from: string; level: number }[]
   /** Head without pumping and with it, metres above datum, as computed by the runs. */
   before: number
   during: number
@@ -87,6 +87,10 @@ function trueHead(place: DemoHead, at: number): number {
   return place.before + place.offset + season + wet + tide - (place.before - place.during) * pumped
 }
 
+function pipeTopAt(place: DemoHead, at: number): number {
+  return place.pipeTop.findLast(({ from }) => Date.parse(from) <= at)?.level ?? Number.NaN
+}
+
 function two(value: number): string {
   return String(value).padStart(2, '0')
 }
@@ -109,7 +113,7 @@ export function demoReadingFiles(places: readonly DemoHead[]): DemoFile[] {
           dips.push({ at: visit, name: place.name, value: random() < 0.5 ? 'not accessed' : 'obstructed' })
           continue
         }
-        const dip = place.pipeTop - trueHead(place, visit) + 0.006 * gaussian(random)
+        const dip = pipeTopAt(place, visit) - trueHead(place, visit) + 0.006 * gaussian(random)
         dips.push({ at: visit, name: place.name, value: dip.toFixed(2) })
       }
       return
