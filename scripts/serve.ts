@@ -6,14 +6,15 @@ import express, { type NextFunction, type Request, type Response } from 'express
 import { RouterContextProvider, type ServerBuild } from 'react-router'
 import { clientAddress } from '../app/client-address.ts'
 import { type Environment, environment } from '../app/environment.server.ts'
-import { markInterruptedJobs } from '../app/jobs/jobs.server.ts'
-import { connectDatabase, disconnectDatabase } from '../database/connection.server.ts'
 import { closed, listening } from './services/listening.ts'
 import { reportAndFail } from './services/report-and-fail.ts'
 import { runUnderParent } from './services/under-parent.ts'
 
 const root = dirname(dirname(fileURLToPath(import.meta.url)))
 const loopbackNames = new Set(['127.0.0.1', 'localhost', '::1', '[::1]'])
+
+/** The build, with what entry.server adds for us: jobs that were under way when the last server stopped. */
+type Build = ServerBuild & { entry: { module: { markInterruptedJobs: () => Promise<void> } } }
 
 /** Headers of every answer, assets included; a page adds its Content-Security-Policy itself. */
 function securityHeaders(address: string): Record<string, string> {
@@ -98,10 +99,8 @@ function answerError(error: unknown, request: Request, response: Response, next:
 
 async function serve(): Promise<void> {
   const settings = environment()
-  connectDatabase(settings.database)
-  await markInterruptedJobs()
-  await disconnectDatabase()
-  const build: ServerBuild = await import(pathToFileURL(join(root, 'build/server/index.js')).href)
+  const build: Build = await import(pathToFileURL(join(root, 'build/server/index.js')).href)
+  await build.entry.module.markInterruptedJobs()
   const server = makeServer(build, settings)
   // Longer than a proxy in front keeps an idle connection, so that it is never the one to find it closed.
   server.keepAliveTimeout = 65_000
