@@ -12,12 +12,12 @@ export function niceAbove(size: number): number {
   return Number((nice * power).toPrecision(12))
 }
 
-/** A nice contour interval that gives about `wanted` contours between two values. */
-export function automaticInterval(low: number, high: number, wanted = 12): number {
+/** A nice contour interval that gives at most `most` contours between two values, and at least about half as many. */
+export function automaticInterval(low: number, high: number, most = 16): number {
   const spread = high - low
   // Heads equal to within rounding have no contours: any interval that is far above the rounding will do.
   if (!(spread > 1e-9 * Math.max(1, Math.abs(low), Math.abs(high)))) return 1
-  return niceAbove(spread / wanted)
+  return niceAbove(spread / most)
 }
 
 /** The interval as asked for, or the automatic one when none was asked for or it would give too many contours. */
@@ -32,7 +32,7 @@ export function levelsBetween(low: number, high: number, interval: number): numb
   const last = Math.ceil(high / interval - 1e-9) - 1
   const decimals = decimalsOf(interval)
   return Array.from({ length: Math.max(0, last - first + 1) }, (_, i) =>
-    Number(((first + i) * interval).toFixed(Math.max(decimals, 0))),
+    Number(((first + i) * interval).toFixed(decimals)),
   )
 }
 
@@ -76,7 +76,7 @@ export function contoursOf(field: HeadField, levels: readonly number[]): Contour
     for (const polygon of trace.contour(values, level).coordinates) {
       area.push(
         polygon.map((ring) =>
-          ring.map(([column, row]): Vertex => [at(lattice.x, column), at(lattice.y, row)]),
+          (ring as Vertex[]).map(([column, row]): Vertex => [at(lattice.x, column), at(lattice.y, row)]),
         ),
       )
       for (const ring of polygon) lines.push(...linesOf(ring as Vertex[], lattice))
@@ -88,7 +88,7 @@ export function contoursOf(field: HeadField, levels: readonly number[]): Contour
 /** d3-contour puts sample i at i + 0.5; a ring that closes beyond the outermost sample closes on the model's edge. */
 function at(samples: Float64Array, place: number): number {
   const last = samples.length - 1
-  const index = Math.min(last, Math.max(0, (place as number) - 0.5))
+  const index = Math.min(last, Math.max(0, place - 0.5))
   const low = Math.min(last - 1, Math.floor(index))
   const from = samples[low] as number
   return from + ((samples[low + 1] as number) - from) * (index - low)
@@ -230,26 +230,39 @@ function samplesAlong(places: Float64Array): { places: Float64Array; low: Int32A
   return { places: out, low, weight }
 }
 
-/** Cells without a head, as rectangles joined along rows: what the drawing covers. */
-export function outsideCells(field: HeadField): { x: [number, number]; y: [number, number] }[] {
+interface CellBlock {
+  x: [number, number]
+  y: [number, number]
+}
+
+/** Cells without a head, as rectangles: what the drawing covers. Runs along a row that repeat in the next are one. */
+export function outsideCells(field: HeadField): CellBlock[] {
   const { xEdges, yEdges, heads } = field
   const columns = xEdges.length - 1
-  const boxes: { x: [number, number]; y: [number, number] }[] = []
+  const blocks: CellBlock[] = []
+  let before = new Map<string, CellBlock>()
   for (let j = 0; j < yEdges.length - 1; j++) {
+    const here = new Map<string, CellBlock>()
+    const bottom = yEdges[j] as number
+    const top = yEdges[j + 1] as number
     let from = -1
     for (let i = 0; i <= columns; i++) {
       const empty = i < columns && Number.isNaN(heads[j * columns + i] as number)
       if (empty && from < 0) from = i
-      if (!empty && from >= 0) {
-        boxes.push({
-          x: [xEdges[from] as number, xEdges[i] as number],
-          y: [yEdges[j] as number, yEdges[j + 1] as number],
-        })
-        from = -1
+      if (empty || from < 0) continue
+      const key = `${from}-${i}`
+      const block = before.get(key) ?? {
+        x: [xEdges[from] as number, xEdges[i] as number],
+        y: [bottom, top],
       }
+      if (block.y[1] === top) blocks.push(block)
+      block.y[1] = top
+      here.set(key, block)
+      from = -1
     }
+    before = here
   }
-  return boxes
+  return blocks
 }
 
 /** The outline between cells with and without a head, as straight pieces along cell edges. */
