@@ -5,6 +5,7 @@ import { type RenderToPipeableStreamOptions, renderToPipeableStream } from 'reac
 import {
   type EntryContext,
   type HandleErrorFunction,
+  isRouteErrorResponse,
   type RouterContextProvider,
   ServerRouter,
 } from 'react-router'
@@ -61,5 +62,7 @@ export default function handleRequest(
 /** Errors that nobody expected are logged with the path, never with the query string. */
 export const handleError: HandleErrorFunction = (error, { request }) => {
   if (request.signal.aborted) return
+  // A method that a route does not have, or a form from elsewhere: the caller's mistake, and answered.
+  if (isRouteErrorResponse(error) && error.status < 500) return
   console.error(new URL(request.url).pathname, error)
 }

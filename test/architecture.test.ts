@@ -42,7 +42,7 @@ const allowed: Record<string, string[]> = {
   files: ['environment.server'],
   mail: ['environment.server'],
   'sign-in': ['projects', 'mail', 'units', 'environment.server'],
-  projects: ['sign-in', 'mail', 'units', 'environment.server'],
+  projects: ['sign-in', 'mail', 'components', 'units', 'environment.server'],
   book: ['projects', 'components', 'units', 'environment.server'],
   ...Object.fromEntries(sections.map((section, index) => [section, [...below, ...sections.slice(0, index)]])),
 }

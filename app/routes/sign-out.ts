@@ -1,4 +1,5 @@
 import { href, redirect } from 'react-router'
+import { refuseFromElsewhere } from '~/sign-in/guard.server'
 import { endSession } from '~/sign-in/sessions.server'
 import { database } from '~database/connection.server'
 import type { Route } from './+types/sign-out'
@@ -9,5 +10,6 @@ export function loader() {
 }
 
 export async function action({ request }: Route.ActionArgs) {
+  refuseFromElsewhere(request)
   return redirect(href('/sign-in'), { headers: { 'Set-Cookie': await endSession(database(), request) } })
 }

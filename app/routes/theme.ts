@@ -1,4 +1,5 @@
 import { data, href, redirect } from 'react-router'
+import { refuseFromElsewhere } from '~/sign-in/guard.server'
 import { themeCookie, themes } from '~/theme.server'
 import type { Route } from './+types/theme'
 
@@ -8,6 +9,7 @@ export function loader() {
 
 /** Keeps the choice of colours. Without scripts the browser goes back to the page it came from. */
 export async function action({ request }: Route.ActionArgs) {
+  refuseFromElsewhere(request)
   const chosen = (await request.formData()).get('theme')
   const theme = themes.find((name) => name === chosen)
   if (!theme) return data({ error: 'The colours are light, dark or as the system.' }, 400)

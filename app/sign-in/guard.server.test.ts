@@ -77,6 +77,21 @@ test('Signed out, a form of a browser without scripts gets 401 in words', async 
   expect(await response.text()).toContain('nothing was saved')
 })
 
+test('What another site sends with this browser is refused before anything is done', async () => {
+  const foreign: [string, string][] = [
+    ['sec-fetch-site', 'cross-site'],
+    ['origin', 'http://elsewhere.test'],
+  ]
+  for (const [name, value] of foreign) {
+    const { response, reached } = await pass('/projects/3/runs', {
+      method: 'POST',
+      body: 'caseId=1',
+      headers: { cookie, [name]: value },
+    })
+    expect([response.status, reached]).toEqual([403, undefined])
+  }
+})
+
 test.each([
   ['of its own page', { 'sec-fetch-site': 'same-origin' }, true],
   ['with its own origin', { origin: 'http://lavant.test' }, true],

@@ -56,10 +56,13 @@ export async function findSignedIn(request: Request): Promise<SignedIn | undefin
 
 /**
  * Middleware: lets nobody through who is not signed in, and fills `signedInContext`.
- * Pages are sent to /sign-in and come back. A form sent in the background, and JSON, get 401 with a plain message,
+ * Nothing that another site's page sent is acted on. Pages are sent to /sign-in and come back. A form sent in the background, and JSON, get 401 with a plain message,
  * so that nothing entered is lost.
  */
 export const requireSignIn: MiddlewareFunction<Response> = async ({ request, url, context }, next) => {
+  const isReading = request.method === 'GET' || request.method === 'HEAD'
+  // React Router looks at the origin of forms for pages, but not of what is sent to a resource route.
+  if (!isReading) refuseFromElsewhere(request)
   const session = await findSession(database(), request)
   if (!session) return refuse(request, url)
   const { idHash, ...user } = session
@@ -103,16 +106,29 @@ export function requireAdministrator(context: Readonly<RouterContextProvider>): 
   return user
 }
 
+/** What a browser says of the page that sent a request: 'unsaid' by a client that is no browser. */
+function sender(request: Request): 'own page' | 'elsewhere' | 'unsaid' {
+  const site = request.headers.get('sec-fetch-site')
+  if (site) return site === 'same-origin' ? 'own page' : 'elsewhere'
+  const origin = request.headers.get('origin')
+  if (!origin) return 'unsaid'
+  const own = [new URL(environment().address).origin, new URL(request.url).origin]
+  return own.includes(origin) ? 'own page' : 'elsewhere'
+}
+
 /**
- * Refuses with 403 a request that another site's page made this browser send. For resource routes that take JSON or
- * files; React Router itself checks the forms. A client that is no browser must send an Origin header with the
- * configured address.
+ * Refuses with 403 a request that does not come from a page of ours. For resource routes that take JSON or files.
+ * A client that is no browser must send an Origin header with the configured address.
  */
 export function requireSameOrigin(request: Request): void {
-  const site = request.headers.get('sec-fetch-site')
-  const origin = request.headers.get('origin')
-  const own = [new URL(environment().address).origin, new URL(request.url).origin]
-  const isOwn = site ? site === 'same-origin' : origin !== null && own.includes(origin)
-  if (!isOwn)
-    throw Response.json({ error: 'This request does not come from a page of Lavant.' }, { status: 403 })
+  if (sender(request) !== 'own page') throw elsewhere()
+}
+
+/** Refuses with 403 what another site's page sent; a client that is no browser passes. */
+export function refuseFromElsewhere(request: Request): void {
+  if (sender(request) === 'elsewhere') throw elsewhere()
+}
+
+function elsewhere(): Response {
+  return Response.json({ error: 'This request does not come from a page of Lavant.' }, { status: 403 })
 }
