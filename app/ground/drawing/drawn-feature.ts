@@ -136,23 +136,34 @@ export function roundLength(longest: number): number {
   return step * power
 }
 
-/** Middle of the longest stretch of a line and its direction in radians, for a label that reads left to right. */
-export function labelStretch(vertices: readonly Vertex[]): { at: Vertex; angle: number; length: number } {
-  let best = { at: vertices[0] ?? ([0, 0] as Vertex), angle: 0, length: 0 }
-  for (let i = 1; i < vertices.length; i++) {
-    const [a, b] = [vertices[i - 1] as Vertex, vertices[i] as Vertex]
-    const length = Math.hypot(b[0] - a[0], b[1] - a[1])
-    if (length <= best.length) continue
-    let angle = Math.atan2(b[1] - a[1], b[0] - a[0])
-    if (angle > Math.PI / 2 + 1e-9) angle -= Math.PI
-    if (angle < -Math.PI / 2 + 1e-9) angle += Math.PI
-    best = { at: [(a[0] + b[0]) / 2, (a[1] + b[1]) / 2], angle, length }
-  }
-  return best
+/**
+ * Middle of the stretch of a line that a label is written along, and its direction in radians, never upside down: the
+ * longest stretch, or among those nearly as long the one nearest to half way.
+ */
+export function labelStretch(vertices: readonly Vertex[]): { at: Vertex; angle: number } {
+  const stretches = vertices.slice(1).map((b, i) => {
+    const a = vertices[i] as Vertex
+    return {
+      a,
+      b,
+      length: Math.hypot(b[0] - a[0], b[1] - a[1]),
+      fromMiddle: Math.abs(i - (vertices.length - 2) / 2),
+    }
+  })
+  const longest = Math.max(0, ...stretches.map(({ length }) => length))
+  const best = stretches
+    .filter(({ length }) => length >= 0.75 * longest)
+    .sort((one, other) => one.fromMiddle - other.fromMiddle)[0]
+  if (!best) return { at: vertices[0] ?? [0, 0], angle: 0 }
+  const { a, b } = best
+  let angle = Math.atan2(b[1] - a[1], b[0] - a[0])
+  if (angle > Math.PI / 2 + 1e-9) angle -= Math.PI
+  if (angle < -Math.PI / 2 + 1e-9) angle += Math.PI
+  return { at: [(a[0] + b[0]) / 2, (a[1] + b[1]) / 2], angle }
 }
 
 /**
- * Short strokes across a line, alternating in nothing but place: the hatch of a cut-off wall. `spacing` and `reach` are
+ * Short strokes across a line at 45 degrees: the hatch of a cut-off wall. `spacing` and `reach` are
  * in the coordinates' unit; at most `most` strokes, spread wider where the line is longer.
  */
 export function hatchStrokes(
@@ -176,7 +187,6 @@ export function hatchStrokes(
     const [ux, uy] = [(b[0] - a[0]) / length, (b[1] - a[1]) / length]
     while (next <= length) {
       const [x, y] = [a[0] + ux * next, a[1] + uy * next]
-      // Half right of the line at 45 degrees: along (u - n), n being the left normal.
       strokes.push([
         [x - (ux + uy) * reach, y - (uy - ux) * reach],
         [x + (ux + uy) * reach, y + (uy - ux) * reach],
