@@ -1,4 +1,4 @@
-import { faceBetweenColumns, faceBetweenRows, faceOf } from './faces'
+import { faceBetweenColumns, faceBetweenRows, faceOf, facesOfCell } from './faces'
 import { centresOf, type Grid, intervalOf } from './grid'
 import type { Position } from './model'
 import { ModelError, requireFinite } from './model-error'
@@ -112,6 +112,9 @@ export function crossedFaces(
       })
     })
   }
+  const first = line[0] as Position
+  const last = line[line.length - 1] as Position
+  if (first[0] === last[0] && first[1] === last[1]) return [...crossed.values()]
   if (proportionalEnds[0]) coverEnd(grid, line, 0, xCentres, yCentres, crossed)
   if (proportionalEnds[1]) coverEnd(grid, line, line.length - 1, xCentres, yCentres, crossed)
   return [...crossed.values()]
@@ -346,7 +349,18 @@ function followsHoleEdge(grid: Grid, active: Uint8Array, line: Position[], piece
   const sides = [1, -1].map((side) => {
     const i = insideInterval(grid.xEdges, piece.middle[0] + side * reach * normal[0])
     const j = insideInterval(grid.yEdges, piece.middle[1] + side * reach * normal[1])
+    // Beyond the extent there is no ground; whether the line follows a hole there, the cells beside it say.
     return i < 0 || j < 0 ? null : active[j * grid.columns + i] === 1
   })
-  return sides[0] !== null && sides[1] !== null && sides[0] !== sides[1]
+  if (sides[0] !== null && sides[1] !== null) return sides[0] !== sides[1]
+  return (sides[0] === true || sides[1] === true) && touchesHole(grid, active, piece.cell)
+}
+
+function touchesHole(grid: Grid, active: Uint8Array, cell: number): boolean {
+  if (active[cell] !== 1) return true
+  return facesOfCell(grid, cell).some((face) => {
+    const { low, high } = faceOf(grid, face)
+    const other = low === cell ? high : low
+    return other >= 0 && active[other] !== 1
+  })
 }

@@ -211,6 +211,8 @@ export function relax(system: SorSystem, options: SorOptions): SorOutcome {
     windowNorm = now.norm
     if (idleWindows >= 6) {
       ended = 'stalled'
+      // At the rounding floor nothing converges that could be watched: |error| <= |residual / diagonal| / lambda.
+      headError = now.largest / Math.min(options.lambda, 0.5 * ((2 - omega) / omega) ** 2)
       break
     }
   }
