@@ -325,7 +325,7 @@ const loggerSettings = (instrumentId: string): ImportSettings => ({
   instruments: { by: 'one', instrumentId },
   times: { by: 'columns', date: 0, time: null, order: 'day first', timeIfNone: null },
   zone: { rule: 'utc' },
-  value: { column: 1, quantity: 'level', unit: 'm', decimalMark: '.', status: null },
+  value: { column: 1, quantity: 'level', unit: 'm', decimalMark: 'point', status: null },
 })
 
 const dipSettings = (idOf: Map<string, string>): ImportSettings => ({
@@ -336,7 +336,7 @@ const dipSettings = (idOf: Map<string, string>): ImportSettings => ({
   instruments: { by: 'column', column: 0, names: Object.fromEntries(idOf), places: null },
   times: { by: 'columns', date: 1, time: 2, order: 'day first', timeIfNone: null },
   zone: { rule: 'utc' },
-  value: { column: 3, quantity: 'dip', unit: 'm', decimalMark: '.', status: null },
+  value: { column: 3, quantity: 'dip', unit: 'm', decimalMark: 'point', status: null },
 })
 
 /** What the model misses at each piezometer, metres, and how much of the river's tide it feels. */

@@ -1,4 +1,5 @@
 import { DateTime } from 'luxon'
+import { findRow, saveRows } from '~/book/rows.server'
 import { type HeadField, headAt } from '~/heads/field'
 import { type Run, runHeads, runPoints } from '~/heads/runs.server'
 import type { Project } from '~/projects/project'
@@ -6,7 +7,9 @@ import { lastReadings, type MeasuredOn, measuredHeads } from '~/readings/reading
 import { decodeHeads } from '~/solver/heads-buffer'
 import { convert } from '~/units'
 import type { Database } from '~database/connection.server'
+import { type Comparison, comparisonRowId } from './comparison'
 import { type FitLine, type FitSpan, inProjectUnit, nearestWithinDays } from './fit'
+import { fitKinds } from './fit-kinds.server'
 import { type FitStatistics, fitStatistics } from './statistics'
 
 export interface Fit {
@@ -19,8 +22,10 @@ export interface Fit {
 
 /** The span in instants: days begin and end at the site's midnight; a date means its noon. */
 function instants(span: FitSpan, timeZone: string): MeasuredOn {
-  const at = (day: string, options: { hour: number }) => DateTime.fromISO(day, { zone: timeZone }).set(options)
-  if ('date' in span) return { nearest: at(span.date, { hour: 12 }).toJSDate(), withinDays: nearestWithinDays }
+  const at = (day: string, options: { hour: number }) =>
+    DateTime.fromISO(day, { zone: timeZone }).set(options)
+  if ('date' in span)
+    return { nearest: at(span.date, { hour: 12 }).toJSDate(), withinDays: nearestWithinDays }
   return {
     from: at(span.from, { hour: 0 }).toJSDate(),
     to: at(span.to, { hour: 0 }).plus({ days: 1 }).minus(1).toJSDate(),
@@ -64,8 +69,13 @@ export async function fitOf(db: Database, project: Project, run: Run, span: FitS
   lines.sort((a, b) => a.name.localeCompare(b.name, 'en', { numeric: true }))
   const unit = project.units.length
   const pairs = lines.flatMap((line) => {
-    const pair = { measured: inProjectUnit(line.measured, unit), modelled: inProjectUnit(line.modelled, unit) }
-    return pair.measured === null || pair.modelled === null ? [] : [{ measured: pair.measured, modelled: pair.modelled }]
+    const pair = {
+      measured: inProjectUnit(line.measured, unit),
+      modelled: inProjectUnit(line.modelled, unit),
+    }
+    return pair.measured === null || pair.modelled === null
+      ? []
+      : [{ measured: pair.measured, modelled: pair.modelled }]
   })
   return { span, lines, statistics: fitStatistics(pairs) }
 }
@@ -84,4 +94,39 @@ function headInField(
   const head = headAt(field, x, y)
   if (Number.isNaN(head)) return { head: null, why: 'outside the model, or dry in it' }
   return { head: convert({ value: head, unit: run.model.units.length }, 'm'), why: null }
+}
+
+/** The comparison that the book keeps, or undefined. */
+export async function keptComparison(db: Database, projectId: number) {
+  return findRow<Comparison>(db, projectId, 'comparison', comparisonRowId)
+}
+
+/**
+ * Keeps a comparison as section 7 of the book; the one kept before stays in the history.
+ * Returns false when somebody else kept another one at the same moment.
+ */
+export async function recordFit(
+  db: Database,
+  project: Project,
+  run: Run,
+  span: FitSpan,
+  userId: number,
+): Promise<boolean> {
+  const { statistics } = await fitOf(db, project, run, span)
+  const body: Comparison = { runId: run.id, runNumber: run.number, span, statistics }
+  const before = await keptComparison(db, project.id)
+  const answer = await saveRows(db, {
+    projectId: project.id,
+    userId,
+    kinds: fitKinds,
+    changes: [
+      before
+        ? { op: 'edit', kind: 'comparison', id: comparisonRowId, version: before.version, body }
+        : { op: 'add', kind: 'comparison', id: comparisonRowId, body },
+    ],
+  })
+  if (!answer.ok && answer.problems.length > 0) {
+    throw new Error(`The comparison was refused: ${JSON.stringify(answer.problems)}`)
+  }
+  return answer.ok
 }

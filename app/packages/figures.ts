@@ -1,5 +1,5 @@
 import { LineChart, ScatterChart } from 'echarts/charts'
-import { GridComponent } from 'echarts/components'
+import { GridComponent, TooltipComponent } from 'echarts/components'
 import { init, use } from 'echarts/core'
 import { LabelLayout } from 'echarts/features'
 import { SVGRenderer } from 'echarts/renderers'
@@ -16,7 +16,7 @@ import {
 import { formatNumber } from '~/units'
 import type { GatheredContent } from './gathered'
 
-use([LineChart, ScatterChart, GridComponent, LabelLayout, SVGRenderer])
+use([LineChart, ScatterChart, GridComponent, TooltipComponent, LabelLayout, SVGRenderer])
 
 export interface DrawnFigure {
   svg: string

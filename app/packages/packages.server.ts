@@ -529,3 +529,12 @@ export async function packagePdf(
     status: row.status,
   }
 }
+
+/** What the latest issued package holds, or undefined while nothing has been issued. */
+export async function issuedContent(db: Database, projectId: number): Promise<GatheredContent | undefined> {
+  const row = await db<PackageRow>('packages')
+    .where({ project_id: projectId, status: 'issued' })
+    .orderBy('id', 'desc')
+    .first('gathered')
+  return row?.gathered ? (JSON.parse(row.gathered) as GatheredContent) : undefined
+}

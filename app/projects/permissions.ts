@@ -33,6 +33,7 @@ const table = {
     water: ['originator'],
     cases: ['originator'],
     readings: ['data', 'originator'],
+    fit: ['originator'],
     checks: ['originator'],
     progress: ['project manager'],
     settings: ['project manager'],

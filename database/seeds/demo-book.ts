@@ -32,7 +32,7 @@ export const demoProgress = {
 
 export const demoBasis = {
   question:
-    'What must the eight wells pump so that the head under the shaft excavation stays at least 0.5 m below the dig level of −2.5 m, and how far does the water table fall at Chapel Row and at the Chapel while they do?',
+    'What must the eight wells pump so that the head under the shaft excavation stays at least 0.5 m below the dig level of −1.0 m, and how far does the water table fall at Chapel Row and at the Chapel while they do?',
   accuracy: 'Heads under the dig to 0.3 m; total abstraction to 20 %; drawdown at Chapel Row to 0.2 m.',
   intendedUse:
     'Choice of pumps and standby plant; input to the settlement assessment; trigger levels for the instruments.',
@@ -41,7 +41,7 @@ export const demoBasis = {
   idealisation:
     'Steady flow in plan in one unconfined aquifer of sand and gravel over stiff clay. Vertical flow is small against horizontal flow at the distances of interest; around the toe of the wall it is not, and the wall is taken to the clay. Steady state is reached within weeks and is the worst case for drawdown next door.',
   conclusions:
-    'At the rates of section 3 the head under the dig stays below −3.0 m. Drawdown at Chapel Row is given in section 5 and goes to the settlement assessment. The result depends most on the conductivity of the gravel belt and on the leakiness of the river bed; both should be looked at again when the wells have pumped for a month.',
+    'At the rates of section 3 the head under the dig stays below −1.5 m. Drawdown at Chapel Row is given in section 5 and goes to the settlement assessment. The result depends most on the conductivity of the gravel belt and on the leakiness of the river bed; both should be looked at again when the wells have pumped for a month.',
 }
 
 export const demoCover = {
@@ -152,14 +152,14 @@ export const demoZones = [
 
 export const demoWells = (
   [
-    ['W1', [534, 286], 260],
-    ['W2', [572, 284], 280],
-    ['W3', [628, 284], 280],
-    ['W4', [668, 300], 250],
-    ['W5', [668, 345], 190],
-    ['W6', [628, 384], 170],
-    ['W7', [572, 384], 170],
-    ['W8', [532, 345], 190],
+    ['W1', [534, 286], 390],
+    ['W2', [572, 284], 420],
+    ['W3', [628, 284], 420],
+    ['W4', [668, 300], 375],
+    ['W5', [668, 345], 285],
+    ['W6', [628, 384], 255],
+    ['W7', [572, 384], 255],
+    ['W8', [532, 345], 285],
   ] as [string, PlanVertex, number][]
 ).map(([name, place, pumped]) => ({
   name,
@@ -290,8 +290,8 @@ export const demoEstimates = [
     result: 'Total abstraction',
     method: 'Equivalent well, Dupuit: Q = πK(H² − h²)/ln(R/r)',
     working:
-      'K 16 m/d, aquifer base −14 m, H 15.9 m outside and 11.0 m under the dig, r = 48 m for the ring of wells, R = 450 m to the river and the north edge taken together.',
-    value: 2960,
+      'K 16 m/d, aquifer base −14 m, H 15.7 m outside and 12.2 m under the dig, r = 48 m for the ring of wells, R = 450 m to the river and the north edge taken together.',
+    value: 2190,
     unit: 'm³/d',
     computed: null,
     source: 'Dupuit (1863); Thiem (1906)',

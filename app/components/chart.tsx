@@ -1,0 +1,85 @@
+import type { EChartsOption } from 'echarts'
+import { lazy, Suspense, useEffect, useState } from 'react'
+
+const ChartCanvas = lazy(() => import('./chart-canvas'))
+
+/** Colours of the present theme as six-digit hex, which every renderer understands. */
+export interface ChartColours {
+  text: string
+  quiet: string
+  rule: string
+  mark: string
+  paper: string
+  alarm: string
+  warn: string
+}
+
+const variables: Record<keyof ChartColours, string> = {
+  text: '--flint',
+  quiet: '--flint-2',
+  rule: '--rule',
+  mark: '--bourne',
+  paper: '--chalk',
+  alarm: '--madder',
+  warn: '--ochre',
+}
+
+/** The browser turns any CSS colour into pixels; a pixel is read back as hex. */
+function hexOf(css: string, context: CanvasRenderingContext2D): string {
+  context.fillStyle = css
+  context.fillRect(0, 0, 1, 1)
+  const [r = 0, g = 0, b = 0] = context.getImageData(0, 0, 1, 1).data
+  return `#${[r, g, b].map((part) => part.toString(16).padStart(2, '0')).join('')}`
+}
+
+function readColours(): ChartColours | null {
+  const context = document.createElement('canvas').getContext('2d', { willReadFrequently: true })
+  if (!context) return null
+  const style = getComputedStyle(document.documentElement)
+  return Object.fromEntries(
+    Object.entries(variables).map(([name, variable]) => [
+      name,
+      hexOf(style.getPropertyValue(variable), context),
+    ]),
+  ) as unknown as ChartColours
+}
+
+/** Colours of the theme in force, null on the server; they follow when the theme changes. */
+export function useChartColours(): ChartColours | null {
+  const [colours, setColours] = useState<ChartColours | null>(null)
+  useEffect(() => {
+    const read = () => setColours(readColours())
+    read()
+    const observer = new MutationObserver(read)
+    observer.observe(document.documentElement, { attributeFilter: ['data-theme'] })
+    const dark = window.matchMedia('(prefers-color-scheme: dark)')
+    dark.addEventListener('change', read)
+    return () => {
+      observer.disconnect()
+      dark.removeEventListener('change', read)
+    }
+  }, [])
+  return colours
+}
+
+/** A chart drawn in the browser; `label` says in words what it shows, for those who do not see it. */
+export function Chart({
+  option,
+  height,
+  label,
+}: {
+  option: (colours: ChartColours) => EChartsOption
+  height: number
+  label: string
+}) {
+  const colours = useChartColours()
+  return (
+    <div role="img" aria-label={label} style={{ height }} className="w-full">
+      {colours && (
+        <Suspense>
+          <ChartCanvas option={option(colours)} height={height} />
+        </Suspense>
+      )}
+    </div>
+  )
+}
