@@ -103,3 +103,10 @@ export function within(value: Quantity, low: Quantity | null, high: Quantity | n
   const at = convert(value, value.unit)
   return (!low || convert(low, value.unit) <= at) && (!high || convert(high, value.unit) >= at)
 }
+
+/** Where a row lies, whatever else it may still lack: enough to draw it. */
+export const placeSchemas = {
+  point: z.looseObject({ x: coordinate, y: coordinate }),
+  line: z.looseObject({ line: polyline }),
+  polygon: z.looseObject({ polygon }),
+}

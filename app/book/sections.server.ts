@@ -74,6 +74,17 @@ export async function sectionStates(db: Database, projectId: number): Promise<Se
   })
 }
 
+/** The state of one section. */
+export async function sectionStatus(
+  db: Database,
+  projectId: number,
+  section: SectionKey,
+): Promise<SectionStatus> {
+  const status = (await sectionStates(db, projectId)).find(({ key }) => key === section)
+  if (!status) throw new Error(`The book has no section ${section}.`)
+  return status
+}
+
 /** One digest over the named sections: tells whether a run or a package still belongs to the book as it stands. */
 export async function digestOf(
   db: Database,

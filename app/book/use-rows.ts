@@ -37,6 +37,11 @@ export interface RowsEditor {
    * saved. A row that cannot be read yet is left out.
    */
   sound: <B>(kind: string) => Row<B>[]
+  /**
+   * Rows of one kind whose place the schema takes, for a drawing: a well without its rate is drawn all the same. Other
+   * fields may be missing; the name is never.
+   */
+  placed: <B>(kind: string, place: ZodType) => Row<B>[]
   /** Props of a Sheet. */
   sheet: (kind: string) => { rows: readonly SheetRow[]; edits: SheetEdits | undefined }
   /** One gesture, undone as a whole: what a drawing calls when a vertex was dragged. */
@@ -170,19 +175,22 @@ export function useRows(initial: readonly Row<unknown>[], options: UseRowsOption
     function rows(kind: string) {
       return snapshot.rows.filter((row) => row.kind === kind)
     }
+    function read<B>(kind: string, schema: ZodType | undefined, whole: boolean): Row<B>[] {
+      return rows(kind).flatMap(({ id, version, body, recordedBy, recordedFrom }, position) => {
+        const found = schema?.safeParse(body)
+        if (!found?.success) return []
+        const shown = whole ? found.data : { name: '', ...body }
+        return [{ id, kind, version, position, body: shown as B, recordedBy, recordedFrom }]
+      })
+    }
     return {
       editable,
       saving: snapshot.saving,
       unsaved: snapshot.unsaved,
       conflicts: snapshot.conflicts,
       rows,
-      sound<B>(kind: string) {
-        return rows(kind).flatMap(({ id, version, body, recordedBy, recordedFrom }, position) => {
-          const read = schemas[kind]?.safeParse(body)
-          if (!read?.success) return []
-          return [{ id, kind, version, position, body: read.data as B, recordedBy, recordedFrom }]
-        })
-      },
+      sound: <B>(kind: string) => read<B>(kind, schemas[kind], true),
+      placed: <B>(kind: string, place: ZodType) => read<B>(kind, place, false),
       sheet(kind: string) {
         const edits = {
           apply: (changes: SheetEdit[]) =>

@@ -62,7 +62,7 @@ const materialColumns: SheetColumn[] = [
   },
   { field: 'specificYield', label: 'Specific yield', editor: 'number', unitText: '–', blank: 'not given' },
   { field: 'porosity', label: 'Porosity', editor: 'number', unitText: '–', blank: 'not given', width: 100 },
-  { field: 'source', label: 'Source', editor: 'text', long: true, width: 180 },
+  { field: 'source', label: 'Source', editor: 'text', width: 220 },
 ]
 
 function zoneColumns(units: ProjectUnits, materials: readonly { id: string; name: string }[]): SheetColumn[] {
@@ -92,7 +92,7 @@ function zoneColumns(units: ProjectUnits, materials: readonly { id: string; name
       blank: 'everywhere',
       note: 'Blank: everywhere. A zone further down replaces those above it where they overlap.',
     },
-    { field: 'source', label: 'Source', editor: 'text', long: true, width: 180 },
+    { field: 'source', label: 'Source', editor: 'text', width: 220 },
   ]
 }
 
@@ -101,12 +101,23 @@ function pointColumns(units: ProjectUnits): SheetColumn[] {
     { field: 'name', label: 'Point', editor: 'text' },
     { field: 'x', label: 'x', editor: 'number', unitText: units.length },
     { field: 'y', label: 'y', editor: 'number', unitText: units.length },
-    { field: 'source', label: 'Source', editor: 'text', long: true },
+    { field: 'source', label: 'Source', editor: 'text' },
   ]
 }
 
 function materialNames(book: RowsEditor): { id: string; name: string }[] {
   return book.rows('material').map((row) => ({ id: row.id, name: String(row.body.name ?? '') }))
+}
+
+/** What a new row starts with, whether it comes from a sheet or from the drawing. */
+export function newGroundRow(kind: 'zone' | 'point', book: RowsEditor): Record<string, unknown> {
+  if (kind === 'zone') return { materialId: materialNames(book)[0]?.id ?? null }
+  return {
+    name: nextName(
+      book.rows('point').map((row) => String(row.body.name ?? '')),
+      'P',
+    ),
+  }
 }
 
 /** Columns of every kind of row of section 2, for the names of its fields. */
@@ -154,7 +165,7 @@ export function ZoneSheet({ book, units, shared, uses }: GroundSheetProps) {
       columns={columns}
       {...book.sheet('zone')}
       {...shared}
-      newRow={() => ({ materialId: materials[0]?.id ?? null })}
+      newRow={() => newGroundRow('zone', book)}
       warnings={zoneRemarks(book.sound<Zone>('zone'))}
       usedBy={(id) => uses[id] ?? []}
       empty="No zone yet: say which material lies where, and between which levels."
@@ -164,22 +175,15 @@ export function ZoneSheet({ book, units, shared, uses }: GroundSheetProps) {
 
 export function PointSheet({ book, units, shared, uses }: GroundSheetProps) {
   const columns = useMemo(() => pointColumns(units), [units])
-  const { rows, edits } = book.sheet('point')
   return (
     <Sheet
       label="Named points"
       noun="point"
       units={units}
       columns={columns}
-      rows={rows}
-      edits={edits}
+      {...book.sheet('point')}
       {...shared}
-      newRow={() => ({
-        name: nextName(
-          rows.map((row) => String(row.body.name ?? '')),
-          'P',
-        ),
-      })}
+      newRow={() => newGroundRow('point', book)}
       warnings={pointRemarks(book.sound<Point>('point'))}
       usedBy={(id) => uses[id] ?? []}
       empty="No point yet. Heads are reported at named points, and instruments are compared there."

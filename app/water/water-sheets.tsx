@@ -41,7 +41,7 @@ function asChoices(words: readonly string[]) {
   return words.map((word) => ({ value: word, label: word }))
 }
 
-const source: SheetColumn = { field: 'source', label: 'Source', editor: 'text', long: true, width: 180 }
+const source: SheetColumn = { field: 'source', label: 'Source', editor: 'text', width: 220 }
 
 function isKind(...kinds: string[]) {
   return (body: Record<string, unknown>) => kinds.includes(String(body.kind))
@@ -162,6 +162,7 @@ export function waterColumns(units: ProjectUnits) {
       {
         field: 'k',
         label: 'K of the wall',
+        width: 175,
         editor: 'quantity',
         dimension: 'conductivity',
         note: 'Hydraulic conductivity; 0 is impermeable.',
@@ -176,8 +177,21 @@ function useWaterColumns(units: ProjectUnits) {
   return useMemo(() => waterColumns(units), [units])
 }
 
-function namesOf(rows: readonly { body: Record<string, unknown> }[]): string[] {
-  return rows.map((row) => String(row.body.name ?? ''))
+export type WaterKind = keyof typeof waterSchemas
+
+/** What a new row starts with, whether it comes from a sheet or from the drawing. */
+export function newWaterRow(kind: WaterKind, book: RowsEditor): Record<string, unknown> {
+  const names = book.rows(kind).map((row) => String(row.body.name ?? ''))
+  switch (kind) {
+    case 'well':
+      return { name: nextName(names, 'W'), kind: 'abstraction' }
+    case 'recharge zone':
+      return { name: nextName(names, 'R') }
+    case 'boundary':
+      return { kind: 'fixed head', direction: 'into the model', outer: false }
+    case 'wall':
+      return {}
+  }
 }
 
 export function WellSheet({
@@ -188,17 +202,15 @@ export function WellSheet({
   zones,
 }: WaterSheetProps & { zones: readonly Row<Zone>[] }) {
   const columns = useWaterColumns(units)
-  const { rows, edits } = book.sheet('well')
   return (
     <Sheet
       label="Wells"
       noun="well"
       units={units}
       columns={columns.well}
-      rows={rows}
-      edits={edits}
+      {...book.sheet('well')}
       {...shared}
-      newRow={() => ({ name: nextName(namesOf(rows), 'W'), kind: 'abstraction' })}
+      newRow={() => newWaterRow('well', book)}
       warnings={wellRemarks(book.sound<Well>('well'), {
         zones,
         boundaries: book.sound<Boundary>('boundary'),
@@ -212,17 +224,15 @@ export function WellSheet({
 
 export function RechargeSheet({ book, units, shared, uses }: WaterSheetProps) {
   const columns = useWaterColumns(units)
-  const { rows, edits } = book.sheet('recharge zone')
   return (
     <Sheet
       label="Recharge zones"
       noun="recharge zone"
       units={units}
       columns={columns['recharge zone']}
-      rows={rows}
-      edits={edits}
+      {...book.sheet('recharge zone')}
       {...shared}
-      newRow={() => ({ name: nextName(namesOf(rows), 'R') })}
+      newRow={() => newWaterRow('recharge zone', book)}
       warnings={rechargeRemarks(book.sound<RechargeZone>('recharge zone'))}
       usedBy={(id) => uses[id] ?? []}
       empty="No recharge zone yet."
@@ -241,7 +251,7 @@ export function BoundarySheet({ book, units, shared, uses }: WaterSheetProps) {
       columns={columns.boundary}
       {...book.sheet('boundary')}
       {...shared}
-      newRow={() => ({ kind: 'fixed head', direction: 'into the model', outer: false })}
+      newRow={() => newWaterRow('boundary', book)}
       warnings={boundaryRemarks(book.sound<Boundary>('boundary'))}
       usedBy={(id) => uses[id] ?? []}
       empty="No boundary yet: without one, nothing fixes the head. An edge of the grid without a boundary lets no water through."
