@@ -99,6 +99,32 @@ export async function getObjectStream(key: string): Promise<Readable> {
   return answer.Body as Readable
 }
 
+/**
+ * The object as a stream that ends only if its SHA-256 is the one on record: the last piece is held back until the hash
+ * is known, so that a damaged object breaks off instead of arriving whole.
+ */
+export async function getVerifiedStream(key: string, sha256: string): Promise<Readable> {
+  const hash = createHash('sha256')
+  let held: Buffer | undefined
+  const verified = new Transform({
+    transform(chunk: Buffer, _encoding, done) {
+      hash.update(chunk)
+      const before = held
+      held = chunk
+      done(null, before)
+    },
+    flush(done) {
+      const found = hash.digest('hex')
+      if (found === sha256) done(null, held)
+      else done(new Error(`Stored object ${key} is damaged: SHA-256 ${found}, expected ${sha256}.`))
+    },
+  })
+  const object = await getObjectStream(key)
+  object.on('error', (error) => verified.destroy(error))
+  verified.on('close', () => object.destroy())
+  return object.pipe(verified)
+}
+
 /** The object whole, its SHA-256 held against the one on record. Throws when they differ. */
 export async function getVerified(key: string, sha256: string): Promise<Buffer> {
   const chunks: Buffer[] = []

@@ -236,7 +236,7 @@ export function SiteDrawing(props: SiteDrawingProps) {
             {failed ? '' : 'The drawing is being laid out …'}
           </p>
         )}
-        <div className="screen-only absolute top-2 left-2 flex flex-col gap-1">
+        <div className="screen-only absolute top-2 left-2 z-10 flex flex-col gap-1">
           {[
             { sign: '+', word: 'Zoom in', steps: 1 },
             { sign: '−', word: 'Zoom out', steps: -1 },
@@ -246,7 +246,7 @@ export function SiteDrawing(props: SiteDrawingProps) {
               type="button"
               aria-label={word}
               disabled={!ready}
-              className="size-8 rounded border border-rule bg-chalk/90 text-lg leading-none text-flint"
+              className="size-8 rounded border border-rule bg-chalk text-lg leading-none text-flint"
               onClick={() => site.current?.zoom(steps)}
             >
               {sign}
@@ -256,7 +256,7 @@ export function SiteDrawing(props: SiteDrawingProps) {
         <NorthArrow />
         {ready && (
           <div
-            className="pointer-events-none absolute bottom-2 left-2 bg-chalk/85 px-1.5 pt-0.5 pb-1 text-[0.8rem] text-flint"
+            className="pointer-events-none absolute bottom-2 left-2 z-10 bg-chalk/85 px-1.5 pt-0.5 pb-1 text-[0.8rem] text-flint"
             role="img"
             aria-label={`Scale bar of ${formatNumber(barLength, barLength < 1 ? 2 : 0)} ${lengthUnit}`}
           >
@@ -347,7 +347,7 @@ function NorthArrow() {
       role="img"
       aria-label="North is up"
       viewBox="0 0 24 40"
-      className="pointer-events-none absolute top-2 right-2 h-10 w-6 bg-chalk/85"
+      className="pointer-events-none absolute top-2 right-2 z-10 h-10 w-6 bg-chalk/85"
     >
       <path d="M12 3 L17.5 24 L12 20 L6.5 24 Z" className="fill-flint" />
       <text x="12" y="37" textAnchor="middle" className="fill-flint text-[12px] font-semibold">

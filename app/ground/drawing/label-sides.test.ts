@@ -19,6 +19,11 @@ describe('labels of symbols', () => {
     const sides = labelSides([well('W1', -30, 0), well('W2', 0, 0), well('W3', 30, 0)], 8, 13)
     expect(sides.get('W2')).toBe('above')
   })
+
+  it('find no room in the midst of a crowd', () => {
+    const crowd = [-20, 0, 20].flatMap((y) => [-20, 0, 20].map((x) => well(`${x} ${y}`, x, y)))
+    expect(labelSides(crowd, 8, 13).get('0 0')).toBeNull()
+  })
 })
 
 describe('symbols', () => {

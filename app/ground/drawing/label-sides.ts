@@ -19,7 +19,7 @@ export interface LabelledSymbol {
   width: number
 }
 
-const gap = 3
+const gap = 4
 
 /** Offset of a label's middle line from its symbol in pixels, y downwards, and how the text is aligned there. */
 export function labelOffset(
@@ -65,13 +65,13 @@ function overlap(a: Box, b: Box): boolean {
 
 /**
  * The side on which each symbol carries its label, so that labels keep off other symbols and off labels already placed:
- * the first free one in the order of `labelPlaces`, and the right where none is free. `reach` is half a symbol's size.
+ * the first free one in the order of `labelPlaces`, null where none is free. `reach` is half a symbol's size.
  */
 export function labelSides(
   symbols: readonly LabelledSymbol[],
   reach: number,
   fontSize: number,
-): Map<string, LabelSide> {
+): Map<string, LabelSide | null> {
   const marks = symbols.map(({ x, y }) => ({
     left: x - reach,
     right: x + reach,
@@ -79,7 +79,7 @@ export function labelSides(
     bottom: y + reach,
   }))
   const placed: Box[] = []
-  const sides = new Map<string, LabelSide>()
+  const sides = new Map<string, LabelSide | null>()
   for (const [index, symbol] of symbols.entries()) {
     const free = labelPlaces.find((side) => {
       const box = labelBox(symbol, side, reach, fontSize)
@@ -88,7 +88,7 @@ export function labelSides(
         !marks.some((mark, i) => i !== index && overlap(box, mark))
       )
     })
-    sides.set(symbol.id, free ?? 'right')
+    sides.set(symbol.id, free ?? null)
     if (free) placed.push(labelBox(symbol, free, reach, fontSize))
   }
   return sides

@@ -130,7 +130,7 @@ export function createSiteMap(target: HTMLElement, events: SiteMapEvents): SiteM
   let dragging = false
   let hovered: string | null = null
   let waitingFit: Extent | null = null
-  let sides: { resolution: number; sides: Map<string, LabelSide> } | null = null
+  let sides: { resolution: number; sides: Map<string, LabelSide | null> } | null = null
   let imageLayer: ReturnType<typeof planImageLayer> | null = null
   let imageKey = ''
 
@@ -141,10 +141,10 @@ export function createSiteMap(target: HTMLElement, events: SiteMapEvents): SiteM
     handles: false,
     fontSize: 13,
     symbolScale: 1,
-    side: (id) => sides?.sides.get(id) ?? 'right',
+    side: (id) => sides?.sides.get(id) ?? null,
   }
 
-  function placeLabels(resolution: number): Map<string, LabelSide> {
+  function placeLabels(resolution: number): Map<string, LabelSide | null> {
     if (width) width.font = `700 ${look.fontSize}px "Source Sans 3", system-ui, sans-serif`
     const symbols = source.getFeatures().flatMap((feature) => {
       const { id, label, geometry } = drawnOf(feature)

@@ -23,7 +23,8 @@ export interface Look {
   fontSize: number
   /** 1, or less where symbols crowd. */
   symbolScale: number
-  side: (id: string) => LabelSide
+  /** Where a point's label has room of its own, or null. */
+  side: (id: string) => LabelSide | null
 }
 
 /** Half the size of a point symbol in pixels, at its full scale. */
@@ -328,7 +329,7 @@ const pictures = new WeakMap<Palette, Map<string, HTMLCanvasElement>>()
 function symbolImage(drawn: DrawnFeature, look: Look): Icon {
   // Twice the pixels, for screens that have them.
   const fineness = 2
-  const size = 2 * (symbolReach + 1)
+  const size = 2 * symbolReach
   const known = pictures.get(look.palette) ?? new Map<string, HTMLCanvasElement>()
   pictures.set(look.palette, known)
   const key = `${drawn.kind} ${drawn.detail?.wellKind}`
@@ -384,8 +385,18 @@ function labelStyle(drawn: DrawnFeature, look: Look, chosen: boolean): Style {
   const zIndex = (chosen ? 300 : 200) + rank[drawn.kind]
   const { geometry } = drawn
   if (geometry.type === 'point') {
-    const { align, x, y } = labelOffset(look.side(drawn.id), symbolReach * look.symbolScale, fontSize)
-    return new Style({ text: new Text({ ...base, textAlign: align, offsetX: x, offsetY: y }), zIndex })
+    const side = look.side(drawn.id)
+    const { align, x, y } = labelOffset(side ?? 'right', symbolReach * look.symbolScale, fontSize)
+    return new Style({
+      text: new Text({
+        ...base,
+        textAlign: align,
+        offsetX: x,
+        offsetY: y,
+        declutterMode: side || chosen ? 'obstacle' : 'declutter',
+      }),
+      zIndex,
+    })
   }
   if (geometry.type === 'line' || drawn.kind === 'extent') {
     const along = geometry.type === 'line' ? geometry.vertices : topEdge(geometry.vertices)
