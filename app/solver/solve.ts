@@ -292,6 +292,11 @@ function nearFixedHead(d: Discretised, shares: { cell: number }[]): boolean {
   })
 }
 
+function isDry(flow: FlowModel, heads: Float64Array, cell: number): boolean {
+  const { base } = flow.flows[flow.d.profileOf[cell] as number] as ProfileFlow
+  return (heads[cell] as number) <= base + 2 * flow.film
+}
+
 function levelWarnings(flow: FlowModel, heads: Float64Array): Warning[] {
   const { d } = flow
   let dry = 0
@@ -301,7 +306,7 @@ function levelWarnings(flow: FlowModel, heads: Float64Array): Warning[] {
     const h = heads[cell] as number
     const number = d.profileOf[cell] as number
     if (d.unconfined) {
-      if (h <= (flow.flows[number] as ProfileFlow).base + 2 * flow.film) dry++
+      if (isDry(flow, heads, cell)) dry++
     } else {
       const { top } = d.profiles[number] as Discretised['profiles'][number]
       if (h < (top[top.length - 1] as number)) belowTop++
@@ -313,6 +318,18 @@ function levelWarnings(flow: FlowModel, heads: Float64Array): Warning[] {
       code: 'dry-cells',
       severity: 'check',
       text: `${dry} ${dry === 1 ? 'cell is' : 'cells are'} dry: the head there is only formal. None is left out of the balance.`,
+    })
+  }
+  const drawn = new Set<string>()
+  for (const { index, cell, rate } of d.specifiedFlows) {
+    if (d.unconfined && rate < 0 && isDry(flow, heads, cell))
+      drawn.add(`"${d.model.boundaries?.[index]?.name}"`)
+  }
+  if (drawn.size > 0) {
+    warnings.push({
+      code: 'outflow-from-dry-cells',
+      severity: 'serious',
+      text: `The specified outflow of ${[...drawn].join(', ')} is more than the ground can yield: it is drawn from dry cells.`,
     })
   }
   if (belowTop > 0) {

@@ -1,4 +1,6 @@
+import { solveDense } from './dense'
 import type { Matrix } from './flow'
+import type { Zones } from './zones'
 
 /**
  * One sweep of red-black successive over-relaxation over a five-point system with unit diagonal:
@@ -53,6 +55,7 @@ export interface SorSystem {
   root: Float64Array
   /** The unknown times `root`, with a row of zeros on either side. */
   x: Float64Array
+  symmetric: boolean
 }
 
 export interface SorOutcome {
@@ -73,6 +76,8 @@ export interface SorOptions {
   headTolerance: number
   /** 2 / (1 + root(2 lambda)) is the first factor; see `smallestEigenvalue`. */
   lambda: number
+  /** Zones whose common level is corrected at the end of every window; null: none. */
+  zones: Zones | null
   mostSweeps: number
   /** Head change = unknown / weight. */
   weight: Float64Array
@@ -102,7 +107,7 @@ export function scaledSystem(matrix: Matrix, rightHandSide: Float64Array, nx: nu
       if (j < ny - 1) n[c] = (n[c] as number) / (own * (root[c + nx] as number))
     }
   }
-  return { nx, ny, b, w, e, s, n, root, x: new Float64Array(count + 2 * nx) }
+  return { nx, ny, b, w, e, s, n, root, x: new Float64Array(count + 2 * nx), symmetric }
 }
 
 interface Measure {
@@ -111,6 +116,8 @@ interface Measure {
   largest: number
   /** Highest minus lowest change of head so far. */
   range: number
+  /** What rounding alone leaves of `norm` at these values. */
+  floor: number
 }
 
 /** The true residual of the scaled system, recomputed from its definition. */
@@ -120,6 +127,7 @@ export function measure(system: SorSystem, weight: Float64Array, out: Measure): 
   let largest = 0
   let lowest = 0
   let highest = 0
+  let size = 0
   const count = nx * ny
   for (let c = 0; c < count; c++) {
     const p = c + nx
@@ -133,6 +141,7 @@ export function measure(system: SorSystem, weight: Float64Array, out: Measure): 
     const scale = root[c] as number
     const unit = 1 / (scale * (weight[c] as number))
     sum += r * scale * r * scale
+    size += (x[p] as number) * scale * (x[p] as number) * scale
     const change = Math.abs(r) * unit
     if (change > largest) largest = change
     const value = (x[p] as number) * unit
@@ -142,6 +151,7 @@ export function measure(system: SorSystem, weight: Float64Array, out: Measure): 
   out.norm = Math.sqrt(sum)
   out.largest = largest
   out.range = highest - lowest
+  out.floor = Number.EPSILON * Math.sqrt(size)
 }
 
 /**
@@ -157,8 +167,13 @@ export function measure(system: SorSystem, weight: Float64Array, out: Measure): 
 export function relax(system: SorSystem, options: SorOptions): SorOutcome {
   const { nx, ny, b, w, e, s, n, x } = system
   const { target, headTolerance, weight } = options
-  const now: Measure = { norm: 0, largest: 0, range: 0 }
+  const now: Measure = { norm: 0, largest: 0, range: 0, floor: 0 }
+  const { zones } = options
+  if (zones) correctZones(system, weight, zones)
   measure(system, weight, now)
+  // Away from symmetry a factor may let errors grow for long before they fall: then go back and relax less.
+  const kept = system.symmetric ? null : x.slice()
+  let highestOmega = 2 - 1e-7
   let omega = 2 / (1 + Math.sqrt(2 * Math.min(options.lambda, 0.5)))
   let sweeps = 0
   let windowSweeps = 0
@@ -186,9 +201,22 @@ export function relax(system: SorSystem, options: SorOptions): SorOutcome {
       ended = 'cancelled'
       break
     }
+    if (kept && !(now.norm <= 1e3 * windowNorm) && omega > 1) {
+      x.set(kept)
+      highestOmega = omega < 1.05 ? 1 : 1 + 0.5 * (omega - 1)
+      omega = highestOmega
+      observed = omega - 1
+      windowSweeps = 0
+      continue
+    }
     if (!Number.isFinite(now.norm)) break
     if (now.norm <= target && headError <= headTolerance * now.range) {
       ended = 'converged'
+      break
+    }
+    if (now.norm <= now.floor) {
+      ended = 'stalled'
+      headError = stalledError(now, options.lambda, omega)
       break
     }
     if (windowSweeps < window) continue
@@ -196,27 +224,62 @@ export function relax(system: SorSystem, options: SorOptions): SorOutcome {
     idleWindows = now.norm < 0.7 * bestNorm ? 0 : idleWindows + 1
     bestNorm = Math.min(bestNorm, now.norm)
     observed = Math.min(lambda, 0.999999)
-    if (lambda > 1 && now.norm > 1e3 * bestNorm) omega = 2 / (1 + 2 * ((2 - omega) / omega))
-    else if (lambda < 1 && Math.log(lambda) > 0.6 * Math.log(omega - 1)) {
+    if (lambda < 1 && now.norm > 30 * now.floor && Math.log(lambda) > 0.6 * Math.log(omega - 1)) {
       const mu = (lambda + omega - 1) / (omega * Math.sqrt(lambda))
       if (mu < 1) {
         const better = 2 / (1 + Math.sqrt(1 - mu * mu))
-        if (better > omega + 1e-3 * (2 - omega)) {
-          omega = Math.min(better, 2 - 1e-7)
+        if (better > omega + 1e-3 * (2 - omega) && omega < highestOmega) {
+          omega = Math.min(better, highestOmega)
           idleWindows = 0
         }
       }
     }
+    if (zones && now.norm > 30 * now.floor) {
+      correctZones(system, weight, zones)
+      measure(system, weight, now)
+    }
     windowSweeps = 0
     windowNorm = now.norm
+    kept?.set(x)
     if (idleWindows >= 6) {
       ended = 'stalled'
-      // At the rounding floor nothing converges that could be watched: |error| <= |residual / diagonal| / lambda.
-      headError = now.largest / Math.min(options.lambda, 0.5 * ((2 - omega) / omega) ** 2)
+      headError = stalledError(now, options.lambda, omega)
       break
     }
   }
   return { sweeps, residual: now.norm, headError, ended, factor: omega }
+}
+
+/** Raises or lowers each zone as a whole until it balances with the others. */
+function correctZones(system: SorSystem, weight: Float64Array, zones: Zones): void {
+  const { nx, ny, b, w, e, s, n, root, x } = system
+  const excess = new Array<number>(zones.count).fill(0)
+  const count = nx * ny
+  for (let c = 0; c < count; c++) {
+    const zone = zones.zoneOf[c] as number
+    if (zone < 0) continue
+    const p = c + nx
+    const r =
+      (b[c] as number) +
+      (w[c] as number) * (x[p - 1] as number) +
+      (e[c] as number) * (x[p + 1] as number) +
+      (s[c] as number) * (x[p - nx] as number) +
+      (n[c] as number) * (x[p + nx] as number) -
+      (x[p] as number)
+    excess[zone] = (excess[zone] as number) + r * (root[c] as number)
+  }
+  const rise = solveDense(zones.matrix, excess)
+  if (!rise.every(Number.isFinite)) return
+  for (let c = 0; c < count; c++) {
+    const zone = zones.zoneOf[c] as number
+    if (zone >= 0)
+      x[c + nx] = (x[c + nx] as number) + (rise[zone] as number) * (weight[c] as number) * (root[c] as number)
+  }
+}
+
+/** At the rounding floor nothing converges that could be watched: |error| <= |residual / diagonal| / lambda. */
+function stalledError(now: Measure, lambda: number, omega: number): number {
+  return now.largest / Math.min(lambda, 0.5 * ((2 - omega) / omega) ** 2)
 }
 
 /** One grid of the hierarchy that the eigenvalue is estimated on; `gain` is what leaves to held heads, by cell. */

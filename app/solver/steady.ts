@@ -1,3 +1,4 @@
+import { solveDense } from './dense'
 import type { Discretised } from './discretise'
 import {
   emptyMatrix,
@@ -13,6 +14,7 @@ import {
 import { levelOfPotential, potentialAt, slopeAt } from './saturated'
 import { relax, scaledSystem, smallestEigenvalue } from './sor'
 import { logEquivalentRadius, type PlacedWell } from './wells'
+import { type Zones, zonesOf } from './zones'
 
 export interface Progress {
   sweeps: number
@@ -160,7 +162,7 @@ function balanceCells(run: Run): boolean {
       return run.atFloor && run.headError <= 1e-6 * headSpread(run)
     }
     before = Math.min(before, run.residual)
-    const lambda = smallestEigenvalue(run.matrix, columns, rows)
+    const { lambda, zones } = relaxationOf(run)
     const full = 0.3 * run.tolerance * run.rightHandSide
     const target = flow.linear ? full : Math.max(full, 1e-5 * norm)
     const system = scaledSystem(run.matrix, state.imbalance, columns, rows)
@@ -170,6 +172,7 @@ function balanceCells(run: Run): boolean {
       target,
       headTolerance: flow.linear ? 1e-8 : 1e-4,
       lambda,
+      zones,
       mostSweeps: run.allowed - start,
       weight: run.matrix.weight,
       watch: (sweeps, residual) => {
@@ -187,6 +190,21 @@ function balanceCells(run: Run): boolean {
   evaluate(flow, run.heads, run.rates, state, null)
   run.residual = run.rightHandSide > 0 ? normOfFree(d, state.imbalance) / run.rightHandSide : 0
   return !run.cancelled && run.residual <= run.tolerance
+}
+
+/**
+ * The slowest mode's eigenvalue, and the zones whose levels are corrected by themselves. Where they are, what is left
+ * for relaxation is not slower than a grid held on one side.
+ */
+function relaxationOf(run: Run): { lambda: number; zones: Zones | null } {
+  const { d, matrix } = run
+  const { columns, rows } = d.grid
+  const lambda = smallestEigenvalue(matrix, columns, rows)
+  const slowest = 0.5 / Math.max(columns, rows) ** 2
+  const free = (cell: number) => d.active[cell] === 1 && (d.fixedBy[cell] as number) < 0
+  const zones = zonesOf(matrix, free, columns, rows, lambda < 0.05 * slowest)
+  if (!zones || zones.slowest > 0.5 * Math.min(lambda, slowest)) return { lambda, zones: null }
+  return { lambda: Math.max(lambda, slowest), zones }
 }
 
 function clearHeld(d: Discretised, b: Float64Array): void {
@@ -403,7 +421,7 @@ function responseOf(run: Run, source: number, open: number[]): number[] {
   for (const { cell, weight } of (d.wells[source] as PlacedWell).shares) {
     if ((d.fixedBy[cell] as number) < 0) unit[cell] = weight
   }
-  const lambda = smallestEigenvalue(run.matrix, columns, rows)
+  const { lambda, zones } = relaxationOf(run)
   const weight = run.matrix.weight.slice()
   const system = scaledSystem(run.matrix, unit, columns, rows)
   const start = run.sweeps
@@ -411,6 +429,7 @@ function responseOf(run: Run, source: number, open: number[]): number[] {
     target: 1e-8,
     headTolerance: 1e-6,
     lambda,
+    zones,
     mostSweeps: run.allowed,
     weight,
     watch: (sweeps) => {
@@ -428,34 +447,4 @@ function responseOf(run: Run, source: number, open: number[]): number[] {
     }, 0)
     return change + (w === source ? logRadii(flow, well, run.heads) / (2 * Math.PI) : 0)
   })
-}
-
-/** Gaussian elimination with partial pivoting; the systems have one row a limited well. */
-function solveDense(matrix: number[][], right: number[]): number[] {
-  const n = right.length
-  const rows = matrix.map((row, index) => [...row, right[index] as number])
-  for (let k = 0; k < n; k++) {
-    let pivot = k
-    for (let i = k + 1; i < n; i++) {
-      if (Math.abs((rows[i] as number[])[k] as number) > Math.abs((rows[pivot] as number[])[k] as number))
-        pivot = i
-    }
-    const swap = rows[k] as number[]
-    rows[k] = rows[pivot] as number[]
-    rows[pivot] = swap
-    const top = rows[k] as number[]
-    for (let i = k + 1; i < n; i++) {
-      const row = rows[i] as number[]
-      const factor = (row[k] as number) / (top[k] as number)
-      for (let m = k; m <= n; m++) row[m] = (row[m] as number) - factor * (top[m] as number)
-    }
-  }
-  const solution = new Array<number>(n).fill(0)
-  for (let k = n - 1; k >= 0; k--) {
-    const row = rows[k] as number[]
-    let sum = row[n] as number
-    for (let m = k + 1; m < n; m++) sum -= (row[m] as number) * (solution[m] as number)
-    solution[k] = sum / (row[k] as number)
-  }
-  return solution
 }
