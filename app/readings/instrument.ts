@@ -13,7 +13,11 @@ export const instrumentSchema = z.strictObject({
   responseTop: quantity('length').nullable().default(null),
   responseBase: quantity('length').nullable().default(null),
   serial: text(60).default(''),
-  installedOn: z.iso.date('Give a date such as 2026-03-14.').nullable().default(null),
+  /** A sheet's empty cell is ''. */
+  installedOn: z.preprocess(
+    (value) => (value === '' ? null : value),
+    z.iso.date('Give a date such as 2026-03-14.').nullable().default(null),
+  ),
   /** The named point of section 2 whose modelled head this instrument is compared with. */
   pointId: z.string().nullable().default(null),
   /** True once the instrument is out of service. */

@@ -188,13 +188,35 @@ export interface LastReading {
   lastHead: { at: string; head: number } | null
 }
 
+export interface ReadingSpan {
+  count: number
+  /** ISO 8601 in UTC. */
+  first: string
+  last: string
+}
+
+/** How many readings each instrument has, and from when to when; instruments without any are left out. */
+export async function firstAndLast(db: Database, projectId: number): Promise<Map<string, ReadingSpan>> {
+  const rows = await currentReadings(db, projectId)
+    .groupBy('r.instrument_id')
+    .select<{ instrument_id: string; count: number; first: Date; last: Date }[]>(
+      'r.instrument_id',
+      db.raw('count(*) as count'),
+      db.raw('min(r.taken_at) as `first`'),
+      db.raw('max(r.taken_at) as `last`'),
+    )
+  return new Map(
+    rows.map((row) => [
+      row.instrument_id,
+      { count: Number(row.count), first: row.first.toISOString(), last: row.last.toISOString() },
+    ]),
+  )
+}
+
 /** The last reading and the last head of every instrument, in the order of the sheet. */
 export async function lastReadings(db: Database, projectId: number): Promise<LastReading[]> {
   const histories = await levelHistories(db, projectId)
-  const counts = await currentReadings(db, projectId)
-    .groupBy('r.instrument_id')
-    .select<{ instrument_id: string; count: number }[]>('r.instrument_id', db.raw('count(*) as count'))
-  const countOf = new Map(counts.map((row) => [row.instrument_id, Number(row.count)]))
+  const spans = await firstAndLast(db, projectId)
   const instruments = await instrumentsOf(db, projectId)
   const answers: LastReading[] = []
   for (const { id, name, kind, x, y, outOfService } of instruments) {
@@ -227,7 +249,7 @@ export async function lastReadings(db: Database, projectId: number): Promise<Las
       x,
       y,
       outOfService,
-      count: countOf.get(id) ?? 0,
+      count: spans.get(id)?.count ?? 0,
       last:
         row && derived
           ? {
@@ -372,21 +394,4 @@ export async function latestReadings(
       fileRow: row.file_row,
     }
   })
-}
-
-/** The first and the last instant read on every instrument that has readings, ISO 8601 in UTC. */
-export async function firstAndLast(
-  db: Database,
-  projectId: number,
-): Promise<Map<string, { first: string; last: string }>> {
-  const rows = await currentReadings(db, projectId)
-    .groupBy('r.instrument_id')
-    .select<{ instrument_id: string; first: Date; last: Date }[]>(
-      'r.instrument_id',
-      db.raw('min(r.taken_at) as first'),
-      db.raw('max(r.taken_at) as last'),
-    )
-  return new Map(
-    rows.map((row) => [row.instrument_id, { first: row.first.toISOString(), last: row.last.toISOString() }]),
-  )
 }
