@@ -1,27 +1,11 @@
 import type { EChartsOption } from 'echarts'
+import type { Palette } from '~/heads/palette'
 import { formatNumber } from '~/units'
 
 export interface OneToOnePoint {
   name: string
   measured: number
   modelled: number
-}
-
-export interface OneToOneColours {
-  text: string
-  quiet: string
-  rule: string
-  mark: string
-  paper: string
-}
-
-/** On paper: the colours of the PDF. */
-export const printColours: OneToOneColours = {
-  text: '#14191d',
-  quiet: '#4a5258',
-  rule: '#c9c9c2',
-  mark: '#0e5a61',
-  paper: '#ffffff',
 }
 
 /** Both axes of a 1:1 plot run over the same round range, so that the line of agreement is the diagonal. */
@@ -42,7 +26,7 @@ export function sharedRange(points: readonly OneToOnePoint[]): { low: number; hi
 export function oneToOnePlot(
   points: readonly OneToOnePoint[],
   unit: string,
-  colours: OneToOneColours,
+  colours: Palette,
   fontSize = 12,
 ): EChartsOption {
   const { low, high, step } = sharedRange(points)
@@ -66,7 +50,7 @@ export function oneToOnePlot(
   return {
     animation: false,
     backgroundColor: colours.paper,
-    textStyle: { fontFamily: 'Source Sans 3', color: colours.text },
+    textStyle: { fontFamily: 'Source Sans 3', color: colours.ink },
     grid: { left: 64, right: 24, top: 16, bottom: 52 },
     tooltip: {
       trigger: 'item',
@@ -93,12 +77,12 @@ export function oneToOnePlot(
       {
         type: 'scatter',
         symbolSize: 9,
-        itemStyle: { color: colours.mark },
+        itemStyle: { color: colours.water },
         label: {
           show: points.length <= 25,
           formatter: (item: unknown) => (item as { data: { name: string } }).data.name,
           position: 'right',
-          color: colours.text,
+          color: colours.ink,
           fontSize,
         },
         labelLayout: { hideOverlap: true },

@@ -3,8 +3,9 @@ import { GridComponent, TooltipComponent } from 'echarts/components'
 import { init, use } from 'echarts/core'
 import { LabelLayout } from 'echarts/features'
 import { SVGRenderer } from 'echarts/renderers'
-import { oneToOnePlot, printColours } from '~/fit/one-to-one'
+import { oneToOnePlot } from '~/fit/one-to-one'
 import { drawdownBetween, type HeadField } from '~/heads/field'
+import { palettes } from '~/heads/palette'
 import {
   contouringOf,
   headsPictureSvg,
@@ -107,7 +108,7 @@ export function oneToOneFigure(content: GatheredContent): DrawnFigure | null {
   if (points.length < 2) return null
   const height = 520
   const chart = init(null, null, { renderer: 'svg', ssr: true, width: 720, height })
-  chart.setOption(oneToOnePlot(points, content.project.units.length, printColours, 15))
+  chart.setOption(oneToOnePlot(points, content.project.units.length, palettes.print, 15))
   const svg = chart.renderToSVGString()
   chart.dispose()
   return {

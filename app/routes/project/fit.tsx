@@ -1,9 +1,8 @@
-import { lazy, Suspense, useState } from 'react'
+import { lazy, Suspense, useMemo, useState } from 'react'
 import { data, Form, href, useNavigation } from 'react-router'
 import { CheckButton } from '~/book/check-button'
 import { sectionStatus } from '~/book/sections.server'
 import { Button, DownloadButton } from '~/components/button'
-import { Chart } from '~/components/chart'
 import { DataTable } from '~/components/data-table'
 import { Field, SelectField } from '~/components/field'
 import { FormMessage } from '~/components/form-message'
@@ -14,7 +13,7 @@ import { toTsv } from '~/components/spreadsheet'
 import { type FitSpan, inProjectUnit, nearestWithinDays, spanFrom } from '~/fit/fit'
 import { dayOfLastReading, fitOf, keptComparison, recordFit } from '~/fit/fit.server'
 import { fitTable } from '~/fit/fit-table'
-import { oneToOnePlot } from '~/fit/one-to-one'
+import { featuresOf } from '~/heads/features'
 import { findRun, isStale, listRuns } from '~/heads/runs.server'
 import { idFrom, membershipContext, permit } from '~/projects/guard.server'
 import { can } from '~/projects/permissions'
@@ -22,6 +21,7 @@ import { formatNumber } from '~/units'
 import { database } from '~database/connection.server'
 import type { Route } from './+types/fit'
 
+const OneToOneFigure = lazy(() => import('~/fit/one-to-one-figure'))
 const ResidualPlan = lazy(() => import('~/fit/residual-plan'))
 
 export async function loader({ context, request }: Route.LoaderArgs) {
@@ -56,6 +56,7 @@ export async function loader({ context, request }: Route.LoaderArgs) {
           number: shown.number,
           caseName: shown.caseName,
           converged: shown.converged === true,
+          features: { ...featuresOf(shown.model, shown.result?.noFlowEdges ?? []), points: [] },
           stale: await isStale(db, project, shown),
         }
       : null,
@@ -86,16 +87,30 @@ export default function FitPage({ loaderData, actionData, params }: Route.Compon
   const { project, runs, run, fit, span, problem, kept, mayKeep } = loaderData
   const unit = project.units.length
   const time = localTime(project.timeZone)
-  const [hovered, setHovered] = useState<string | null>(null)
   const busy = useNavigation().state !== 'idle'
-  const lines = (fit?.lines ?? []).map((line) => ({
-    ...line,
-    measured: inProjectUnit(line.measured, unit),
-    modelled: inProjectUnit(line.modelled, unit),
-    residual: inProjectUnit(line.residual, unit),
-  }))
-  const compared = lines.flatMap(({ name, measured, modelled }) =>
-    measured === null || modelled === null ? [] : [{ name, measured, modelled }],
+  const lines = useMemo(
+    () =>
+      (fit?.lines ?? []).map((line) => ({
+        ...line,
+        measured: inProjectUnit(line.measured, unit),
+        modelled: inProjectUnit(line.modelled, unit),
+        residual: inProjectUnit(line.residual, unit),
+      })),
+    [fit, unit],
+  )
+  const compared = useMemo(
+    () =>
+      lines.flatMap(({ name, measured, modelled }) =>
+        measured === null || modelled === null ? [] : [{ name, measured, modelled }],
+      ),
+    [lines],
+  )
+  const marks = useMemo(
+    () =>
+      lines.flatMap(({ name, x, y, residual }) =>
+        residual === null ? [] : [{ name, x, y, value: residual, label: withSign(residual) }],
+      ),
+    [lines],
   )
   const statistics = fit?.statistics ?? null
   const query = new URLSearchParams({ ...(run ? { run: String(run.id) } : {}), ...span }).toString()
@@ -204,7 +219,6 @@ export default function FitPage({ loaderData, actionData, params }: Route.Compon
             caption="Measured and modelled heads with residuals"
             rows={lines}
             rowKey={(line) => line.instrumentId}
-            chosen={(line) => line.name === hovered}
             empty="There is no instrument yet: section 6 holds them."
             columns={[
               { head: 'Instrument', cell: (line) => line.name },
@@ -250,11 +264,9 @@ export default function FitPage({ loaderData, actionData, params }: Route.Compon
             <div className="grid gap-x-8 xl:grid-cols-2">
               <figure className="mt-7 min-w-0">
                 <Heading no="7.2">Modelled against measured</Heading>
-                <Chart
-                  height={380}
-                  label={`Modelled against measured heads of ${compared.length} instruments; the table above holds the figures`}
-                  option={(colours) => oneToOnePlot(compared, unit, colours, 13)}
-                />
+                <Suspense fallback={<div className="h-96" />}>
+                  <OneToOneFigure points={compared} unit={unit} />
+                </Suspense>
                 <figcaption className="pt-1.5 text-[0.87rem] text-flint-2">
                   Fig. 7.1 Modelled against measured heads, {unit} {project.verticalDatum}. On the dashed line
                   they agree; above it the model is too high.
@@ -264,25 +276,15 @@ export default function FitPage({ loaderData, actionData, params }: Route.Compon
                 <Heading no="7.3">Residuals on the plan</Heading>
                 <Suspense fallback={<div className="h-96" />}>
                   <ResidualPlan
-                    projectId={params.projectId}
-                    runId={run.id}
+                    headsUrl={href('/projects/:projectId/runs/:runId/heads', {
+                      projectId: params.projectId,
+                      runId: String(run.id),
+                    })}
+                    marks={marks}
+                    features={run.features}
                     converged={run.converged}
                     unit={unit}
                     datum={`${unit} ${project.verticalDatum}`}
-                    marks={lines.flatMap((line) =>
-                      line.residual === null
-                        ? []
-                        : [
-                            {
-                              name: line.name,
-                              x: line.x,
-                              y: line.y,
-                              value: line.residual,
-                              label: withSign(line.residual),
-                            },
-                          ],
-                    )}
-                    onHover={setHovered}
                   />
                 </Suspense>
                 <figcaption className="pt-1.5 text-[0.87rem] text-flint-2">

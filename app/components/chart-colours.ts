@@ -1,7 +1,4 @@
-import type { EChartsOption } from 'echarts'
-import { lazy, Suspense, useEffect, useState } from 'react'
-
-const ChartCanvas = lazy(() => import('./chart-canvas'))
+import { useEffect, useState } from 'react'
 
 /** Colours of the present theme as six-digit hex, which every renderer understands. */
 export interface ChartColours {
@@ -60,26 +57,4 @@ export function useChartColours(): ChartColours | null {
     }
   }, [])
   return colours
-}
-
-/** A chart drawn in the browser; `label` says in words what it shows, for those who do not see it. */
-export function Chart({
-  option,
-  height,
-  label,
-}: {
-  option: (colours: ChartColours) => EChartsOption
-  height: number
-  label: string
-}) {
-  const colours = useChartColours()
-  return (
-    <div role="img" aria-label={label} style={{ height }} className="w-full">
-      {colours && (
-        <Suspense>
-          <ChartCanvas option={option(colours)} height={height} />
-        </Suspense>
-      )}
-    </div>
-  )
 }
