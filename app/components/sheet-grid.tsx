@@ -89,6 +89,7 @@ const pad = themeQuartz.withParams({
   rowHeight: 31,
   headerHeight: 32,
   cellHorizontalPadding: 9,
+  autoHeightMinBodyHeight: 34,
 })
 
 interface SheetGridProps extends SheetProps {
