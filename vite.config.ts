@@ -28,7 +28,8 @@ export default defineConfig({
           output: { entryFileNames: '[name].js' },
         },
       }
-    : undefined,
+    : // The grid and the charts, each loaded only by the pages that show one.
+      { chunkSizeWarningLimit: 1500 },
   test: {
     // Browser tests are a run of their own: they share one built application and take turns on it.
     include: inBrowser ? ['test/browser/**/*.test.ts'] : ['app/**/*.test.{ts,tsx}', 'test/**/*.test.ts'],

@@ -85,7 +85,13 @@ async function startEverything() {
   const variables = isDemo ? variablesOfDemo(folder, ports) : {}
   if (isDemo) ensureDebianPackages(['mariadb-server-core', 'mariadb-client-core'])
   ensureNodePackages(root)
-  const environment = { ...process.env, ...variables, NODE_ENV: isDevelopment ? 'development' : 'production' }
+  const environment = {
+    // The SDK is pinned to a version that works on this Node: no need to warn of later ones at every start.
+    AWS_SDK_JS_NODE_VERSION_SUPPORT_WARNING_DISABLED: 'true',
+    ...process.env,
+    ...variables,
+    NODE_ENV: isDevelopment ? 'development' : 'production',
+  }
   const settings = await checkEnvironment(environment)
   if (isDemo) {
     processes.afterwards(claimFolder(folder))

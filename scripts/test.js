@@ -79,7 +79,11 @@ async function testEverything(kind, files) {
   const variables = demoVariables({ folder, ports, schema: 'lavant_test' })
   // What somebody has set for their own Lavant must not reach the tests.
   const own = Object.entries(process.env).filter(([name]) => !/^(LAVANT_|NODE_ENV$|VITEST)/.test(name))
-  const environment = { ...Object.fromEntries(own), ...variables }
+  const environment = {
+    AWS_SDK_JS_NODE_VERSION_SUPPORT_WARNING_DISABLED: 'true',
+    ...Object.fromEntries(own),
+    ...variables,
+  }
 
   if (kind === undefined) {
     await step('Linters', ['run', '--silent', 'lint'], environment)
