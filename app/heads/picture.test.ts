@@ -56,7 +56,7 @@ function site(cells = 60, changes: Partial<PictureInput> = {}): PictureInput {
           ],
         },
       ],
-      points: [{ name: 'P7', x: 531_480, y: 178_130 }],
+      points: [{ name: 'P7', x: 531_480, y: 178_130, kind: 'instrument' }],
       noFlowEdges: ['east', 'part of north'],
     },
     ...changes,
@@ -85,7 +85,7 @@ describe('the picture of heads', () => {
     expect(texts).toEqual(
       expect.arrayContaining([
         'abstraction well',
-        'named point',
+        'piezometer',
         'head-dependent flux',
         'cut-off wall',
         'recharge zone',

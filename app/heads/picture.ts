@@ -37,6 +37,7 @@ import {
   boundarySymbol,
   levelSymbol,
   noFlowSymbol,
+  pointSymbol,
   symbolReach,
   wallSymbol,
   wellSymbol,
@@ -56,9 +57,7 @@ export interface PictureFeatures {
     polygon?: readonly Vertex[]
   }[]
   walls: { name: string; line: readonly Vertex[] }[]
-  points: { name: string; x: number; y: number }[]
-  /** What the key calls the points; "named point" unless said otherwise. */
-  pointsAre?: string
+  points: { name: string; x: number; y: number; kind: 'instrument' | 'point' }[]
   rings: { name: string; polygon: readonly Vertex[] }[]
   /** Sides of the extent across which nothing flows: "north", "east", "south", "west". */
   noFlowEdges: readonly string[]
@@ -105,6 +104,8 @@ export interface PictureOptions extends FigureSize {
   interval?: number
   /** A cut to mark, from A to A′, or only its first end. */
   cut?: readonly Vertex[]
+  /** A place to ring: what is selected beside the figure. */
+  selected?: Vertex
 }
 
 /** The contours that a picture of a field shows. */
@@ -179,6 +180,18 @@ export function headsPictureSvg(input: PictureInput, options: PictureOptions): s
   return svg
 }
 
+// Tracing takes most of the time, and a change of width, colours or cut needs none of it.
+const traced = new WeakMap<Float64Array, { levels: string; contours: Contour[] }>()
+
+function tracedContours(input: PictureInput, levels: readonly number[]): Contour[] {
+  const key = levels.join(' ')
+  const before = traced.get(input.heads)
+  if (before?.levels === key) return before.contours
+  const contours = contoursOf(input, levels)
+  traced.set(input.heads, { levels: key, contours })
+  return contours
+}
+
 function layersOf(input: PictureInput, options: PictureOptions): Shape[] {
   const layout = pictureLayout(input, options)
   const palette = palettes[options.theme]
@@ -192,7 +205,7 @@ function layersOf(input: PictureInput, options: PictureOptions): Shape[] {
     bands: contouring ? bandsOf(contouring, input.field, options.theme) : [],
     taken: [],
   }
-  const contours = contouring ? contoursOf(input, contouring.levels) : []
+  const contours = contouring ? tracedContours(input, contouring.levels) : []
   reserve(drawing)
   const names = namesOf(drawing)
   const lines = contourLines(drawing, contours)
@@ -211,6 +224,7 @@ function layersOf(input: PictureInput, options: PictureOptions): Shape[] {
     group(residualsOf(drawing)),
     group(names),
     group(cutEnds(drawing)),
+    group(selectionOf(drawing)),
     group(scaleOf(drawing)),
     group(legendOf(drawing)),
     group(keysOf(drawing)),
@@ -454,8 +468,10 @@ function symbolsOf({ input, layout, palette }: Drawing): Shape[] {
       .filter(({ at }) => isInPlot(layout, at))
   const marked = new Set(input.residuals?.map((mark) => mark.name))
   return [
-    ...here(points.filter((point) => !marked.has(point.name))).flatMap(({ at }) =>
-      levelSymbol(at[0], at[1], layout.size, palette),
+    ...here(points.filter((point) => !marked.has(point.name))).flatMap(({ feature, at }) =>
+      feature.kind === 'instrument'
+        ? levelSymbol(at[0], at[1], layout.size, palette)
+        : pointSymbol(at[0], at[1], layout.size, palette),
     ),
     ...here(wells).flatMap(({ feature, at }) => wellSymbol(at[0], at[1], feature.kind, layout.size, palette)),
   ]
@@ -550,9 +566,10 @@ function namesOf(drawing: Drawing): Shape[] {
   }
   const clear = (symbolReach + 2.5) * layout.size
   for (const { name, x, y } of features.wells) beside(x, y, name, clear)
-  for (const { name, x, y } of features.points) {
-    if (!marks.some((mark) => mark.name === name))
-      beside(x, y + (3 * layout.size) / layout.scale, name, clear)
+  for (const { name, x, y, kind } of features.points) {
+    if (marks.some((mark) => mark.name === name)) continue
+    // The triangle stands on its point: its middle lies a little higher.
+    beside(x, kind === 'instrument' ? y + (3 * layout.size) / layout.scale : y, name, clear)
   }
   for (const { name, line } of features.walls) {
     const longest = longestOf(clippedLine(pixelLine(layout, line), layout.plot))
@@ -601,6 +618,12 @@ function cutEnds({ options, layout, palette }: Drawing): Shape[] {
       align: 'center',
     }),
   ])
+}
+
+function selectionOf({ options, layout, palette }: Drawing): Shape[] {
+  if (!options.selected) return []
+  const [x, y] = layout.toPixel(...options.selected)
+  return cased(pathOfCircle(x, y, 15 * layout.size), palette.alarm, 2.2 * layout.size, palette.casing)
 }
 
 function frameOf({ input, layout, palette }: Drawing): Shape[] {
@@ -795,10 +818,14 @@ function keyItemsOf({ features, residuals, heads }: PictureInput): KeyItem[] {
     'recharge well',
   )
   const marked = new Set(residuals?.map((mark) => mark.name))
+  const points = features.points.filter((point) => !marked.has(point.name))
   add(
-    features.points.some((point) => !marked.has(point.name)),
-    'level',
-    features.pointsAre ?? 'named point',
+    points.some((point) => point.kind === 'instrument'),
+    'piezometer',
+  )
+  add(
+    points.some((point) => point.kind === 'point'),
+    'named point',
   )
   for (const kind of boundaryKinds) {
     add(
@@ -831,7 +858,8 @@ function keysOf({ layout, palette }: Drawing): Shape[] {
     const samples: Record<string, () => Shape[]> = {
       abstraction: () => wellSymbol(middle, y, 'abstraction', size * 0.85, palette),
       recharge: () => wellSymbol(middle, y, 'recharge', size * 0.85, palette),
-      level: () => levelSymbol(middle, y + 4 * size, size * 0.9, palette),
+      piezometer: () => levelSymbol(middle, y + 4 * size, size * 0.9, palette),
+      'named point': () => pointSymbol(middle, y, size, palette),
       wall: () => wallSymbol([from, to], size * 0.85, palette),
       ring: () => [
         drawn(pathOf([from, to]), palette.alarm, 1.5 * size, { lineDash: [7, 3, 2, 3], lineCap: 'butt' }),

@@ -58,6 +58,17 @@ export function levelSymbol(
   ]
 }
 
+/** A named point: a small ring about a dot. */
+export function pointSymbol(x: number, y: number, size: number, palette: Palette): Shape[] {
+  const ring = pathOfCircle(x, y, 4 * size)
+  return [
+    drawn(ring, palette.face, 4 * size),
+    filled(ring, palette.face),
+    drawn(ring, palette.edge, 1.5 * size),
+    filled(pathOfCircle(x, y, 1.3 * size), palette.edge),
+  ]
+}
+
 export type BoundaryLook = 'fixed head' | 'specified flux' | 'head-dependent flux' | 'drain' | 'seepage face'
 
 /** A boundary along a line. `towards` is the middle of the plot: flux arrows point that way, or back. */

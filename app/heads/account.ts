@@ -1,0 +1,64 @@
+import type { Result, Warning } from '~/solver/result'
+import { formatNumber } from '~/units'
+
+/** What a result says about itself, in words: the same on page and in the package. */
+
+export const severityWords: Record<Warning['severity'], string> = {
+  serious: 'Not to be used as it is',
+  check: 'Look before use',
+  note: 'For information',
+}
+
+/** Warnings with the gravest first. */
+export function byGravity(warnings: readonly Warning[]): Warning[] {
+  const order: Warning['severity'][] = ['serious', 'check', 'note']
+  return [...warnings].sort((a, b) => order.indexOf(a.severity) - order.indexOf(b.severity))
+}
+
+export const methodNames: Record<Result['method'], string> = {
+  sor: 'red-black successive over-relaxation',
+}
+
+/** "36 000 cells, red-black successive over-relaxation, 412 sweeps, residual 3·10⁻¹¹, water-balance error 2·10⁻⁹ %". */
+export function recordInWords(result: Result): string {
+  const { active, cells } = result.grid
+  const error = result.balance.errorPercent[0]
+  return [
+    active === cells
+      ? `${formatNumber(cells, 0)} cells`
+      : `${formatNumber(active, 0)} of ${formatNumber(cells, 0)} cells`,
+    methodNames[result.method],
+    `${formatNumber(result.iterations, 0)} sweeps`,
+    `residual ${shortly(result.residual)}`,
+    ...(error === undefined ? [] : [`water-balance error ${errorInWords(error)}`]),
+  ].join(', ')
+}
+
+/** Two figures are enough for a residual or an error. */
+export function shortly(value: number): string {
+  if (value === 0) return '0'
+  return formatNumber(Number(value.toPrecision(2)))
+}
+
+export function errorInWords(percent: number): string {
+  return Math.abs(percent) < 1e-4 ? 'below 0.0001 %' : `${shortly(percent)} %`
+}
+
+/** A steady balance should close far below 0.1 % of the inflow; one that is out by more than 1 % is not a balance. */
+export function balanceState(percent: number): 'good' | 'warn' | 'alarm' {
+  const size = Math.abs(percent)
+  return size <= 0.1 ? 'good' : size <= 1 ? 'warn' : 'alarm'
+}
+
+/** "north and part of west" for a sentence. */
+export function listed(names: readonly string[]): string {
+  if (names.length < 2) return names.join('')
+  return `${names.slice(0, -1).join(', ')} and ${names.at(-1)}`
+}
+
+/** "m above site datum", whether the project says "above site datum" or only "site datum". */
+export function levelUnit(length: string, verticalDatum: string): string {
+  return /^(above|below|m |ft )/i.test(verticalDatum)
+    ? `${length} ${verticalDatum.replace(/^(m|ft) /i, '')}`
+    : `${length} above ${verticalDatum}`
+}
