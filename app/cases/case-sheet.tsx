@@ -77,7 +77,6 @@ export function CaseSheet({
                     column={one.id}
                     value={one.body.name}
                     faint=""
-                    marked={false}
                     strong
                     problem={messageFor(one, 'name')}
                     onMove={move}
@@ -119,7 +118,14 @@ export function CaseSheet({
                     )}
                   </th>
                   {cases.map((one) => (
-                    <td key={one.id} className="border-l border-rule p-0 text-right align-middle">
+                    <td
+                      key={one.id}
+                      className={`border-l p-0 text-right align-middle ${
+                        isMarked(line, one)
+                          ? 'border-l-[3px] border-l-bourne bg-bourne-2/60 font-semibold'
+                          : 'border-rule'
+                      }`}
+                    >
                       <LineCell
                         line={line}
                         one={one}
@@ -157,6 +163,11 @@ export function CaseSheet({
   )
 }
 
+/** A case other than the base case says this itself. */
+function isMarked(line: SheetLine, one: SheetCase): boolean {
+  return !line.computed && !line.words && !one.body.isBase && line.own(one.body) !== ''
+}
+
 function messageFor(one: SheetCase, field: string): string | undefined {
   return one.problems.find((problem) => problem.field.split('.')[0] === field)?.message
 }
@@ -183,10 +194,9 @@ function LineCell({
   const own = line.own(one.body)
   const faint = line.inherited(one.body)
   if (line.computed) return <span className="block px-2.5 py-1 whitespace-nowrap">{own || '–'}</span>
-  const marked = !one.body.isBase && own !== ''
   if (!editable || (one.body.isBase && line.baseFrom)) {
     return (
-      <span className={`block px-2.5 py-1 whitespace-nowrap ${marked ? changed : ''}`}>
+      <span className="block px-2.5 py-1 whitespace-nowrap">
         {own || (one.body.isBase ? faint : <Inherited text={faint} />) || '–'}
       </span>
     )
@@ -195,26 +205,24 @@ function LineCell({
   const label = `${line.label}, ${one.body.name}`
   if (line.choices) {
     return (
-      <span className={`block ${marked ? changed : ''}`}>
-        <select
-          aria-label={label}
-          aria-invalid={problem ? true : undefined}
-          data-case={one.id}
-          className="w-full cursor-pointer bg-transparent px-2 py-1 text-right"
-          value={own}
-          onChange={(event) => {
-            const read = line.read(one.body, event.target.value)
-            if (read.ok) onSet(read.set)
-          }}
-        >
-          <option value="">{faint ? `as base: ${faint}` : 'choose'}</option>
-          {line.choices.map((choice) => (
-            <option key={choice} value={choice}>
-              {choice}
-            </option>
-          ))}
-        </select>
-      </span>
+      <select
+        aria-label={label}
+        aria-invalid={problem ? true : undefined}
+        data-case={one.id}
+        className={`w-full cursor-pointer bg-transparent px-2 py-1 text-right ${own ? '' : 'text-flint-2'}`}
+        value={own}
+        onChange={(event) => {
+          const read = line.read(one.body, event.target.value)
+          if (read.ok) onSet(read.set)
+        }}
+      >
+        {(!one.body.isBase || own === '') && <option value="">{faint || 'choose'}</option>}
+        {line.choices.map((choice) => (
+          <option key={choice} value={choice}>
+            {choice}
+          </option>
+        ))}
+      </select>
     )
   }
   return (
@@ -223,7 +231,6 @@ function LineCell({
       column={one.id}
       value={own}
       faint={faint}
-      marked={marked}
       problem={problem}
       onMove={onMove}
       onCommit={(text) => line.read(one.body, text)}
@@ -231,8 +238,6 @@ function LineCell({
     />
   )
 }
-
-const changed = 'border-l-[3px] border-bourne bg-bourne-2/60 font-semibold'
 
 function Inherited({ text }: { text: string }) {
   return text ? <span className="text-flint-2">{text}</span> : null
@@ -244,7 +249,6 @@ function Cell({
   column,
   value,
   faint,
-  marked,
   strong = false,
   problem,
   onMove,
@@ -255,7 +259,6 @@ function Cell({
   column: string
   value: string
   faint: string
-  marked: boolean
   strong?: boolean
   problem?: string
   onMove: (from: HTMLElement, event: KeyboardEvent) => void
@@ -273,25 +276,22 @@ function Cell({
     setRefused(null)
   }, [value])
 
-  function commit() {
-    if (typed === null || typed === value) {
-      setTyped(null)
-      setRefused(null)
-      return
-    }
-    const read = onCommit(typed)
-    if (!read.ok) {
+  /** False when the text stays in the cell because it could not be read. */
+  function commit(): boolean {
+    const read = typed === null || typed === value ? null : onCommit(typed)
+    if (read && !read.ok) {
       setRefused(read.message)
-      return
+      return false
     }
     setTyped(null)
     setRefused(null)
-    onSet(read.set)
+    if (read) onSet(read.set)
+    return true
   }
 
   const message = refused ?? problem
   return (
-    <span className={`relative block ${marked ? changed : ''}`}>
+    <span className="block">
       <input
         aria-label={label}
         aria-invalid={message ? true : undefined}
@@ -307,8 +307,7 @@ function Cell({
           if (event.key === 'Escape') {
             setTyped(null)
             setRefused(null)
-          } else {
-            if (event.key === 'Enter') commit()
+          } else if (event.key !== 'Enter' || commit()) {
             onMove(event.currentTarget, event)
           }
         }}
@@ -316,7 +315,7 @@ function Cell({
       {message && (
         <span
           id={messageId}
-          className="block px-2 pb-1 text-right text-[0.82rem] font-semibold whitespace-normal text-madder"
+          className="block w-0 min-w-full px-2 pb-1 text-right text-[0.82rem] leading-tight font-semibold whitespace-normal text-madder"
         >
           {message}
         </span>

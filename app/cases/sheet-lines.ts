@@ -36,6 +36,8 @@ export interface SheetLine {
   choices?: readonly string[]
   /** Computed from the lines above; never typed. */
   computed?: boolean
+  /** Free text, which inherits nothing. */
+  words?: boolean
   /** In the base case the cell shows the row of section 2 or 3, where it is edited. */
   baseFrom?: 'ground' | 'water'
   /** What the case itself says, as it is edited; '' where it says nothing. */
@@ -63,6 +65,16 @@ function settingLines(units: ProjectUnits, base: Case | undefined): SheetLine[] 
   const extentInForce = (body: Case) => body.extent ?? from(body)?.extent ?? null
   const sizeInForce = (body: Case) => body.cellSize ?? from(body)?.cellSize ?? null
   return [
+    {
+      key: 'note',
+      group,
+      label: 'What it is for',
+      unit: '',
+      words: true,
+      own: (body) => body.note,
+      inherited: () => '',
+      read: (_body, text) => ({ ok: true, set: { note: text.trim() } }),
+    },
     {
       key: 'flow',
       group,
@@ -254,9 +266,9 @@ function shown(quantity: Quantity, unit: UnitName): string {
   return quantity.unit === unit ? plain(quantity.value) : formatNumber(convert(quantity, unit))
 }
 
-/** Every digit that was entered, with a true minus sign. */
+/** Every digit that was entered, with a true minus sign before a negative number. */
 function plain(value: number | undefined): string {
-  return value === undefined ? '' : String(value).replace('-', '−')
+  return value === undefined ? '' : String(value).replace(/^-/, '−')
 }
 
 /** A name that no case has yet. */

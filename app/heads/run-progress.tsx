@@ -126,11 +126,7 @@ export function RunProgress({
             >
               <div className="h-full bg-bourne transition-[width]" style={{ width: `${percent}%` }} />
             </div>
-            <p className="mt-1 text-[0.9rem] text-flint-2">
-              {formatNumber(percent, 0)} % · {formatNumber(status.progress?.sweeps ?? 0, 0)} sweeps · residual{' '}
-              {formatNumber(status.progress?.residual)}
-              {status.progress?.phase && ` · ${status.progress.phase}`}
-            </p>
+            <p className="mt-1 text-[0.9rem] text-flint-2">{progressWords(status, percent)}</p>
           </>
         )}
         {status.error && <p className="mt-1 text-[0.93rem] text-madder">{status.error}</p>}
@@ -159,6 +155,17 @@ export function RunProgress({
       <ResidualChart residuals={residuals} tolerance={tolerance} />
     </section>
   )
+}
+
+function progressWords({ state, progress }: RunStatus, percent: number): string {
+  if (state === 'queued') return 'It starts as soon as a thread is free; go on working meanwhile.'
+  if (!progress?.sweeps) return 'setting up the equations'
+  const parts = [
+    `${formatNumber(percent, 0)} %`,
+    `${formatNumber(progress.sweeps, 0)} sweeps`,
+    `residual ${formatNumber(progress.residual)}`,
+  ]
+  return [...parts, progress.phase ?? ''].filter(Boolean).join(' · ')
 }
 
 function stateWords(run: RunStatus): string {

@@ -48,7 +48,12 @@ async function save(changes: RowChange[]) {
   if (!answer.ok) throw new Error(JSON.stringify(answer))
   return answer.rows
 }
-const add = (kind: string, body: object, id = randomUUID()): RowChange => ({ op: 'add', kind, id, body })
+const add = (kind: string, body: object, id: string = randomUUID()): RowChange => ({
+  op: 'add',
+  kind,
+  id,
+  body,
+})
 const m = (value: number) => ({ value, unit: 'm' })
 const extent = { xMin: 0, xMax: 1000, yMin: 0, yMax: 600 }
 
@@ -318,5 +323,18 @@ describe('A long run', () => {
       await jobEnded(jobId)
     }
     expect(await runStatus(fresh.database, project.id, first.runId)).toMatchObject({ state: 'interrupted' })
+  })
+})
+
+describe('A run whose process went away', () => {
+  beforeEach(() => strip(200))
+
+  it('can be cancelled, though no thread here knows it', async () => {
+    const run = await computed()
+    await fresh.database('runs').where({ id: run.id }).update({ state: 'running' })
+    await fresh.database('jobs').where({ id: run.jobId }).update({ state: 'running' })
+    expect(await cancelRun(fresh.database, project.id, run.id)).toBe(true)
+    expect(await runStatus(fresh.database, project.id, run.id)).toMatchObject({ state: 'cancelled' })
+    expect(await findJob(run.jobId ?? 0)).toMatchObject({ state: 'cancelled' })
   })
 })

@@ -400,7 +400,12 @@ export async function cancelRun(db: Database, projectId: number, runId: number):
     .whereIn('state', ['queued', 'running'])
     .first<{ job_id: number } | undefined>('job_id')
   if (!run) return false
-  await cancelJob(run.job_id)
+  if (!(await cancelJob(run.job_id))) {
+    await db('runs')
+      .where({ project_id: projectId, id: runId })
+      .whereIn('state', ['queued', 'running'])
+      .update({ state: 'cancelled', ended_at: new Date() })
+  }
   return true
 }
 

@@ -230,18 +230,25 @@ function stop(worker: Worker, cancel: Int32Array): void {
   worker.on('exit', () => clearTimeout(end))
 }
 
-/** Asks a job to stop: at once when it is still waiting, else as soon as its thread looks. */
-export async function cancelJob(jobId: number): Promise<void> {
+/**
+ * Asks a job to stop: at once when it is still waiting, else as soon as its thread looks. False when no thread of this
+ * process has it (it went away with an earlier one): then its record is closed, and nothing will call `onEnd`.
+ */
+export async function cancelJob(jobId: number): Promise<boolean> {
   const active = running.get(jobId)
   if (active) {
     stop(active.worker, active.cancel)
-    return
+    return true
   }
+  if (ending.has(jobId)) return true
   const index = waiting.findIndex((entry) => entry.jobId === jobId)
   const [entry] = index >= 0 ? waiting.splice(index, 1) : []
-  if (!entry) return
-  await entry.request.onEnd?.('cancelled', null, jobId, null)
-  await database()('jobs').where({ id: jobId }).update({ state: 'cancelled', ended_at: new Date() })
+  await entry?.request.onEnd?.('cancelled', null, jobId, null)
+  await database()('jobs')
+    .where({ id: jobId })
+    .whereIn('state', ['queued', 'running'])
+    .update({ state: 'cancelled', ended_at: new Date() })
+  return entry !== undefined
 }
 
 /** Resolves when the job has ended; for tests and for answers that wait a while. */

@@ -149,7 +149,7 @@ export default function Cases({ loaderData }: Route.ComponentProps) {
     ...(mayRun || mayEdit
       ? [
           {
-            label: '',
+            label: 'Actions',
             cell: (one: SheetCase) => (
               <span className="screen-only flex flex-wrap justify-end gap-1.5">
                 {mayEdit && (
@@ -345,7 +345,9 @@ function FindingList({ projectId, findings }: { projectId: number; findings: Fin
     <ul className="list-none">
       {findings.map((finding) => (
         <li key={`${finding.section} ${finding.rowId} ${finding.message}`}>
-          <Link to={`/projects/${projectId}/${finding.section}`}>{sectionNumber[finding.section]}</Link>{' '}
+          <Link className="underline" to={`/projects/${projectId}/${finding.section}`}>
+            {sectionNumber[finding.section]}
+          </Link>{' '}
           {finding.row && <b className="font-semibold">{finding.row}: </b>}
           {finding.message}
         </li>
@@ -521,8 +523,7 @@ function conflictTitle(theirs: { by: string; body: Record<string, unknown> } | n
 function Differences({ lines, mine, theirs }: { lines: SheetLine[]; mine: Case; theirs: Case }) {
   const differing = [
     { key: 'name', label: 'Name', unit: '', own: (body: Case) => body.name },
-    { key: 'note', label: 'Note', unit: '', own: (body: Case) => body.note },
-    ...lines,
+    ...lines.filter((line) => !line.computed),
   ].filter((line) => line.own(mine) !== line.own(theirs))
   return (
     <ul>
