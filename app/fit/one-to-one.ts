@@ -39,7 +39,7 @@ export function oneToOnePlot(
     min: low,
     max: high,
     interval: step,
-    axisLine: { show: true, lineStyle: { color: colours.quiet } },
+    axisLine: { show: true, onZero: false, lineStyle: { color: colours.quiet } },
     axisLabel: {
       color: colours.quiet,
       fontSize,

@@ -97,6 +97,8 @@ export function packageDocument(request: DrawRequest): TDocumentDefinitions {
         { text: `${reference} · page ${page} of ${pages}`, alignment: 'right', color: grey, fontSize: 8.5 },
       ],
     }),
+    // A heading never stands alone at the foot of a page.
+    pageBreakBefore: (node, nodes) => node.headlineLevel === 2 && nodes.getFollowingNodesOnPage().length < 3,
     styles: {
       section: { fontSize: 17, bold: true, margin: [0, 0, 0, 8] },
       sub: { fontSize: 11.5, bold: true, margin: [0, 12, 0, 4] },
@@ -129,7 +131,7 @@ function sectionTitle(number: number, title: string): Content {
     pageBreak: 'before',
     tocItem: true,
     tocStyle: { bold: true },
-    tocMargin: [0, 5, 0, 0],
+    tocMargin: [0, 2, 0, 0],
     outline: true,
     id: `section-${number}`,
   } as Content
@@ -140,7 +142,7 @@ function sub(no: string, title: string): Content {
     text: `${no}   ${title}`,
     style: 'sub',
     tocItem: true,
-    tocMargin: [14, 0, 0, 0],
+    tocMargin: [14, -1.5, 0, 0],
     headlineLevel: 2,
     outline: true,
     outlineParentId: `section-${no.split('.')[0]}`,
@@ -166,6 +168,40 @@ interface TableColumn<Row> {
   width?: string | number
   words?: boolean
   cell: (row: Row) => string
+}
+
+/**
+ * A table whose rows carry sources. Where rows share sources, each gets the number of its source, listed once below
+ * the table; where nearly every row has its own, the source stands in the row.
+ */
+function sourcedTable<Row extends { source: string }>(
+  no: string,
+  caption: string,
+  columns: TableColumn<Row>[],
+  rows: readonly Row[],
+): Content {
+  const sources = [...new Set(rows.map((row) => row.source).filter(Boolean))]
+  if (sources.length > 3 && sources.length > rows.length / 2) {
+    const own = { head: 'Source', words: true, width: '*', cell: (row: Row) => row.source || 'not stated' }
+    return table(no, caption, [...columns, own], rows)
+  }
+  const mark = (row: Row) => (row.source ? `[${sources.indexOf(row.source) + 1}]` : 'not stated')
+  return {
+    stack: [
+      table(no, caption, [...columns, { head: 'Source', words: true, width: '*', cell: mark }], rows),
+      ...sources.map(
+        (source, index): Content => ({
+          columns: [
+            { text: `[${index + 1}]`, width: 20 },
+            { text: source, width: '*' },
+          ],
+          fontSize: 8.5,
+          color: grey,
+          margin: [2, 0, 0, index === sources.length - 1 ? 8 : 1],
+        }),
+      ),
+    ],
+  }
 }
 
 function table<Row>(no: string, caption: string, columns: TableColumn<Row>[], rows: readonly Row[]): Content {
@@ -211,6 +247,11 @@ function facts(rows: [string, string][]): Content {
     layout: { ...tableLayout, fillColor: () => null, hLineWidth: () => 0.4, hLineColor: () => rule },
     margin: [0, 2, 0, 8],
   }
+}
+
+/** A heading and the figure below it, never parted by a page. */
+function headed(heading: Content, body: Content): Content {
+  return { stack: [heading, body], unbreakable: true }
 }
 
 function figure(no: string, { svg, ratio, caption }: DrawnFigure, lead: string, share = 1): Content {
@@ -343,7 +384,11 @@ function coverPage(content: GatheredContent, cover: GatheredCover): Content[] {
 
 function contentsPage(): Content {
   return {
-    toc: { title: { text: 'Contents', style: 'section', pageBreak: 'before' }, numberStyle: { color: grey } },
+    toc: {
+      title: { text: 'Contents', style: 'section', pageBreak: 'before' },
+      textStyle: { fontSize: 9 },
+      numberStyle: { color: grey, fontSize: 9 },
+    },
   }
 }
 
@@ -419,7 +464,7 @@ function groundSection(content: GatheredContent): Content[] {
       text: 'Hydraulic conductivity K (permeability k) along x and y in plan, with the range that the source supports.',
       margin: [0, 0, 0, 2],
     },
-    table(
+    sourcedTable(
       '2.1',
       'Materials',
       [
@@ -433,12 +478,11 @@ function groundSection(content: GatheredContent): Content[] {
         },
         { head: 'Ss', unit: ss.unit, cell: (m) => ss.show(m.specificStorage) },
         { head: 'Sy', cell: (m) => formatNumber(m.specificYield) },
-        { head: 'Source', words: true, width: '*', cell: (m) => m.source || 'not stated' },
       ],
       content.materials,
     ),
     sub('2.2', 'Zones'),
-    table(
+    sourcedTable(
       '2.2',
       'Where each material lies; a later row replaces earlier ones',
       [
@@ -451,19 +495,17 @@ function groundSection(content: GatheredContent): Content[] {
         },
         { head: 'Base', unit: level.unit, cell: (z) => level.show(z.base, 2) },
         { head: 'Top', unit: level.unit, cell: (z) => level.show(z.top, 2) },
-        { head: 'Source', words: true, width: '*', cell: (z) => z.source || 'not stated' },
       ],
       content.zones,
     ),
     sub('2.3', 'Named points'),
-    table(
+    sourcedTable(
       '2.3',
       'Points where heads are wanted',
       [
         { head: 'Point', cell: (p) => p.name },
         { head: 'x', unit: level.unit, cell: (p) => formatNumber(p.x, 1) },
         { head: 'y', unit: level.unit, cell: (p) => formatNumber(p.y, 1) },
-        { head: 'Source', words: true, width: '*', cell: (p) => p.source || 'not stated' },
       ],
       content.points,
     ),
@@ -483,7 +525,7 @@ function waterSection(content: GatheredContent): Content[] {
   return [
     sectionTitle(3, 'Water'),
     sub('3.1', 'Wells'),
-    table(
+    sourcedTable(
       '3.1',
       `Wells as entered: abstraction ${formatNumber(total('abstraction'))} ${rate.unit}, recharge ${formatNumber(total('recharge'))} ${rate.unit} in total`,
       [
@@ -494,12 +536,11 @@ function waterSection(content: GatheredContent): Content[] {
         { head: 'Rate', unit: rate.unit, cell: (w) => rate.show(w.rate) },
         { head: 'Radius', unit: length, cell: (w) => level.show(w.radius, 2) },
         { head: 'Lowest', unit: length, cell: (w) => level.show(w.lowestLevel, 2) },
-        { head: 'Source', words: true, width: '*', cell: (w) => w.source || 'not stated' },
       ],
       content.wells,
     ),
     sub('3.2', 'Recharge zones'),
-    table(
+    sourcedTable(
       '3.2',
       'Recharge, the source term; zones add up where they overlap',
       [
@@ -511,12 +552,11 @@ function waterSection(content: GatheredContent): Content[] {
           cell: (r) =>
             r.polygon ? formatNumber(Math.abs(signedArea(r.polygon as Vertex[])), 0) : 'everywhere',
         },
-        { head: 'Source', words: true, width: '*', cell: (r) => r.source || 'not stated' },
       ],
       content.rechargeZones,
     ),
     sub('3.3', 'Boundaries'),
-    table(
+    sourcedTable(
       '3.3',
       'Boundaries; every edge without one is a no-flow edge',
       [
@@ -534,12 +574,11 @@ function waterSection(content: GatheredContent): Content[] {
           cell: (b) => (b.flux ? `${flux.show(b.flux)} ${b.direction}` : '–'),
         },
         { head: 'Conductance', unit: recharge.unit, cell: (b) => recharge.show(b.conductance) },
-        { head: 'Source', words: true, width: '*', cell: (b) => b.source || 'not stated' },
       ],
       content.boundaries,
     ),
     sub('3.4', 'Cut-off walls'),
-    table(
+    sourcedTable(
       '3.4',
       'Walls, over the whole saturated thickness',
       [
@@ -551,7 +590,6 @@ function waterSection(content: GatheredContent): Content[] {
           unit: recharge.unit,
           cell: (w) => (w.k.value === 0 ? 'impermeable' : recharge.show(w.k)),
         },
-        { head: 'Source', words: true, width: '*', cell: (w) => w.source || 'not stated' },
       ],
       content.walls,
     ),
@@ -657,19 +695,23 @@ function headsSection({ content, heads, againstHeads }: DrawRequest): Content[] 
   return [
     sectionTitle(5, 'Heads'),
     ...notConverged,
-    sub('5.1', 'Head contours'),
-    figure(
-      '5.1',
-      headsFigure(content, field),
-      `Heads, ${project.units.length} ${project.verticalDatum}; case ${run.caseName}, run ${run.number}, ${localDay(content, run.endedAt)}. `,
+    headed(
+      sub('5.1', 'Head contours'),
+      figure(
+        '5.1',
+        headsFigure(content, field),
+        `Heads, ${project.units.length} ${project.verticalDatum}; case ${run.caseName}, run ${run.number}, ${localDay(content, run.endedAt)}. `,
+      ),
     ),
     ...(drawdown && against
       ? [
-          sub('5.2', 'Drawdown'),
-          figure(
-            '5.2',
-            drawdown,
-            `Drawdown in ${project.units.length} of run ${run.number} against run ${against.number} (${against.caseName}). `,
+          headed(
+            sub('5.2', 'Drawdown'),
+            figure(
+              '5.2',
+              drawdown,
+              `Drawdown in ${project.units.length} of run ${run.number} against run ${against.number} (${against.caseName}). `,
+            ),
           ),
         ]
       : []),
