@@ -46,8 +46,8 @@ const rank: Record<DrawnFeature['kind'], number> = {
 }
 
 /**
- * The order of drawing is also the order of precedence, from the top, in which labels find room: labels of what is
- * chosen (300), symbols (260), labels (200), lines and areas below. So a label gives way to a symbol, never the reverse.
+ * The order of drawing is also the order of precedence, from the top, in which labels find room: the label of a
+ * chosen symbol (300), symbols (260), labels (200), lines and areas below. So a label gives way to a symbol, never the reverse.
  */
 
 /** The styles of one drawn row: ground lines, symbol, label, and the glow of what is selected or pointed at. */
@@ -380,10 +380,11 @@ function labelStyle(drawn: DrawnFeature, look: Look, chosen: boolean): Style {
     font: `${chosen ? 700 : 600} ${fontSize}px "Source Sans 3", system-ui, sans-serif`,
     fill: new Fill({ color: paint(drawn.muted ? palette['flint-2'] : palette.flint) }),
     stroke: new Stroke({ color: paint(palette.chalk, 0.92), width: 3.6 }),
-    declutterMode: chosen ? ('obstacle' as const) : ('declutter' as const),
+    declutterMode: 'declutter' as const,
   }
-  const zIndex = (chosen ? 300 : 200) + rank[drawn.kind]
   const { geometry } = drawn
+  // A chosen symbol always shows its label; that of a line or an area still gives way to symbols.
+  const zIndex = (chosen ? (geometry.type === 'point' ? 300 : 220) : 200) + rank[drawn.kind]
   if (geometry.type === 'point') {
     const side = look.side(drawn.id)
     const { align, x, y } = labelOffset(side ?? 'right', symbolReach * look.symbolScale, fontSize)
