@@ -95,10 +95,11 @@ export function RunProgress({
   mayRun: boolean
 }) {
   const { status, residuals, silent } = useRun(projectId, run)
-  const fetcher = useFetcher<{ ok: boolean; message?: string }>()
+  const fetcher = useFetcher<{ ok: boolean; message?: string; cancelled?: boolean }>()
   const address = `/projects/${projectId}/runs/${status.id}`
   const open = underWay(status.state)
-  const busy = fetcher.state !== 'idle'
+  const stopping = open && fetcher.data?.cancelled === true
+  const busy = stopping || fetcher.state !== 'idle'
   const percent = open ? Math.max(0, Math.min(100, status.progress?.percent ?? 0)) : 100
   const act = (intent: string) => fetcher.submit({ intent }, { method: 'post', action: address })
   return (
@@ -142,7 +143,7 @@ export function RunProgress({
           <p className="screen-only mt-2">
             {open ? (
               <Button onClick={() => act('cancel')} disabled={busy}>
-                Cancel run {status.number}
+                {stopping ? 'Stopping…' : `Cancel run ${status.number}`}
               </Button>
             ) : (
               <Button onClick={() => act('again')} disabled={busy}>

@@ -361,7 +361,9 @@ function LastRun({ projectId, run }: { projectId: number; run: RunLine | undefin
   return (
     <>
       {run.state === 'done' ? (
-        <Link to={`/projects/${projectId}/heads?run=${run.id}`}>Run {run.number}</Link>
+        <Link className="underline" to={`/projects/${projectId}/heads?run=${run.id}`}>
+          Run {run.number}
+        </Link>
       ) : (
         `Run ${run.number}`
       )}{' '}
@@ -488,7 +490,9 @@ function carriedOf(runs: RunLine[], cases: readonly SheetCase[], project: { id: 
             note: (
               <>
                 {last.converged ? 'converged' : 'did not converge'}, {last.caseName}{' '}
-                <Link to={`/projects/${project.id}/heads?run=${last.id}`}>→ 5</Link>
+                <Link className="underline" to={`/projects/${project.id}/heads?run=${last.id}`}>
+                  → 5
+                </Link>
               </>
             ),
             state: last.converged ? ('good' as const) : ('alarm' as const),
