@@ -4,7 +4,6 @@ import {
   extentAbout,
   geometryProblem,
   hatchStrokes,
-  labelStretch,
   movedVertices,
   roundedVertices,
   roundLength,
@@ -84,16 +83,6 @@ describe('the furniture of a drawing', () => {
     expect(roundLength(137)).toBe(100)
     expect(roundLength(50)).toBe(50)
     expect(roundLength(0.43)).toBeCloseTo(0.2, 12)
-  })
-
-  it('writes along the longest stretch of a line, never upside down', () => {
-    const stretch = labelStretch([
-      [0, 0],
-      [0, 5],
-      [-20, 5],
-    ])
-    expect(stretch.at).toEqual([-10, 5])
-    expect(Math.abs(stretch.angle)).toBeLessThan(1e-9)
   })
 
   it('hatches a wall evenly round its corners, and never without end', () => {

@@ -137,32 +137,6 @@ export function roundLength(longest: number): number {
 }
 
 /**
- * Middle of the stretch of a line that a label is written along, and its direction in radians, never upside down: the
- * longest stretch, or among those nearly as long the one nearest to half way.
- */
-export function labelStretch(vertices: readonly Vertex[]): { at: Vertex; angle: number } {
-  const stretches = vertices.slice(1).map((b, i) => {
-    const a = vertices[i] as Vertex
-    return {
-      a,
-      b,
-      length: Math.hypot(b[0] - a[0], b[1] - a[1]),
-      fromMiddle: Math.abs(i - (vertices.length - 2) / 2),
-    }
-  })
-  const longest = Math.max(0, ...stretches.map(({ length }) => length))
-  const best = stretches
-    .filter(({ length }) => length >= 0.75 * longest)
-    .sort((one, other) => one.fromMiddle - other.fromMiddle)[0]
-  if (!best) return { at: vertices[0] ?? [0, 0], angle: 0 }
-  const { a, b } = best
-  let angle = Math.atan2(b[1] - a[1], b[0] - a[0])
-  if (angle > Math.PI / 2 + 1e-9) angle -= Math.PI
-  if (angle < -Math.PI / 2 + 1e-9) angle += Math.PI
-  return { at: [(a[0] + b[0]) / 2, (a[1] + b[1]) / 2], angle }
-}
-
-/**
  * Short strokes across a line at 45 degrees: the hatch of a cut-off wall. `spacing` and `reach` are
  * in the coordinates' unit; at most `most` strokes, spread wider where the line is longer.
  */

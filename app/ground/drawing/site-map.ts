@@ -43,8 +43,8 @@ import {
   shapeOf,
   verticesOf,
 } from './drawn-feature'
-import { type LabelSide, labelSides, symbolScale } from './label-sides'
 import { readPalette, watchTheme } from './palette'
+import { type LabelledLine, type PlacedLabels, placeLabels, symbolScale } from './place-labels'
 import { planImageLayer, type ShownPlanImage } from './plan-image-layer'
 import { drawnOf, handle, type Look, measuredStyle, sketchStyles, stylesFor, symbolReach } from './symbols'
 
@@ -130,7 +130,7 @@ export function createSiteMap(target: HTMLElement, events: SiteMapEvents): SiteM
   let dragging = false
   let hovered: string | null = null
   let waitingFit: Extent | null = null
-  let sides: { resolution: number; sides: Map<string, LabelSide | null> } | null = null
+  let labels: (PlacedLabels & { resolution: number }) | null = null
   let imageLayer: ReturnType<typeof planImageLayer> | null = null
   let imageKey = ''
 
@@ -141,32 +141,33 @@ export function createSiteMap(target: HTMLElement, events: SiteMapEvents): SiteM
     handles: false,
     fontSize: 13,
     symbolScale: 1,
-    side: (id) => sides?.sides.get(id) ?? null,
+    side: (id) => labels?.sides.get(id) ?? null,
+    along: (id) => labels?.lines.get(id) ?? null,
   }
 
-  function placeLabels(resolution: number): Map<string, LabelSide | null> {
+  function labelsAt(resolution: number): PlacedLabels {
     if (width) width.font = `700 ${look.fontSize}px "Source Sans 3", system-ui, sans-serif`
-    const symbols = source.getFeatures().flatMap((feature) => {
-      const { id, label, geometry } = drawnOf(feature)
-      if (geometry.type !== 'point') return []
-      return [
-        {
-          id,
-          x: geometry.at[0] / resolution,
-          y: -geometry.at[1] / resolution,
-          width: width?.measureText(label).width ?? label.length * 7,
-        },
-      ]
+    const wide = (label: string) => width?.measureText(label).width ?? label.length * 7
+    const drawn = source.getFeatures().map(drawnOf)
+    const symbols = drawn.flatMap(({ id, label, geometry }) =>
+      geometry.type === 'point'
+        ? [{ id, x: geometry.at[0] / resolution, y: -geometry.at[1] / resolution, width: wide(label) }]
+        : [],
+    )
+    const lines = drawn.flatMap(({ id, label, geometry }): LabelledLine[] => {
+      if (geometry.type !== 'line') return []
+      const vertices = geometry.vertices.map(([x, y]): Vertex => [x / resolution, -y / resolution])
+      return [{ id, vertices, width: wide(label) }]
     })
     look.symbolScale = symbolScale(symbols, 30)
-    return labelSides(symbols, symbolReach * look.symbolScale, look.fontSize)
+    return placeLabels(symbols, lines, symbolReach * look.symbolScale, look.fontSize)
   }
 
   const layer = new VectorLayer({
     source,
     declutter: true,
     style: (feature, resolution) => {
-      if (sides?.resolution !== resolution) sides = { resolution, sides: placeLabels(resolution) }
+      if (labels?.resolution !== resolution) labels = { resolution, ...labelsAt(resolution) }
       return stylesFor(feature as Feature, resolution, look)
     },
   })
@@ -277,7 +278,7 @@ export function createSiteMap(target: HTMLElement, events: SiteMapEvents): SiteM
   map.on('change:size', () => {
     const [across = 0] = map.getSize() ?? []
     look.fontSize = across < 480 ? 14 : 13
-    sides = null
+    labels = null
     if (waitingFit && across > 0) show(waitingFit)
   })
 
@@ -427,7 +428,7 @@ export function createSiteMap(target: HTMLElement, events: SiteMapEvents): SiteM
         source.addFeature(feature)
       }
     }
-    sides = null
+    labels = null
     handOver()
     layer.changed()
   }
@@ -471,7 +472,7 @@ export function createSiteMap(target: HTMLElement, events: SiteMapEvents): SiteM
   })
   // Labels measured before the page's face has loaded would be cut.
   void document.fonts.ready.then(() => {
-    sides = null
+    labels = null
     layer.changed()
   })
 

@@ -10,9 +10,10 @@ import RegularShape from 'ol/style/RegularShape.js'
 import Stroke from 'ol/style/Stroke.js'
 import Style from 'ol/style/Style.js'
 import Text from 'ol/style/Text.js'
-import { type DrawnFeature, hatchStrokes, labelStretch, verticesOf } from './drawn-feature'
-import { type LabelSide, labelOffset } from './label-sides'
+import type { Vertex } from '~/book/field'
+import { type DrawnFeature, hatchStrokes, verticesOf } from './drawn-feature'
 import { type Paint, type Palette, paint } from './palette'
+import { type LabelSide, type LinePlace, labelOffset } from './place-labels'
 
 export interface Look {
   palette: Palette
@@ -25,6 +26,8 @@ export interface Look {
   symbolScale: number
   /** Where a point's label has room of its own, or null. */
   side: (id: string) => LabelSide | null
+  /** The room along a line for its label, in pixels at this scale (y downwards), or null. */
+  along: (id: string) => LinePlace | null
 }
 
 /** Half the size of a point symbol in pixels, at its full scale. */
@@ -60,7 +63,8 @@ export function stylesFor(feature: Feature, resolution: number, look: Look): Sty
   const styles: Style[] = []
   if (selected || hovered) styles.push(...glow(drawn, look.palette, selected, zIndex - 1))
   styles.push(...shapeStyles(drawn, resolution, look, zIndex))
-  styles.push(labelStyle(drawn, look, selected || hovered))
+  const label = labelStyle(drawn, resolution, look, selected || hovered)
+  if (label) styles.push(label)
   if (selected && look.handles && drawn.geometry.type !== 'point') {
     styles.push(
       new Style({
@@ -373,7 +377,7 @@ function hatch(colour: string): CanvasPattern | string {
   return context.createPattern(tile, 'repeat') ?? colour
 }
 
-function labelStyle(drawn: DrawnFeature, look: Look, chosen: boolean): Style {
+function labelStyle(drawn: DrawnFeature, resolution: number, look: Look, chosen: boolean): Style | null {
   const { palette, fontSize } = look
   const base = {
     text: drawn.label,
@@ -399,30 +403,35 @@ function labelStyle(drawn: DrawnFeature, look: Look, chosen: boolean): Style {
       zIndex,
     })
   }
-  if (geometry.type === 'line' || drawn.kind === 'extent') {
-    const along = geometry.type === 'line' ? geometry.vertices : topEdge(geometry.vertices)
-    const { at, angle } = labelStretch(along)
+  if (geometry.type === 'line') {
+    const place = look.along(drawn.id)
+    if (!place) return null
     return new Style({
-      geometry: new Point(at),
-      text: new Text({ ...base, rotation: -angle, offsetY: -(fontSize / 2 + 6) }),
+      geometry: new Point([place.x * resolution, -place.y * resolution]),
+      text: new Text({ ...base, rotation: place.angle, declutterMode: 'obstacle' }),
+      zIndex,
+    })
+  }
+  if (drawn.kind === 'extent') {
+    return new Style({
+      geometry: new Point(topEdge(geometry.vertices)),
+      text: new Text({ ...base, offsetY: -(fontSize / 2 + 6) }),
       zIndex,
     })
   }
   return new Style({ text: new Text({ ...base, overflow: true }), zIndex })
 }
 
-/** The uppermost stretch of an outline, on which an extent carries its name. */
-function topEdge(vertices: readonly [number, number][]): [number, number][] {
-  let best: [number, number][] = vertices.slice(0, 2)
-  for (let i = 0; i < vertices.length; i++) {
-    const edge = [vertices[i], vertices[(i + 1) % vertices.length]] as [number, number][]
-    const height = (line: [number, number][]) => line.reduce((sum, [, y]) => sum + y, 0)
-    if (height(edge) > height(best)) best = edge
-  }
-  return best
+/** Middle of the uppermost edge of an outline, on which an extent carries its name. */
+function topEdge(vertices: readonly Vertex[]): Vertex {
+  const edges = vertices.map((a, i): Vertex => {
+    const b = vertices[(i + 1) % vertices.length] as Vertex
+    return [(a[0] + b[0]) / 2, (a[1] + b[1]) / 2]
+  })
+  return edges.reduce((top, at) => (at[1] > top[1] ? at : top))
 }
 
-/** Dashed outline of nothing yet: the line along which something is measured. */
+/** The line along which something is measured. */
 export function measuredStyle(palette: Palette): Style[] {
   return [
     new Style({ stroke: new Stroke({ color: paint(palette.chalk), width: 4.5 }) }),
