@@ -12,7 +12,7 @@ export type PlanImageAnswer =
  * The whole of a request's body. Throws TooLarge past `limit` bytes, without reading on; whatever the stream throws
  * when the sender goes away.
  */
-export async function readBody(body: ReadableStream<Uint8Array>, limit: number): Promise<Buffer> {
+async function readBody(body: ReadableStream<Uint8Array>, limit: number): Promise<Buffer> {
   const chunks: Uint8Array[] = []
   let bytes = 0
   for await (const chunk of body) {

@@ -49,11 +49,6 @@ export function wallFeatures(walls: readonly Row<Wall>[]): DrawnFeature[] {
   }))
 }
 
-/** A wall along the line that was drawn. */
-export function withWallGeometry(body: Wall, geometry: DrawnGeometry): Wall {
-  return geometry.type === 'line' ? { ...body, line: geometry.vertices } : body
-}
-
 /**
  * A boundary along the line that was drawn. Levels given one a vertex follow: a vertex that stayed or was dragged keeps
  * its level, one that was put in gets the level of the old line at the nearest place, rounded to a thousandth.

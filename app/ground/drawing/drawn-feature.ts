@@ -1,17 +1,15 @@
 import { polygon, polyline, type Vertex } from '~/book/field'
 
 /** What a drawing of the site can show. */
-export const drawnKinds = [
-  'well',
-  'recharge zone',
-  'boundary',
-  'wall',
-  'zone',
-  'point',
-  'instrument',
-  'extent',
-] as const
-export type DrawnKind = (typeof drawnKinds)[number]
+export type DrawnKind =
+  | 'well'
+  | 'recharge zone'
+  | 'boundary'
+  | 'wall'
+  | 'zone'
+  | 'point'
+  | 'instrument'
+  | 'extent'
 
 export type DrawnGeometry =
   | { type: 'point'; at: Vertex }

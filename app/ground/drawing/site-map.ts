@@ -414,22 +414,31 @@ export function createSiteMap(target: HTMLElement, events: SiteMapEvents): SiteM
 
   function setFeatures(features: readonly DrawnFeature[]) {
     const wanted = new Set(features.map((feature) => feature.id))
+    let changed = false
     for (const feature of source.getFeatures()) {
-      if (!wanted.has(drawnOf(feature).id)) source.removeFeature(feature)
+      if (wanted.has(drawnOf(feature).id)) continue
+      source.removeFeature(feature)
+      changed = true
     }
     for (const drawn of features) {
       const known = byId(drawn.id)
       if (known) {
-        known.set('drawn', drawn)
+        // A page may build its list anew at every move of the pointer: equal rows cost no drawing.
+        if (JSON.stringify(drawnOf(known)) !== JSON.stringify(drawn)) {
+          known.set('drawn', drawn)
+          changed = true
+        }
         if (!dragging && !sameGeometry(drawnGeometry(known.getGeometry()), drawn.geometry)) restore(known)
       } else {
         const feature = new Feature({ geometry: geometryFrom(drawn.geometry), drawn })
         feature.setId(drawn.id)
         source.addFeature(feature)
+        changed = true
       }
     }
-    labels = null
     handOver()
+    if (!changed) return
+    labels = null
     layer.changed()
   }
 
