@@ -419,7 +419,8 @@ function makeRoom(
   const taken = others.reduce((sum, other) => sum + other.width, 0)
   const ownTaken = own.reduce((sum, other) => sum + other.width, 0)
   if (ownTaken + entry.width > faceLength) entry.width = Math.max(0, faceLength - ownTaken)
-  const room = Math.max(0, faceLength - ownTaken - entry.width)
+  const left = faceLength - ownTaken - entry.width
+  const room = left > 1e-9 * faceLength ? left : 0
   if (taken <= room + 1e-9 * faceLength) return
   const boundaries = d.model.boundaries ?? []
   for (const other of others) {

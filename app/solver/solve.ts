@@ -150,6 +150,7 @@ function resultOf(model: Model, d: Discretised, outcome: SteadyOutcome, input: s
   const leakage = flows.byLeakage.map((tally, index) =>
     named((model.leakage ?? [])[index]?.name ?? '', tally),
   )
+  const balance = balanceOf(model, d, outcome, flows)
   return {
     format: 'lavant-result',
     version: 1,
@@ -173,9 +174,12 @@ function resultOf(model: Model, d: Discretised, outcome: SteadyOutcome, input: s
     boundaries,
     recharge,
     leakage,
-    balance: balanceOf(model, d, rates, flows),
+    balance,
     noFlowEdges: noFlowEdgesOf(d),
-    warnings: [...d.warnings, ...warningsOf(flow, outcome)],
+    warnings: [
+      ...d.warnings,
+      ...warningsOf(flow, outcome, Math.max(balance.inflow[0] as number, balance.outflow[0] as number)),
+    ],
     history: outcome.history,
     headError: outcome.headError,
   }
@@ -185,7 +189,7 @@ function named(name: string, { inflow, outflow }: Tally): NamedFlow {
   return { name, inflow: [inflow], outflow: [outflow] }
 }
 
-function balanceOf(model: Model, d: Discretised, rates: number[], flows: Flows): Balance {
+function balanceOf(model: Model, d: Discretised, outcome: SteadyOutcome, flows: Flows): Balance {
   const tallies = new Map<KindFlow['kind'], Tally>()
   function tallyOf(kind: KindFlow['kind']): Tally {
     const tally = tallies.get(kind) ?? { inflow: 0, outflow: 0 }
@@ -201,7 +205,7 @@ function balanceOf(model: Model, d: Discretised, rates: number[], flows: Flows):
     if (boundary.kind !== 'seepage face') add(boundary.kind, flows.byBoundary[index] as Tally)
   })
   for (const total of d.rechargeByEntry) addTo(tallyOf('recharge'), total)
-  for (const rate of rates) addTo(tallyOf('wells'), rate)
+  for (const rate of outcome.rates) addTo(tallyOf('wells'), rate)
   for (const tally of flows.byLeakage) add('leakage', tally)
   let inflow = 0
   let outflow = 0
@@ -212,16 +216,18 @@ function balanceOf(model: Model, d: Discretised, rates: number[], flows: Flows):
     kinds.push({ kind, inflow: [tally.inflow], outflow: [tally.outflow] })
   }
   const through = Math.max(inflow, outflow)
+  // Where next to nothing flows, what the tolerance lets pass is no share of it that means anything.
+  const measurable = through > outcome.unresolvedFlow
   return {
     inflow: [inflow],
     outflow: [outflow],
     storage: [0],
-    errorPercent: [through > 0 ? (100 * (inflow - outflow)) / through : 0],
+    errorPercent: [measurable ? (100 * (inflow - outflow)) / through : 0],
     kinds,
   }
 }
 
-function warningsOf(flow: FlowModel, outcome: SteadyOutcome): Warning[] {
+function warningsOf(flow: FlowModel, outcome: SteadyOutcome, throughflow: number): Warning[] {
   const { d } = flow
   const { heads, rates } = outcome
   const warnings: Warning[] = []
@@ -242,6 +248,13 @@ function warningsOf(flow: FlowModel, outcome: SteadyOutcome): Warning[] {
       code: 'rounding-floor',
       severity: 'note',
       text: `Rounding stopped the relative residual at ${outcome.residual.toExponential(2)}; the estimated error of any head is ${outcome.headError.toExponential(2)}.`,
+    })
+  }
+  if (outcome.converged && outcome.unresolvedFlow > 0 && throughflow <= outcome.unresolvedFlow) {
+    warnings.push({
+      code: 'nothing-flows',
+      severity: 'note',
+      text: 'Next to nothing flows: all flows lie within the tolerance, so the balance is not given in percent.',
     })
   }
   d.wells.forEach((well, index) => {

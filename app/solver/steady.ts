@@ -42,6 +42,8 @@ export interface SteadyOutcome {
   sweeps: number
   residual: number
   headError: number
+  /** Flows below this are within what the residual leaves open: volume/time. */
+  unresolvedFlow: number
   history: { sweeps: number; residual: number }[]
 }
 
@@ -119,6 +121,7 @@ export function solveSteady(d: Discretised, tolerance: number, options: SteadyOp
     sweeps: run.sweeps,
     residual: run.residual,
     headError: run.headError,
+    unresolvedFlow: converged ? Math.sqrt(count) * Math.max(run.residual, 1e-15) * run.rightHandSide : 0,
     history: thinned(run.history),
   }
 }
@@ -202,8 +205,12 @@ function relaxationOf(run: Run): { lambda: number; zones: Zones | null } {
   const lambda = smallestEigenvalue(matrix, columns, rows)
   const slowest = 0.5 / Math.max(columns, rows) ** 2
   const free = (cell: number) => d.active[cell] === 1 && (d.fixedBy[cell] as number) < 0
-  const zones = zonesOf(matrix, free, columns, rows, lambda < 0.05 * slowest)
-  if (!zones || zones.slowest > 0.5 * Math.min(lambda, slowest)) return { lambda, zones: null }
+  const nearlySingular = lambda < 0.05 * slowest
+  const zones = zonesOf(matrix, free, columns, rows, nearlySingular)
+  // Zones no slower than the rest are better left to relaxation, except where it is not symmetric and may stumble.
+  const worth =
+    !matrix.symmetric || nearlySingular || (zones && zones.slowest < 0.5 * Math.min(lambda, slowest))
+  if (!zones || !worth) return { lambda, zones: null }
   return { lambda: Math.max(lambda, slowest), zones }
 }
 
@@ -373,9 +380,11 @@ function reduceWells(run: Run): boolean {
   let response: number[][] = []
   let stale = true
   for (let round = 0; round < 40; round++) {
-    const scale = (w: number) =>
-      wellTransmissivity(flow, mainCell(wells[w] as PlacedWell), d.highestHead) *
-      Math.max(headSpread(run), 1e-12)
+    const scale = (w: number) => {
+      const well = wells[w] as PlacedWell
+      const above = Math.abs(d.highestHead - lowestLevelOf(flow, well))
+      return wellTransmissivity(flow, mainCell(well), d.highestHead) * Math.max(above, 1e-6)
+    }
     const below = wells.map((well, w) => clearance(flow, well, run.rates[w] as number, run.heads) / scale(w))
     for (const [w, well] of wells.entries()) {
       if (well.requested < 0 && !limited.has(w) && (below[w] as number) < -1e-9) {

@@ -1,0 +1,83 @@
+import { describe, expect, it } from 'vitest'
+import { parseModelFile } from './model-file'
+import { modelHash } from './model-hash.server'
+
+function file(changes: Record<string, unknown> = {}): Record<string, unknown> {
+  return {
+    format: 'lavant-model',
+    version: 1,
+    units: { length: 'm', time: 'd' },
+    kind: 'plan',
+    flow: 'confined',
+    extent: { x: [0, 10], y: [0, 10] },
+    grid: { columns: 2, rows: 2 },
+    time: { kind: 'steady' },
+    materials: [{ name: 'Sand', kx: 1, ky: 1 }],
+    ground: [{ material: 'Sand', base: 0, top: 1 }],
+    ...changes,
+  }
+}
+
+function errors(json: unknown): Record<string, string> {
+  const parsed = parseModelFile(json)
+  if (parsed.ok) throw new Error('the file was accepted')
+  return Object.fromEntries(parsed.errors.map(({ path, message }) => [path, message]))
+}
+
+describe('the model file', () => {
+  it('comes through as it was written, nothing filled in', () => {
+    const json = file()
+    const parsed = parseModelFile(json)
+    expect(parsed).toEqual({ ok: true, model: json })
+  })
+
+  it('refuses unknown fields anywhere, with their path', () => {
+    expect(errors(file({ colour: 'red' }))).toHaveProperty('colour')
+    const well = { name: 'W', x: 1, y: 1, kind: 'abstraction', rate: 1, rat: 2 }
+    expect(errors(file({ wells: [well] }))).toHaveProperty(['wells[0].rat'])
+    expect(errors(file({ grid: { columns: 2, rows: 2, layers: 3 } }))).toHaveProperty(['grid.layers'])
+  })
+
+  it('says what is missing and where', () => {
+    const { grid: _, ...rest } = file()
+    expect(errors(rest)).toEqual({ grid: 'is needed' })
+    const boundary = {
+      name: 'B',
+      kind: 'fixed head',
+      line: [
+        [0, 0],
+        [0, 1],
+      ],
+    }
+    expect(errors(file({ boundaries: [boundary] }))).toEqual({ 'boundaries[0].head': 'is needed' })
+    expect(errors(null)).toHaveProperty(['the file'])
+  })
+
+  it('refuses numbers that are none, and another format or version', () => {
+    expect(errors(file({ materials: [{ name: 'Sand', kx: '1', ky: 1 }] }))).toHaveProperty([
+      'materials[0].kx',
+    ])
+    expect(errors(file({ materials: [{ name: 'Sand', kx: -1, ky: 1 }] }))).toHaveProperty(['materials[0].kx'])
+    expect(errors(file({ version: 2 }))).toHaveProperty('version')
+    expect(errors(file({ format: 'other' }))).toHaveProperty('format')
+  })
+
+  it('reads what this version does not compute, so that the engine can refuse it by name', () => {
+    const time = {
+      kind: 'transient',
+      initialHead: 'steady',
+      stages: [{ name: 'S', duration: 3, steps: 'automatic' }],
+    }
+    expect(parseModelFile(file({ time, want: { verify: true } })).ok).toBe(true)
+  })
+
+  it('has one hash whatever the order of its fields, and another for every change', () => {
+    const json = file()
+    const turned = Object.fromEntries(Object.entries(json).reverse())
+    expect(modelHash(turned)).toBe(modelHash(json))
+    expect(modelHash(json)).toMatch(/^sha256:[0-9a-f]{64}$/)
+    expect(modelHash(file({ title: 'x' }))).not.toBe(modelHash(json))
+    const parsed = parseModelFile(json)
+    expect(parsed.ok && modelHash(parsed.model)).toBe(modelHash(json))
+  })
+})
