@@ -9,7 +9,7 @@ import { FormMessage } from '~/components/form-message'
 import { Letterhead } from '~/components/letterhead'
 import { Notice } from '~/components/notice'
 import { environment } from '~/environment.server'
-import { emailUnderWay } from '~/sign-in/codes.server'
+import { emailUnderWay, hasAskedForCode } from '~/sign-in/codes.server'
 import { nextPage } from '~/sign-in/next-page'
 import { codeSchema, waitInWords } from '~/sign-in/sign-in'
 import { signInPurpose, signInWithCode } from '~/sign-in/sign-in.server'
@@ -23,6 +23,7 @@ export async function loader({ request, url }: Route.LoaderArgs) {
 }
 
 export async function action({ request, url, context }: Route.ActionArgs) {
+  if (!(await hasAskedForCode(request))) return redirect(href('/sign-in') + url.search)
   const submission = parseWithZod(await request.formData(), { schema: codeSchema })
   if (submission.status !== 'success') return data(submission.reply(), 400)
   const answer = await signInWithCode(database(), {

@@ -52,6 +52,13 @@ function hashOf(record: { id: string; email: string; purpose: string }, code: st
     .digest('hex')
 }
 
+/** Removes a few codes that ended long ago; found without a lock first, so that nobody waits. */
+async function forgetOldCodes(db: Database): Promise<void> {
+  const longAgo = new Date(Date.now() - 86_400_000)
+  const old = await db('sign_in_codes').where('expires_at', '<', longAgo).limit(100).pluck('id')
+  if (old.length > 0) await db('sign_in_codes').whereIn('id', old).delete()
+}
+
 /**
  * Makes a code for one purpose ('sign in', or the very thing that is to be signed) and, where `known` says so, mails
  * it. Whoever the address belongs to, the same is done and answered: the mail goes out after the answer, so that its
@@ -85,15 +92,18 @@ export async function sendCode(
     created_at: new Date(now),
     expires_at: new Date(now + codePeriod * 1000),
   })
-  await db('sign_in_codes')
-    .where('expires_at', '<', new Date(now - 86_400_000))
-    .delete()
+  await forgetOldCodes(db)
   if (known) {
     sendMail({ to: email, ...mail(code) }).catch((error: unknown) => {
       console.error('A code could not be mailed:', error)
     })
   }
   return { cookie: await flowCookie().serialize({ id, sealed }) }
+}
+
+/** Whether this browser asked for a code lately, be it used or not. */
+export async function hasAskedForCode(request: Request): Promise<boolean> {
+  return (await flowOf(request)) !== undefined
 }
 
 /** The e-mail that the code under way in this browser was asked for; undefined when there is none. */

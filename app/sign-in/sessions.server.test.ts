@@ -109,3 +109,16 @@ test('The first sign-in is noted, later ones do not move it', async () => {
   const [second] = await db.database('users').where({ id: dan }).select('first_signed_in_at')
   expect(second.first_signed_in_at).toEqual(first.first_signed_in_at)
 })
+
+test('Twenty sign-ins of one person at the same moment all succeed, with old sessions to clear away', async () => {
+  const eve = await makePerson(db.database, { name: 'Eve' })
+  await signIn(db.database, eve)
+  await db
+    .database('sessions')
+    .where({ user_id: eve })
+    .update({ expires_at: new Date(0) })
+  const cookies = await Promise.all(Array.from({ length: 20 }, () => signIn(db.database, eve)))
+  expect(new Set(cookies).size).toBe(20)
+  for (const cookie of cookies) expect(await findSession(db.database, bearing(cookie))).toBeDefined()
+  expect(await db.database('sessions').where({ user_id: eve, expires_at: new Date(0) })).toEqual([])
+})

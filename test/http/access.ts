@@ -21,7 +21,11 @@ export type Outcome =
 export type Outcomes = Record<Visitor, Outcome>
 
 export interface Access {
+  /** What a reading has to say in its address, besides the path. */
+  search?: string
   get: Outcomes
+  /** The form that is sent, where an empty one does not even name what it is about. */
+  form?: string
   post: Outcomes
 }
 
@@ -56,17 +60,19 @@ const signedIn = (outcome: Outcome) => outcomes(outcome, { 'signed out': 'sign i
 const administrators = (outcome: Outcome) =>
   outcomes('hidden', { 'signed out': 'sign in first', administrator: outcome })
 
-const makers: readonly Role[] = ['project manager', 'originator']
 const readers: readonly Role[] = ['originator', 'data']
 
 /** A section's page; what is entered in it goes to the route of the rows. */
 const section: Access = { get: only(team, 'shown'), post: none }
 
-/** Every route of app/routes.ts: who gets what from reading (GET) and from doing (POST with an empty form). */
+/**
+ * Every route of app/routes.ts: who gets what from reading (GET) and from doing (POST, with an empty form
+ * unless one is given).
+ */
 export const access: Record<string, Access> = {
   '/': { get: outcomes('led on', { 'signed out': 'sign in first' }), post: outcomes('no method') },
   '/sign-in': { get: outcomes('led on', { 'signed out': 'shown' }), post: outcomes('let through') },
-  '/sign-in/code': { get: outcomes('sign in first'), post: outcomes('let through') },
+  '/sign-in/code': { get: outcomes('sign in first'), post: outcomes('sign in first') },
   '/sign-out': { get: outcomes('led on'), post: outcomes('sign in first') },
   '/mail': { get: outcomes('shown'), post: outcomes('no method') },
   '/health': { get: outcomes('shown'), post: outcomes('no method') },
@@ -94,7 +100,11 @@ export const access: Record<string, Access> = {
     post: only(readers, 'let through'),
   },
   '/projects/:projectId/readings/instruments/:instrumentId': section,
-  '/projects/:projectId/fit': section,
+  '/projects/:projectId/fit': {
+    get: only(team, 'shown'),
+    form: 'run=:runId',
+    post: only(['originator'], 'let through'),
+  },
   '/projects/:projectId/checks': section,
   '/projects/:projectId/package': { get: only(team, 'shown'), post: only(team, 'let through') },
   '/projects/:projectId/progress': {
@@ -108,7 +118,7 @@ export const access: Record<string, Access> = {
   '/projects/:projectId/history': section,
   '/projects/:projectId/rows': { get: none, post: only(team, 'let through') },
   '/projects/:projectId/check': { get: none, post: only(['checker'], 'let through') },
-  '/projects/:projectId/files': { get: none, post: only(makers, 'let through') },
+  '/projects/:projectId/files': { get: none, post: only(['originator'], 'let through') },
   '/projects/:projectId/files/:fileId': { get: only(team, 'shown'), post: none },
   '/projects/:projectId/runs': { get: none, post: only(['originator'], 'let through') },
   '/projects/:projectId/runs/:runId': { get: only(team, 'shown'), post: only(['originator'], 'let through') },
@@ -118,7 +128,11 @@ export const access: Record<string, Access> = {
   '/projects/:projectId/readings/imports/:importId/state': { get: only(team, 'shown'), post: none },
   '/projects/:projectId/readings/imports/:importId/receipt': { get: only(team, 'shown'), post: none },
   '/projects/:projectId/readings/instruments/:instrumentId/series': { get: only(team, 'shown'), post: none },
-  '/projects/:projectId/fit/download': { get: only(team, 'shown'), post: none },
+  '/projects/:projectId/fit/download': {
+    search: '?run=:runId&date=2026-01-01',
+    get: only(team, 'shown'),
+    post: none,
+  },
   '/projects/:projectId/packages/:packageId': { get: only(team, 'shown'), post: none },
   '/projects/:projectId/packages/:packageId/pdf': { get: members('shown'), post: none },
   '/*': { get: outcomes('hidden'), post: outcomes('hidden') },

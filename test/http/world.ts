@@ -2,6 +2,10 @@ import { createHash } from 'node:crypto'
 import type { Knex } from 'knex'
 import { putBuffer } from '../../app/files/files.server.ts'
 import { type Role, roles } from '../../app/projects/permissions.ts'
+import type { ImportReceipt } from '../../app/readings/import-settings.ts'
+import { encodeHeads } from '../../app/solver/heads-buffer.ts'
+import type { Model } from '../../app/solver/model.ts'
+import { solveModel } from '../../app/solver/solve.ts'
 import { makePerson, makeProject } from '../people.ts'
 
 /** Whoever may knock: the six roles of a project, and three who are not in it. */
@@ -104,37 +108,104 @@ async function makePackage(
   return String(id)
 }
 
-async function makeChildren(database: Knex, projectId: number, userId: number): Promise<Params> {
-  const now = new Date()
-  const input = JSON.stringify({ project: projectId })
-  const heads = await putBuffer(Buffer.from(`heads of project ${projectId}`), {
+/** A strip of sand between two fixed heads, with a well in the middle. */
+const model: Model = {
+  format: 'lavant-model',
+  version: 1,
+  title: 'Strip',
+  units: { length: 'm', time: 'd' },
+  kind: 'plan',
+  flow: 'confined',
+  time: { kind: 'steady' },
+  extent: { x: [0, 100], y: [0, 50] },
+  grid: { columns: 10, rows: 5 },
+  materials: [{ name: 'Sand', kx: 10, ky: 10 }],
+  ground: [{ material: 'Sand', base: 0, top: 10 }],
+  wells: [{ name: 'W1', x: 55, y: 25, kind: 'abstraction', rate: 50 }],
+  boundaries: [
+    {
+      name: 'West',
+      kind: 'fixed head',
+      line: [
+        [0, 0],
+        [0, 50],
+      ],
+      head: 20,
+    },
+    {
+      name: 'East',
+      kind: 'fixed head',
+      line: [
+        [100, 0],
+        [100, 50],
+      ],
+      head: 18,
+    },
+  ],
+}
+
+async function makeRun(database: Knex, projectId: number, userId: number): Promise<number> {
+  const input = JSON.stringify(model)
+  const { result, grid, heads } = solveModel(model)
+  const stored = await putBuffer(new Uint8Array(encodeHeads(grid, heads)), {
     folder: `projects/${projectId}/runs`,
     contentType: 'application/octet-stream',
   })
-  const runId = await insert(database, 'runs', {
+  const now = new Date()
+  return insert(database, 'runs', {
     project_id: projectId,
     number: 1,
     case_id: 'base',
     case_version: 1,
     case_name: 'Base case',
-    state: 'cancelled',
+    state: 'done',
     input,
     input_sha256: createHash('sha256').update(input).digest('hex'),
     sections_digest: '0'.repeat(64),
-    heads_key: heads.key,
-    heads_sha256: heads.sha256,
+    engine: result.engine,
+    converged: result.converged,
+    result: JSON.stringify(result),
+    heads_key: stored.key,
+    heads_sha256: stored.sha256,
     heads_format: 1,
     created_at: now,
     ended_at: now,
     created_by: userId,
   })
-  const importId = await insert(database, 'imports', {
+}
+
+async function makeImport(database: Knex, projectId: number, userId: number): Promise<number> {
+  const fileId = await makeFile(database, projectId, userId, 'readings')
+  const [file] = await database('files').where({ id: fileId }).select('name', 'bytes', 'sha256')
+  const now = new Date()
+  const receipt: ImportReceipt = {
+    file: { name: file.name, bytes: file.bytes, sha256: file.sha256 },
+    counts: { rows: 0, accepted: 0, identical: 0, conflicts: 0, refused: 0 },
+    superseded: 0,
+    conflictRule: 'keep',
+    reason: null,
+    instruments: [],
+    addedInstruments: [],
+    reasons: [],
+    committedAt: now.toISOString(),
+    committedBy: 'somebody',
+  }
+  return insert(database, 'imports', {
     project_id: projectId,
-    file_id: await makeFile(database, projectId, userId, 'readings'),
-    state: 'uploaded',
+    file_id: fileId,
+    state: 'committed',
+    receipt: JSON.stringify(receipt),
     created_at: now,
     created_by: userId,
+    committed_at: now,
+    committed_by: userId,
   })
+}
+
+async function makeChildren(database: Knex, projectId: number, userId: number): Promise<Params> {
+  const now = new Date()
+  const runId = await makeRun(database, projectId, userId)
+  const importId = await makeImport(database, projectId, userId)
   const instrumentId = `instrument-${projectId}`
   await database('book_rows').insert({
     project_id: projectId,
