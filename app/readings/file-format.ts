@@ -18,6 +18,12 @@ export const delimiterWords: Record<Delimiter, string> = {
   '|': 'upright bar',
 }
 
+/** How bytes become rows of cells. */
+export interface FileFormat {
+  encoding: Encoding
+  delimiter: Delimiter
+}
+
 /** The encoding that the first bytes of a file show: a byte order mark, the zeros of UTF-16, or valid UTF-8. */
 export function detectEncoding(bytes: Uint8Array): { encoding: Encoding; mark: boolean } {
   const [a, b, c] = bytes

@@ -2,9 +2,9 @@ import { z } from 'zod'
 import { isUnitName, type UnitName } from '~/units'
 import { delimiters, encodings } from './file-format'
 import { instrumentKinds } from './instrument'
-import { dateOrders } from './read-time'
 import { decimalMarks } from './read-value'
 import { quantities, unitsOfQuantity } from './reading'
+import { dateOrders } from './time-rules'
 
 const column = (what: string) =>
   z

@@ -13,9 +13,10 @@ import type {
 } from './import-settings'
 import type { Instrument } from './instrument'
 import { RowReader } from './read-row'
-import { type DateOrder, provenOrder, TimeWitness } from './read-time'
+import { provenOrder, TimeWitness } from './read-time'
 import { type DecimalMark, noDecimalProof, provenDecimal, weighDecimal } from './read-value'
 import { readStatus } from './reading'
+import type { DateOrder } from './time-rules'
 
 /** Somebody asked the preview to stop. */
 export class Stopped extends Error {}

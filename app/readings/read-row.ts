@@ -1,9 +1,10 @@
 import { randomUUID } from 'node:crypto'
 import { convert, type ProjectUnits } from '~/units'
 import type { ImportSettings, NewInstrument } from './import-settings'
-import { Clockwork, type DateOrder, readTime } from './read-time'
+import { Clockwork, readTime } from './read-time'
 import { type DecimalMark, readNumber, readValue, shorten } from './read-value'
 import { type ReadingQuantity, type ReadingStatus, readStatus } from './reading'
+import type { DateOrder } from './time-rules'
 
 /** What the rows of a file are held against. */
 export interface ReadingContext {

@@ -1,14 +1,7 @@
 import { IANAZone } from 'luxon'
 import { describe, expect, test } from 'vitest'
-import {
-  Clockwork,
-  clockText,
-  type DateOrder,
-  instantsOf,
-  provenOrder,
-  readTime,
-  TimeWitness,
-} from './read-time'
+import { Clockwork, clockText, instantsOf, provenOrder, readTime, TimeWitness } from './read-time'
+import type { DateOrder } from './time-rules'
 
 const now = new Date('2026-12-01T00:00:00Z')
 

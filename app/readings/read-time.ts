@@ -1,18 +1,8 @@
 import { IANAZone } from 'luxon'
+import { type DateOrder, dateOrders, type RepeatedHour, type ZoneRule } from './time-rules'
 
 const minute = 60_000
 const dayLength = 86_400_000
-
-export const dateOrders = ['year first', 'day first', 'month first', 'serial 1900', 'serial 1904'] as const
-export type DateOrder = (typeof dateOrders)[number]
-
-export const dateOrderWords: Record<DateOrder, string> = {
-  'year first': 'year first: 2026-03-14',
-  'day first': 'day first: 14/03/2026',
-  'month first': 'month first: 03/14/2026',
-  'serial 1900': 'spreadsheet day number, counted from 1900',
-  'serial 1904': 'spreadsheet day number, counted from 1904',
-}
 
 /** A date and time as a clock on some wall shows it, before anything is known of the zone. */
 export interface LocalTime {
@@ -234,17 +224,6 @@ export function provenOrder(proof: TimeProof): DateOrder | null {
   const fitting = proof.tallies.filter((tally) => tally.fits === best)
   return best > 0 && fitting.length === 1 ? (fitting[0]?.order ?? null) : null
 }
-
-export type RepeatedHour = 'refuse' | 'first' | 'second' | 'in order'
-
-export type ZoneRule =
-  | { rule: 'utc' }
-  /** Minutes east of UTC, all the year. */
-  | { rule: 'offset'; minutes: number }
-  /** The site's own clock, with its changes. */
-  | { rule: 'site'; repeated: RepeatedHour }
-  /** Each time carries its own offset. */
-  | { rule: 'written' }
 
 export type Instant = { ok: true; at: number } | { ok: false; reason: string }
 

@@ -1,5 +1,4 @@
-import type { UnitName } from '~/units'
-import { unitsOf } from '~/units'
+import { isUnitName, type UnitName, unitLabel, unitsOf } from '~/units'
 
 /** What a reading measures, as the file has it. Heads are derived from it and never stored. */
 export const quantities = ['dip', 'level', 'pressure head'] as const
@@ -71,4 +70,10 @@ const otherWords: Record<string, ReadingStatus> = {
 export function readStatus(text: string): ReadingStatus | null {
   const word = text.trim().toLowerCase().replace(/\s+/g, ' ')
   return statuses.find((status) => status === word) ?? otherWords[word] ?? null
+}
+
+/** What a person wrote, as the file has it, with the column's unit behind a bare number. */
+export function enteredText(reading: { entered: string; unit: string }): string {
+  const { entered, unit } = reading
+  return /[\d.,]$/.test(entered) && isUnitName(unit) ? `${entered} ${unitLabel(unit)}` : entered
 }

@@ -1,4 +1,5 @@
 import { listRows } from '~/book/rows.server'
+import { convert } from '~/units'
 import type { Database } from '~database/connection.server'
 import {
   type DatedLevel,
@@ -394,4 +395,53 @@ export async function latestReadings(
       fileRow: row.file_row,
     }
   })
+}
+
+/**
+ * The course of heads of every instrument in at most so many points: the first number of each equal span of time.
+ * For small pictures only; `seriesOf` has every peak.
+ */
+export async function coursesOf(
+  db: Database,
+  projectId: number,
+  options: { from: Date; to: Date; points: number },
+): Promise<Map<string, SeriesPoint[]>> {
+  const histories = await levelHistories(db, projectId)
+  const width = Math.max(60, (options.to.getTime() - options.from.getTime()) / 1000 / options.points)
+  const firsts = db('readings')
+    .where({ project_id: projectId })
+    .whereBetween('taken_at', [options.from, options.to])
+    .whereNotNull('value')
+    .groupByRaw('instrument_id, floor(timestampdiff(second, ?, taken_at) / ?)', [options.from, width])
+    .select('instrument_id', db.raw('min(taken_at) as taken_at'))
+    .as('f')
+  const rows: ReadingRow[] = await currentReadings(db, projectId)
+    .join(firsts, (join) => join.on('f.instrument_id', 'r.instrument_id').andOn('f.taken_at', 'r.taken_at'))
+    .orderBy('r.taken_at')
+    .select('r.instrument_id', 'r.quantity', 'r.taken_at', 'r.value', 'r.operator', 'r.status')
+  const courses = new Map<string, SeriesPoint[]>()
+  for (const row of rows) {
+    const { head } = headOf(asStored(row), histories.get(row.instrument_id) ?? noLevels)
+    if (head === null) continue
+    courses.set(row.instrument_id, [
+      ...(courses.get(row.instrument_id) ?? []),
+      [row.taken_at.getTime(), head],
+    ])
+  }
+  return courses
+}
+
+/** The reference level that a dip (or, failing that, a sensor) has in force at an instant, in metres, by instrument. */
+export async function currentReferenceLevels(
+  db: Database,
+  projectId: number,
+  at: Date,
+): Promise<Map<string, number>> {
+  const levels = new Map<string, number>()
+  for (const [id, history] of await levelHistories(db, projectId)) {
+    const inForce =
+      levelInForce(history, 'dip', at.getTime()) ?? levelInForce(history, 'pressure head', at.getTime())
+    if (inForce) levels.set(id, convert(inForce.level, 'm'))
+  }
+  return levels
 }
