@@ -2,8 +2,7 @@ import type { EChartsOption } from 'echarts'
 import type { Vertex } from '~/book/field'
 import { formatNumber } from '~/units'
 import { type HeadField, headAt } from './field'
-import type { FigureTheme } from './palette'
-import { palettes } from './palette'
+import { type FigureTheme, palettes } from './palette'
 import { typeFace } from './shapes'
 
 /** A head along a cut; NaN where there is none. */
@@ -51,7 +50,7 @@ export function cutChart(
   const axis = {
     axisLabel: { ...type, color: palette.quiet },
     nameTextStyle: { ...type, color: palette.quiet },
-    axisLine: { show: true, lineStyle: { color: palette.ink } },
+    axisLine: { show: true, onZero: false, lineStyle: { color: palette.ink } },
     axisTick: { show: true, lineStyle: { color: palette.ink } },
     splitLine: { lineStyle: { color: palette.rule, opacity: 0.5 } },
   }
@@ -63,9 +62,8 @@ export function cutChart(
     legend: {
       top: 0,
       left: 0,
-      icon: 'path://M0 8H30V11H0Z',
-      itemWidth: 22,
-      itemHeight: 3,
+      itemWidth: 30,
+      itemHeight: 0,
       textStyle: type,
       data: lines.map((line) => line.name),
       selectedMode: false,
@@ -113,7 +111,7 @@ export function cutChart(
     series: lines.map((line) => ({
       type: 'line' as const,
       name: line.name,
-      showSymbol: false,
+      symbol: 'none',
       data: line.samples.map(({ distance, level }) => [distance, level]),
       lineStyle: looks[line.look],
       itemStyle: { color: looks[line.look].color },

@@ -171,8 +171,14 @@ function flowColumns(first: string, rate: string): Column<FlowLine>[] {
     { head: first, cell: (line) => line.name },
     { head: 'Into the ground', unit: rate, cell: (line) => zero(line.inflow) },
     { head: 'Out of the ground', unit: rate, cell: (line) => zero(line.outflow) },
-    { head: 'Net', unit: rate, cell: (line) => signed(line.inflow - line.outflow) },
+    { head: 'Net', unit: rate, cell: (line) => signed(netOf(line)) },
   ]
+}
+
+/** What is left after in and out cancel to within rounding is nothing. */
+function netOf({ inflow, outflow }: FlowLine): number {
+  const net = inflow - outflow
+  return Math.abs(net) < 1e-9 * Math.max(inflow, outflow) ? 0 : net
 }
 
 function signed(value: number): string {

@@ -1,5 +1,5 @@
 import type { Vertex } from '~/book/field'
-import { type Box, boxOf, liesWithin, overlap, typeWidth } from './boxes'
+import { type Box, boxAlong, boxOf, liesWithin, overlap, typeWidth } from './boxes'
 import { lengthsAlong, type PlaceOnLine, placeAt, type Rectangle } from './lines'
 
 /** What is already taken in a figure: labels look for room among these. */
@@ -79,13 +79,22 @@ export function labelsAlong(
   return placed
 }
 
-/** Room for a name beside a symbol: the first free place of eight, or else the one that covers least. */
+export interface NamePlace {
+  box: Box
+  /** From the symbol to a name that found room only further off. */
+  leader: [Vertex, Vertex] | null
+}
+
+/**
+ * Room for a name beside a symbol: the first free place of eight round it; in a crowd one further off, with a leader;
+ * failing that, the place that covers least.
+ */
 export function nameBeside(
   x: number,
   y: number,
   text: string,
   options: { size: number; clear: number; plot: Rectangle; taken: Taken },
-): Box {
+): NamePlace {
   const { size, clear, plot, taken } = options
   const width = typeWidth(text, size, true) + 5
   const height = size * 1.2
@@ -102,15 +111,33 @@ export function nameBeside(
     [-across * slant - clear * 0.3, -over * slant],
     [-across * slant - clear * 0.3, over * slant],
   ]
-  const boxes = places
-    .map(([dx, dy]) => boxOf(x + dx, y + dy, width, height))
-    .map((box) => ({
-      box,
-      cost: taken.filter((other) => overlap(box, other)).length + (liesWithin(box, plot) ? 0 : 100),
-    }))
-  const best = boxes.reduce((a, b) => (b.cost < a.cost ? b : a)).box
-  taken.push(best)
-  return best
+  const near = places.map(([dx, dy]) => boxOf(x + dx, y + dy, width, height))
+  const covers = (box: Box) =>
+    taken.filter((other) => overlap(box, other)).length + (liesWithin(box, plot) ? 0 : 100)
+  const beside = near.find((box) => covers(box) === 0)
+  if (beside) {
+    taken.push(beside)
+    return { box: beside, leader: null }
+  }
+  for (const reach of [1.5, 2.2, 3]) {
+    for (let k = 0; k < 16; k++) {
+      const angle = (k * Math.PI) / 8
+      const box = boxOf(
+        x + Math.cos(angle) * (clear * reach + width / 2),
+        y + Math.sin(angle) * (clear * reach + height),
+        width,
+        height,
+      )
+      if (covers(box) > 0) continue
+      const away = Math.hypot(box.x - x, box.y - y)
+      const start: Vertex = [x + ((box.x - x) * clear * 0.8) / away, y + ((box.y - y) * clear * 0.8) / away]
+      taken.push(box, boxAlong(start, [box.x, box.y], 2))
+      return { box, leader: [start, [box.x, box.y]] }
+    }
+  }
+  const least = near.reduce((a, b) => (covers(b) < covers(a) ? b : a))
+  taken.push(least)
+  return { box: least, leader: null }
 }
 
 /** Room for a name along a line, beside it or, failing that, on it; undefined when there is none. */

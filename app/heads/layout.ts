@@ -132,11 +132,11 @@ export function layoutOf(
   }
 }
 
-/** A round length for the scale bar: the longest of 1, 2, 2.5 and 5 times a power of ten that fits a width. */
+/** A round length for the scale bar: the longest of 1, 2 and 5 times a power of ten that fits a width. */
 export function scaleBarLength(scale: number, width: number): number {
   const most = width / scale
   const power = 10 ** Math.floor(Math.log10(most))
-  const mantissa = [5, 2.5, 2, 1].find((step) => step * power <= most) ?? 1
+  const mantissa = [5, 2, 1].find((step) => step * power <= most) ?? 1
   return Number((mantissa * power).toPrecision(12))
 }
 

@@ -210,7 +210,7 @@ function layersOf(input: PictureInput, options: PictureOptions): Shape[] {
   const names = namesOf(drawing)
   const lines = contourLines(drawing, contours)
   return [
-    filled(pathOfRectangle(0, 0, layout.width, layout.height), palette.paper),
+    group([filled(pathOfRectangle(0, 0, layout.width, layout.height), palette.paper)]),
     group(fillsOf(drawing, contours)),
     group(lines.lines),
     group(outsideOf(drawing)),
@@ -222,15 +222,15 @@ function layersOf(input: PictureInput, options: PictureOptions): Shape[] {
     group(lines.labels),
     group(symbolsOf(drawing)),
     group(residualsOf(drawing)),
+    group(selectionOf(drawing)),
     group(names),
     group(cutEnds(drawing)),
-    group(selectionOf(drawing)),
     group(scaleOf(drawing)),
     group(legendOf(drawing)),
     group(keysOf(drawing)),
     group(captionOf(drawing)),
     group(input.converged ? [] : watermarkOf(drawing)),
-  ].filter((layer) => layer.type !== 'group' || layer.children.length > 0)
+  ].filter((layer) => layer.children.length > 0)
 }
 
 function bandsOf(
@@ -557,7 +557,10 @@ function namesOf(drawing: Drawing): Shape[] {
   }
   const beside = (x: number, y: number, text: string, clear: number) => {
     const at = layout.toPixel(x, y)
-    if (isInPlot(layout, at)) write(nameBeside(at[0], at[1], text, { size, clear, plot, taken }), text)
+    if (!isInPlot(layout, at)) return
+    const { box, leader } = nameBeside(at[0], at[1], text, { size, clear, plot, taken })
+    if (leader) shapes.push(...cased(pathOf(leader), palette.line, layout.size, palette.casing))
+    write(box, text)
   }
   const marks = input.residuals ?? []
   const largest = largestResidual(marks)

@@ -44,11 +44,13 @@ interface TypeShape {
 interface GroupShape {
   type: 'group'
   children: Shape[]
+  /** When a figure is drawn anew its shapes are new: matched to old ones by number they would keep parts of their styles. */
+  $mergeChildren: false
   silent: true
 }
 
 export function group(children: Shape[]): GroupShape {
-  return { type: 'group', children, silent: true }
+  return { type: 'group', children, $mergeChildren: false, silent: true }
 }
 
 /** A filled shape. */
