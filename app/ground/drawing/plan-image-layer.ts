@@ -1,8 +1,8 @@
 import ImageLayer from 'ol/layer/Image.js'
 import type Projection from 'ol/proj/Projection.js'
 import ImageCanvas from 'ol/source/ImageCanvas.js'
-import type { PlanImage } from '../ground'
-import { planImagePlacement } from '../plan-image'
+import type { PlanImage } from '~/ground/ground'
+import { planImagePlacement } from '~/ground/plan-image'
 import { type Palette, paint } from './palette'
 
 export interface ShownPlanImage {
