@@ -233,7 +233,7 @@ async function writeBook(db: Knex, project: Project, userId: number): Promise<Bo
     ...materials,
     ...zones,
     ...points,
-    { op: 'add', kind: 'plan image', id: 'plan image', body: await planImage(db, project.id, userId) },
+    { op: 'add', kind: 'plan image', id: 'plan-image', body: await planImage(db, project.id, userId) },
     ...wells,
     ...added('recharge zone', demoRecharge),
     ...added('boundary', demoBoundaries),
