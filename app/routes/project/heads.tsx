@@ -138,12 +138,18 @@ function NotComputed({ data }: { data: Loaded }) {
       {open.length > 0 ? (
         <Notice title="A run is under way">
           Run {open[0]?.number} of case {open[0]?.caseName} is being computed.{' '}
-          <Link to={cases}>Follow it in section 4</Link>; its heads appear here.
+          <Link to={cases} className="underline">
+            Follow it in section 4
+          </Link>
+          ; its heads appear here.
         </Notice>
       ) : (
         <Notice title="No heads yet">
           No case has been computed.{' '}
-          <Link to={cases}>{mayRun ? 'Compute a case in section 4' : 'Section 4 says what is missing'}</Link>.
+          <Link to={cases} className="underline">
+            {mayRun ? 'Compute a case in section 4' : 'Section 4 says what is missing'}
+          </Link>
+          .
         </Notice>
       )}
     </SectionPage>
@@ -254,14 +260,20 @@ function Computed({ data }: { data: Ready }) {
       {open.length > 0 && (
         <Notice>
           Run {open[0]?.number} of case {open[0]?.caseName} is being computed:{' '}
-          <Link to={href('/projects/:projectId/cases', { projectId })}>follow it in section 4</Link>.
+          <Link to={href('/projects/:projectId/cases', { projectId })} className="underline">
+            follow it in section 4
+          </Link>
+          .
         </Notice>
       )}
       {line.stale && (
         <Notice tone="warn" title="Inputs changed since this run">
           The book would now give case {run.caseName} another input. These are the heads of the input as it
-          was frozen: <Link to={href('/projects/:projectId/cases', { projectId })}>compute it again</Link> for
-          the book as it stands.
+          was frozen:{' '}
+          <Link to={href('/projects/:projectId/cases', { projectId })} className="underline">
+            compute it again
+          </Link>{' '}
+          for the book as it stands.
         </Notice>
       )}
       <Warnings warnings={result.warnings} />
@@ -483,7 +495,11 @@ function referencesOf({ run, line, projectId, project }: Ready): Reference[] {
       no: '4',
       text: (
         <>
-          Case <Link to={to('cases')}>{run.caseName}</Link>, run {run.number}
+          Case{' '}
+          <Link to={to('cases')} className="underline">
+            {run.caseName}
+          </Link>
+          , run {run.number}
           {run.endedAt && ` of ${day(run.endedAt)}`}. Input {shortHash(run.inputSha256)}.
         </>
       ),
@@ -495,8 +511,11 @@ function referencesOf({ run, line, projectId, project }: Ready): Reference[] {
       no: '2',
       text: (
         <>
-          <Link to={to('ground')}>Ground</Link>: {run.model.materials.length}{' '}
-          {run.model.materials.length === 1 ? 'material' : 'materials'}, {run.model.flow} flow.
+          <Link to={to('ground')} className="underline">
+            Ground
+          </Link>
+          : {run.model.materials.length} {run.model.materials.length === 1 ? 'material' : 'materials'},{' '}
+          {run.model.flow} flow.
         </>
       ),
     },
@@ -504,8 +523,10 @@ function referencesOf({ run, line, projectId, project }: Ready): Reference[] {
       no: '3',
       text: (
         <>
-          <Link to={to('water')}>Water</Link>: {counted(run.model.wells, 'well')},{' '}
-          {counted(run.model.boundaries, 'boundary', 'boundaries')},{' '}
+          <Link to={to('water')} className="underline">
+            Water
+          </Link>
+          : {counted(run.model.wells, 'well')}, {counted(run.model.boundaries, 'boundary', 'boundaries')},{' '}
           {counted(run.model.recharge, 'recharge zone')}, {counted(run.model.walls, 'cut-off wall')}.
         </>
       ),
@@ -540,14 +561,14 @@ function carriedOf(
   if (range) {
     carried.push(
       {
-        label: 'Lowest head',
+        label: `Lowest head, ${datum}`,
         value: formatNumber(range.low, 2),
         unit: length,
         note: place(range.lowAt),
         ...unfinished,
       },
       {
-        label: `Highest head`,
+        label: 'Highest head',
         value: formatNumber(range.high, 2),
         unit: length,
         note: place(range.highAt),
@@ -586,7 +607,6 @@ function carriedOf(
       ...unfinished,
     })
   }
-  if (carried[0]) carried[0].label = `Lowest head, ${datum}`
   return carried
 }
 
