@@ -97,10 +97,13 @@ function FieldByField(props: FieldByFieldProps) {
   const fields = [...new Set([...Object.keys(theirs), ...Object.keys(mine)])].filter(
     (field) => !sameBody(mine[field], theirs[field]),
   )
-  // What only one of the two touched is offered as that person left it.
-  const [keptMine, setKeptMine] = useState<readonly string[]>(() =>
-    fields.filter((field) => !base || !sameBody(mine[field], base[field])),
-  )
+  const [chosen, setChosen] = useState<Readonly<Record<string, 'mine' | 'theirs'>>>({})
+
+  /** Until somebody chooses, what only one of the two touched stays as that person left it. */
+  function keepsMine(field: string): boolean {
+    const choice = chosen[field] ?? (!base || !sameBody(mine[field], base[field]) ? 'mine' : 'theirs')
+    return choice === 'mine'
+  }
 
   function words(field: string, body: Body): string {
     const column = columns.find((one) => one.field === field)
@@ -139,10 +142,8 @@ function FieldByField(props: FieldByFieldProps) {
                     <input
                       type="radio"
                       name={`${kind} ${name} ${field}`}
-                      checked={keptMine.includes(field) === isMine}
-                      onChange={() =>
-                        setKeptMine(isMine ? [...keptMine, field] : keptMine.filter((kept) => kept !== field))
-                      }
+                      checked={keepsMine(field) === isMine}
+                      onChange={() => setChosen({ ...chosen, [field]: isMine ? 'mine' : 'theirs' })}
                     />
                     <span className="break-words whitespace-pre-line">
                       {words(field, isMine ? mine : theirs)}
@@ -161,7 +162,7 @@ function FieldByField(props: FieldByFieldProps) {
             onResolve({
               ...theirs,
               ...Object.fromEntries(
-                fields.map((field) => [field, keptMine.includes(field) ? mine[field] : theirs[field]]),
+                fields.map((field) => [field, keepsMine(field) ? mine[field] : theirs[field]]),
               ),
             })
           }

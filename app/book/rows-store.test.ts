@@ -176,6 +176,14 @@ describe('two people on the same row', () => {
     expect(store.snapshot().saving).toEqual({ state: 'conflict', count: 1 })
   })
 
+  it('see what was typed after the save was refused, too', async () => {
+    const { store } = pageWith({ answers: [conflict] })
+    store.apply([set('a', 'rate', 210)])
+    await store.save()
+    store.apply([set('a', 'note', 'as built')])
+    expect(store.snapshot().conflicts[0]?.mine).toEqual({ name: 'W1', rate: 210, note: 'as built' })
+  })
+
   it('may keep mine, which is saved on top of theirs', async () => {
     const { store, sent } = pageWith({ answers: [conflict] })
     store.apply([set('a', 'rate', 210)])

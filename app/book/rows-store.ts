@@ -222,7 +222,11 @@ export function createRowsStore(options: RowsStoreOptions): RowsStore {
     return {
       rows,
       saving,
-      conflicts: [...conflicts.values()],
+      // What the person has now: they may have gone on editing the row since the save was refused.
+      conflicts: [...conflicts.values()].map((conflict) => ({
+        ...conflict,
+        mine: drafts.find((draft) => draft.id === conflict.id)?.body ?? null,
+      })),
       unsaved,
       canUndo: undoSteps.length > 0,
       canRedo: redoSteps.length > 0,
@@ -517,7 +521,9 @@ export function createRowsStore(options: RowsStoreOptions): RowsStore {
     const { theirs, kind } = conflict
     if (theirs) base.set(id, { kind, version: theirs.version, body: theirs.body })
     else base.delete(id)
-    const draft = body && { id, kind, body, typed: {} }
+    // A cell that could not be read yet goes on waiting, unless the person lets go of their side altogether.
+    const typed = (body !== theirs?.body && drafts.find((one) => one.id === id)?.typed) || {}
+    const draft = body && { id, kind, body, typed }
     if (!draft) drafts = drafts.filter((one) => one.id !== id)
     else if (drafts.some((one) => one.id === id)) drafts = drafts.map((one) => (one.id === id ? draft : one))
     else drafts = [...drafts, draft]

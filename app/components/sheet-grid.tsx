@@ -139,9 +139,11 @@ export function SheetGrid(props: SheetGridProps) {
   const [api, setApi] = useState<GridApi<SheetRow> | null>(null)
   const editable = edits !== undefined
 
+  // Loaders hand out the same units as a new object each time; new definitions would draw every heading again.
+  const { length, time } = units
   const definitions = useMemo(
-    () => columns.map((column, index) => definition(column, index, editable, units, latest)),
-    [columns, units, editable],
+    () => columns.map((column, index) => definition(column, index, editable, { length, time }, latest)),
+    [columns, length, time, editable],
   )
 
   // Row objects change whenever anything about a row does, so a refresh after new rows is enough, except for notes

@@ -65,7 +65,10 @@ const materialColumns: SheetColumn[] = [
   { field: 'source', label: 'Source', editor: 'text', width: 220 },
 ]
 
-function zoneColumns(units: ProjectUnits, materials: readonly { id: string; name: string }[]): SheetColumn[] {
+function zoneColumns(
+  length: ProjectUnits['length'],
+  materials: readonly { id: string; name: string }[],
+): SheetColumn[] {
   return [
     { field: 'name', label: 'Zone', editor: 'text', width: 150 },
     {
@@ -88,7 +91,7 @@ function zoneColumns(units: ProjectUnits, materials: readonly { id: string; name
       field: 'polygon',
       label: 'Outline x y; x y; …',
       editor: 'vertices',
-      unitText: units.length,
+      unitText: length,
       blank: 'everywhere',
       note: 'Blank: everywhere. A zone further down replaces those above it where they overlap.',
     },
@@ -96,11 +99,11 @@ function zoneColumns(units: ProjectUnits, materials: readonly { id: string; name
   ]
 }
 
-function pointColumns(units: ProjectUnits): SheetColumn[] {
+function pointColumns(length: ProjectUnits['length']): SheetColumn[] {
   return [
     { field: 'name', label: 'Point', editor: 'text' },
-    { field: 'x', label: 'x', editor: 'number', unitText: units.length },
-    { field: 'y', label: 'y', editor: 'number', unitText: units.length },
+    { field: 'x', label: 'x', editor: 'number', unitText: length },
+    { field: 'y', label: 'y', editor: 'number', unitText: length },
     { field: 'source', label: 'Source', editor: 'text' },
   ]
 }
@@ -124,8 +127,8 @@ export function newGroundRow(kind: 'zone' | 'point', book: RowsEditor): Record<s
 export function groundColumns(book: RowsEditor, units: ProjectUnits): Record<string, SheetColumn[]> {
   return {
     material: materialColumns,
-    zone: zoneColumns(units, materialNames(book)),
-    point: pointColumns(units),
+    zone: zoneColumns(units.length, materialNames(book)),
+    point: pointColumns(units.length),
     'plan image': [{ field: 'opacity', label: 'Opacity of the plan', editor: 'number' }],
   }
 }
@@ -156,7 +159,8 @@ export function MaterialSheet({ book, units, shared, uses }: GroundSheetProps) {
 export function ZoneSheet({ book, units, shared, uses }: GroundSheetProps) {
   const materials = materialNames(book)
   const key = JSON.stringify(materials)
-  const columns = useMemo(() => zoneColumns(units, JSON.parse(key) as typeof materials), [units, key])
+  const { length } = units
+  const columns = useMemo(() => zoneColumns(length, JSON.parse(key) as typeof materials), [length, key])
   return (
     <Sheet
       label="Zones"
@@ -174,7 +178,8 @@ export function ZoneSheet({ book, units, shared, uses }: GroundSheetProps) {
 }
 
 export function PointSheet({ book, units, shared, uses }: GroundSheetProps) {
-  const columns = useMemo(() => pointColumns(units), [units])
+  const { length } = units
+  const columns = useMemo(() => pointColumns(length), [length])
   return (
     <Sheet
       label="Named points"

@@ -48,8 +48,7 @@ function isKind(...kinds: string[]) {
 }
 
 /** Columns of every kind of row of section 3. */
-export function waterColumns(units: ProjectUnits) {
-  const length = units.length
+export function waterColumns(length: ProjectUnits['length']) {
   return {
     well: [
       { field: 'name', label: 'Well', editor: 'text', width: 90 },
@@ -174,7 +173,8 @@ export function waterColumns(units: ProjectUnits) {
 
 /** Columns that stay the same object while the units do: the grid is built from them. */
 function useWaterColumns(units: ProjectUnits) {
-  return useMemo(() => waterColumns(units), [units])
+  const { length } = units
+  return useMemo(() => waterColumns(length), [length])
 }
 
 export type WaterKind = keyof typeof waterSchemas

@@ -12,7 +12,7 @@ import { Notice } from '~/components/notice'
 import { type Carried, Heading, SectionPage } from '~/components/section-page'
 import type { DrawnGeometry } from '~/ground/drawing/drawn-feature'
 import { pointFeatures, zoneFeatures } from '~/ground/drawn-features'
-import type { Material, Point, Zone } from '~/ground/ground'
+import { type Material, type PlanImage, type Point, planImageSchema, type Zone } from '~/ground/ground'
 import {
   groundColumns,
   groundSchemas,
@@ -21,6 +21,7 @@ import {
   PointSheet,
   ZoneSheet,
 } from '~/ground/ground-sheets'
+import { PlanImageForm } from '~/ground/plan-image-form'
 import { SiteDrawing } from '~/ground/site-drawing'
 import { permit } from '~/projects/guard.server'
 import { can } from '~/projects/permissions'
@@ -43,6 +44,9 @@ export async function loader({ context }: Route.LoaderArgs) {
     uses: await listUses(db, project.id, rowKinds),
   }
 }
+
+/** A project has one plan image: the id of its row is fixed, so that two people who add one meet in it. */
+const planImageRowId = 'plan-image'
 
 const anyRow = z.looseObject({})
 
@@ -80,6 +84,20 @@ export default function GroundPage({ loaderData }: Route.ComponentProps) {
     ],
     [book],
   )
+
+  const [planRow] = book.rows('plan image')
+  const planBody = planRow?.body
+  const planImage = useMemo(() => planImageSchema.safeParse(planBody).data ?? null, [planBody])
+  const fileAddress = (fileId: number) => `/projects/${project.id}/files/${fileId}`
+  const shownPlan = useMemo(
+    () => planImage && { ...planImage, url: `/projects/${project.id}/files/${planImage.fileId}` },
+    [planImage, project.id],
+  )
+
+  function savePlan(body: PlanImage) {
+    if (planRow) book.set(planRow.id, { ...body })
+    else book.apply([{ op: 'add', id: planImageRowId, kind: 'plan image', body: { ...body }, cells: {} }])
+  }
 
   function draw(kind: string, geometry: DrawnGeometry) {
     if (kind !== 'zone' && kind !== 'point') return
@@ -126,6 +144,7 @@ export default function GroundPage({ loaderData }: Route.ComponentProps) {
       <SiteDrawing
         features={features}
         {...shared}
+        planImage={shownPlan}
         lengthUnit={units.length}
         height={400}
         readOnly={!book.editable}
@@ -150,6 +169,25 @@ export default function GroundPage({ loaderData }: Route.ComponentProps) {
       <ZoneSheet {...sheet} />
       <Heading no="2.3">Named points</Heading>
       <PointSheet {...sheet} />
+      <div className="screen-only">
+        <Heading no="2.4" aside="a picture of the site under the drawing, placed by two known points">
+          Plan image
+        </Heading>
+        {planImage || book.editable ? (
+          <PlanImageForm
+            key={planRow ? planRow.id : 'none'}
+            planImage={planImage}
+            uploadAddress={`/projects/${project.id}/files`}
+            fileAddress={fileAddress}
+            lengthUnit={units.length}
+            readOnly={!book.editable}
+            onSave={savePlan}
+            onRemove={planRow && (() => book.apply([{ op: 'delete', id: planRow.id }]))}
+          />
+        ) : (
+          <p className="text-flint-2">No plan image.</p>
+        )}
+      </div>
     </SectionPage>
   )
 }

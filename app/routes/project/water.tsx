@@ -11,7 +11,7 @@ import { Notice } from '~/components/notice'
 import { type Carried, Heading, SectionPage } from '~/components/section-page'
 import type { DrawnFeature, DrawnGeometry } from '~/ground/drawing/drawn-feature'
 import { pointFeatures, zoneFeatures } from '~/ground/drawn-features'
-import type { Point, Zone } from '~/ground/ground'
+import type { PlanImage, Point, Zone } from '~/ground/ground'
 import { SiteDrawing } from '~/ground/site-drawing'
 import { permit } from '~/projects/guard.server'
 import { can } from '~/projects/permissions'
@@ -52,12 +52,13 @@ export async function loader({ context }: Route.LoaderArgs) {
     rows: rows.flat(),
     zones: await listRows<Zone>(db, project.id, 'zone'),
     points: await listRows<Point>(db, project.id, 'point'),
+    planImage: (await listRows<PlanImage>(db, project.id, 'plan image'))[0]?.body ?? null,
     uses: await listUses(db, project.id, rowKinds),
   }
 }
 
 export default function WaterPage({ loaderData }: Route.ComponentProps) {
-  const { project, member, mayCheck, status, rows, zones, points, uses } = loaderData
+  const { project, member, mayCheck, status, rows, zones, points, planImage, uses } = loaderData
   const { units } = project
   const book = useRows(rows, {
     projectId: project.id,
@@ -75,6 +76,11 @@ export default function WaterPage({ loaderData }: Route.ComponentProps) {
       ...waterFeatures(book),
     ],
     [book, zones, points],
+  )
+
+  const shownPlan = useMemo(
+    () => planImage && { ...planImage, url: `/projects/${project.id}/files/${planImage.fileId}` },
+    [planImage, project.id],
   )
 
   function draw(kind: string, geometry: DrawnGeometry) {
@@ -129,10 +135,11 @@ export default function WaterPage({ loaderData }: Route.ComponentProps) {
       references={references}
       carried={carriedForward(totals, units)}
     >
-      <ConflictPanel book={book} units={units} columns={waterColumns(units)} />
+      <ConflictPanel book={book} units={units} columns={waterColumns(units.length)} />
       <SiteDrawing
         features={features}
         {...shared}
+        planImage={shownPlan}
         lengthUnit={units.length}
         height={400}
         readOnly={!book.editable}
@@ -147,7 +154,7 @@ export default function WaterPage({ loaderData }: Route.ComponentProps) {
           takes it out of those too.
         </Notice>
       )}
-      <nav aria-label="Parts of this section" className="screen-only mb-3 flex flex-wrap gap-x-5 gap-y-1">
+      <nav aria-label="Parts of this section" className="screen-only my-4 flex flex-wrap gap-x-5 gap-y-1">
         {parts.map(({ no, title, rows: list }) => (
           <a key={no} href={`#s${no.replace('.', '-')}`}>
             <span className="mr-1 text-flint-2">{no}</span>
