@@ -99,7 +99,10 @@ export const access: Record<string, Access> = {
     get: only(team, 'shown'),
     post: only(readers, 'let through'),
   },
-  '/projects/:projectId/readings/instruments/:instrumentId': section,
+  '/projects/:projectId/readings/instruments/:instrumentId': {
+    get: only(team, 'shown'),
+    post: only(readers, 'let through'),
+  },
   '/projects/:projectId/fit': {
     get: only(team, 'shown'),
     form: 'run=:runId',
