@@ -39,12 +39,12 @@ export function useChartTheme(): ChartTheme {
   return theme
 }
 
-/** Canvas type falls back silently when a weight has not been loaded yet: wait for the three that charts use. */
+/** Canvas type falls back silently when a weight has not been loaded yet: wait for the two that charts use. */
 function useType(): boolean {
   const [ready, setReady] = useState(false)
   useEffect(() => {
     let here = true
-    const weights = [400, 600, 700].map((weight) => document.fonts.load(`${weight} 12px 'Source Sans 3'`))
+    const weights = [400, 600].map((weight) => document.fonts.load(`${weight} 12px 'Source Sans 3'`))
     Promise.allSettled(weights).then(() => here && setReady(true))
     return () => {
       here = false

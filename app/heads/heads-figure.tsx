@@ -118,7 +118,8 @@ export function HeadsFigure({ figure, shows, interval, selected, onNear }: Figur
 
   async function savePng() {
     const printed = { ...input, caption }
-    const options = { ...optionsFor(1000, 'print'), fontScale: 1.1, highestPlot: 900 }
+    const { selected: _, ...asShown } = optionsFor(1000, 'print')
+    const options = { ...asShown, fontScale: 1.1, highestPlot: 900 }
     const { height } = pictureLayout(printed, options)
     saveBlob(await pngOf(headsPicture(printed, options), 1000, Math.ceil(height)), `${figure.fileName}.png`)
   }

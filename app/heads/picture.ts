@@ -319,7 +319,7 @@ function contourLines(drawing: Drawing, contours: readonly Contour[]): { lines: 
           type(box.x, box.y, text, {
             fill: quiet ? palette.quiet : toHex(typeOn(fill)),
             size: 11.5 * size,
-            weight: index && !quiet ? 700 : 600,
+            weight: 600,
             align: 'center',
             angle: box.angle,
           }),
@@ -617,7 +617,7 @@ function cutEnds({ options, layout, palette }: Drawing): Shape[] {
     type(x, y, k === 0 ? 'A' : 'A′', {
       fill: palette.alarm,
       size: 12 * layout.size,
-      weight: 700,
+      weight: 600,
       align: 'center',
     }),
   ])
@@ -701,7 +701,7 @@ function scaleOf({ input, layout, palette }: Drawing): Shape[] {
       1.1,
       { lineJoin: 'miter' },
     ),
-    type(arrow, top + 33 * size, 'N', { fill: palette.ink, size: 12 * size, weight: 700, align: 'center' }),
+    type(arrow, top + 33 * size, 'N', { fill: palette.ink, size: 12 * size, weight: 600, align: 'center' }),
   ]
   const from = left + 36 * size
   const length = scaleBarLength(scale, Math.min(180 * size, width - 80 * size))
@@ -915,7 +915,7 @@ function watermarkOf({ layout, palette }: Drawing): Shape[] {
     type(plot.left + plot.width / 2, plot.top + plot.height / 2, text, {
       fill: palette.alarm,
       size,
-      weight: 700,
+      weight: 600,
       align: 'center',
       angle,
       opacity: 0.55,

@@ -34,7 +34,7 @@ interface TypeShape {
     opacity?: number
     fontFamily: string
     fontSize: number
-    fontWeight: 400 | 600 | 700
+    fontWeight: 400 | 600
     align: 'left' | 'center' | 'right'
     verticalAlign: 'top' | 'middle' | 'bottom'
   }
@@ -93,7 +93,7 @@ export function type(
   style: {
     fill: string
     size: number
-    weight?: 400 | 600 | 700
+    weight?: 400 | 600
     align?: 'left' | 'center' | 'right'
     vertical?: 'top' | 'middle' | 'bottom'
     angle?: number
