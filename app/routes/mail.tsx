@@ -27,7 +27,9 @@ export default function Mail({ loaderData }: Route.ComponentProps) {
     <Letterhead title="Received mail">
       <p className="mb-5 text-flint-2">
         The demo sends no mail to anybody: everything that it would send arrives here, the newest first.{' '}
-        <Link to={href('/sign-in')}>To the sign-in</Link>
+        <Link to={href('/sign-in')} className="underline">
+          To the sign-in
+        </Link>
       </p>
       {loaderData.mails.length === 0 && (
         <p className="border border-rule bg-chalk-2 px-3 py-2.5 text-flint-2">No mail has come yet.</p>

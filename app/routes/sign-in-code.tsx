@@ -62,7 +62,7 @@ export default function SignInCode({ loaderData, actionData }: Route.ComponentPr
       {loaderData.isDemo && (
         <Notice>
           The demo's mail arrives{' '}
-          <Link to={href('/mail')} target="_blank">
+          <Link to={href('/mail')} target="_blank" className="underline">
             here (in a new tab)
           </Link>
           .
@@ -83,7 +83,11 @@ export default function SignInCode({ loaderData, actionData }: Route.ComponentPr
         </Button>
       </Form>
       <p className="mt-8 text-flint-2">
-        Nothing came, or it ended? <Link to={href('/sign-in') + loaderData.search}>Ask for a new code</Link>.
+        Nothing came, or it ended?{' '}
+        <Link to={href('/sign-in') + loaderData.search} className="underline">
+          Ask for a new code
+        </Link>
+        .
       </p>
     </Letterhead>
   )

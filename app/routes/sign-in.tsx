@@ -64,8 +64,11 @@ export default function SignIn({ loaderData, actionData }: Route.ComponentProps)
         <section className="mt-10 border-t border-rule pt-5">
           <h2 className="text-[1.15rem] font-semibold">Demo</h2>
           <p className="mb-3 text-flint-2">
-            The demo's mail arrives <Link to={href('/mail')}>here</Link>. Choose whom to be, then read the
-            code there.
+            The demo's mail arrives{' '}
+            <Link to={href('/mail')} className="underline">
+              here
+            </Link>
+            . Choose whom to be, then read the code there.
           </p>
           <Form method="post">
             <ul>
