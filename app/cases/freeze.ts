@@ -1,7 +1,7 @@
 import type { Row } from '~/book/row'
 import type { SectionKey } from '~/book/sections'
 import type { Material, Point, Zone } from '~/ground/ground'
-import type { Project } from '~/projects/project'
+import { levelUnit, type Project } from '~/projects/project'
 import type * as File from '~/solver/model'
 import { convert, type Dimension, formatNumber, type Quantity, shownUnit } from '~/units'
 import type { Boundary, RechargeZone, Wall, Well } from '~/water/water'
@@ -141,7 +141,7 @@ export function freezeCase(inputs: CaseInputs, caseId: string): FreezeAnswer {
     place: {
       crs: `EPSG:${inputs.project.crsEpsg}`,
       origin: [0, 0],
-      verticalDatum: inputs.project.verticalDatum,
+      verticalDatum: levelUnit(inputs.project.units.length, inputs.project.verticalDatum),
     },
     units: { length: units.length, time: units.time },
     kind: 'plan',

@@ -55,10 +55,3 @@ export function listed(names: readonly string[]): string {
   if (names.length < 2) return names.join('')
   return `${names.slice(0, -1).join(', ')} and ${names.at(-1)}`
 }
-
-/** "m above site datum", whether the project says "above site datum" or only "site datum". */
-export function levelUnit(length: string, verticalDatum: string): string {
-  return /^(above|below|m |ft )/i.test(verticalDatum)
-    ? `${length} ${verticalDatum.replace(/^(m|ft) /i, '')}`
-    : `${length} above ${verticalDatum}`
-}

@@ -1,5 +1,4 @@
 import { expect, test } from 'vitest'
-import { levelUnit } from './account'
 import { headsCsv } from './heads-csv'
 
 const field = {
@@ -23,10 +22,4 @@ test('drawdown stands beside the head, and is blank where the other run has no h
     '3,25,4,0',
     '',
   ])
-})
-
-test('levels are said once to be above their datum, however the project words it', () => {
-  expect(levelUnit('m', 'above site datum')).toBe('m above site datum')
-  expect(levelUnit('m', 'm above Ordnance Datum Newlyn')).toBe('m above Ordnance Datum Newlyn')
-  expect(levelUnit('ft', 'NAVD 88')).toBe('ft above NAVD 88')
 })

@@ -14,6 +14,7 @@ import {
   pictureLayout,
   type ResidualMark,
 } from '~/heads/picture'
+import { levelUnit } from '~/projects/project'
 import { formatNumber } from '~/units'
 import type { GatheredContent } from './gathered'
 
@@ -63,7 +64,7 @@ function draw(
     ...drawn,
     features: featuresOf(content, drawn.field === 'residual'),
     unit: units.length,
-    datum: `${units.length} ${verticalDatum}`,
+    datum: levelUnit(units.length, verticalDatum),
     converged: content.run.result.converged,
   }
   const options = { width, theme: 'print' as const, fontScale: 1.25 }

@@ -1,6 +1,6 @@
 import { inProjectUnit } from '~/fit/fit'
 import { issuedContent, listPackages } from '~/packages/packages.server'
-import type { Project } from '~/projects/project'
+import { levelUnit, type Project } from '~/projects/project'
 import { lastReadings } from '~/readings/readings.server'
 import type { Database } from '~database/connection.server'
 import type { IssuedDocument, ProgressView } from './progress'
@@ -20,7 +20,7 @@ export async function progressView(db: Database, project: Project): Promise<Prog
       title: project.title,
       client: project.client,
       unit,
-      datum: project.verticalDatum,
+      levels: levelUnit(unit, project.verticalDatum),
       timeZone: project.timeZone,
     },
     stage: project.stage,

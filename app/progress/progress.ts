@@ -8,7 +8,8 @@ export interface ProgressView {
     title: string
     client: string
     unit: 'm' | 'ft'
-    datum: string
+    /** "m above site datum" */
+    levels: string
     timeZone: string
   }
   /** Where the work stands and what comes next, as the project manager wrote it for the client. */

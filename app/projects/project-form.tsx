@@ -20,13 +20,7 @@ const gridSystems = [
   ['2193', 'NZGD2000 / New Zealand Transverse Mercator'],
 ] as const
 
-const datums = [
-  'm above Ordnance Datum Newlyn',
-  'm above Malin Head',
-  'm above NAP',
-  'm above NHN',
-  'm above NAVD 88',
-]
+const datums = ['site datum', 'Ordnance Datum Newlyn', 'Malin Head', 'NAP', 'NHN', 'NAVD 88']
 
 /** The fields of a project's settings, for a new one and for the settings page. */
 export function ProjectFieldset({
@@ -73,7 +67,7 @@ export function ProjectFieldset({
         label="Vertical datum"
         maxLength={120}
         list={`${fields.verticalDatum.id}-list`}
-        hint="What levels and heads are measured from."
+        hint="What levels and heads are measured from, such as site datum."
       />
       <datalist id={`${fields.verticalDatum.id}-list`}>
         {datums.map((name) => (

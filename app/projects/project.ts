@@ -26,6 +26,16 @@ export function isTimeZone(name: string): boolean {
   }
 }
 
+/**
+ * "m above site datum": the unit of a level with what it is measured from, whether the project names the datum alone
+ * or says "above" as well.
+ */
+export function levelUnit(length: string, verticalDatum: string): string {
+  return /^(above|below|m |ft )/i.test(verticalDatum)
+    ? `${length} ${verticalDatum.replace(/^(m|ft) /i, '')}`
+    : `${length} above ${verticalDatum}`
+}
+
 const line = (max: number, message: string) =>
   z.string({ error: message }).trim().min(1, message).max(max, `At most ${max} characters.`)
 

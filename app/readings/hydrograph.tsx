@@ -2,8 +2,10 @@ import { useEffect, useRef, useState } from 'react'
 import { href } from 'react-router'
 import { LineChart } from '~/components/line-chart'
 import { localTime } from '~/components/local-time'
+import { Notice } from '~/components/notice'
 import { convert, formatNumber, type ProjectUnits } from '~/units'
-import type { Series } from './readings.server'
+import type { ReadingQuantity } from './reading'
+import type { Series, SeriesLine } from './readings.server'
 
 interface HydrographProps {
   projectId: number
@@ -11,7 +13,8 @@ interface HydrographProps {
   /** The whole record, thinned. */
   series: Series
   units: ProjectUnits
-  datum: string
+  /** "m above site datum" */
+  levels: string
   timeZone: string
   /** Minutes east of UTC of the site's clock in winter. */
   winterOffset: number
@@ -26,7 +29,7 @@ export function offsetName(minutes: number): string {
 }
 
 /** Points with a break after each gap, so that no line is drawn where nothing was read. */
-export function withBreaks(series: Pick<Series, 'points' | 'gaps'>): [number, number | null][] {
+export function withBreaks(series: Pick<SeriesLine, 'points' | 'gaps'>): [number, number | null][] {
   const gapsAfter = [...series.gaps].sort((a, b) => a - b)
   const broken: [number, number | null][] = []
   let next = 0
@@ -42,9 +45,26 @@ export function withBreaks(series: Pick<Series, 'points' | 'gaps'>): [number, nu
   return broken
 }
 
+const lineNames: Record<ReadingQuantity, string> = {
+  level: 'Levels',
+  dip: 'Dips',
+  'pressure head': 'Pressure heads',
+}
+const lineColours = ['mark', 'alarm', 'text'] as const
+
+/** Readings are there, and none gives a head: says why, instead of an empty drawing. */
+function NoHead({ series }: { series: Series }) {
+  const reasons = [...new Set(series.marks.map((mark) => mark.word))]
+  return (
+    <Notice tone="warn" title="No reading of this instrument gives a head yet">
+      {reasons.slice(0, 4).join(', ')}.
+    </Notice>
+  )
+}
+
 /** Heads of one instrument against time. Zooming in fetches what thinning left out. */
 export function Hydrograph(props: HydrographProps) {
-  const { projectId, instrument, units, datum, timeZone, winterOffset } = props
+  const { projectId, instrument, units, levels, timeZone, winterOffset } = props
   const [finer, setFiner] = useState<{ of: Series; from: number; to: number; series: Series } | null>(null)
   const timer = useRef<ReturnType<typeof setTimeout>>(undefined)
   const asking = useRef<AbortController>(null)
@@ -56,21 +76,19 @@ export function Hydrograph(props: HydrographProps) {
     [],
   )
   const whole = props.series
-  const instants = [
-    ...whole.points.map(([at]) => at),
+  const read = [
+    ...whole.lines.flatMap((line) => line.points.map(([at]) => at)),
     ...whole.marks.map((mark) => mark.at),
-    ...whole.levels.map((level) => level.at),
   ]
-  if (whole.total === 0 && whole.marks.length === 0) {
+  if (read.length === 0) {
     return (
       <p className="border border-rule bg-chalk-2 px-3 py-2.5 text-flint-2">
         There is no reading to draw yet.
       </p>
     )
   }
-  // Reference levels surveyed long before the first reading would squeeze the record together.
-  const read = [...whole.points.map(([at]) => at), ...whole.marks.map((mark) => mark.at)]
-  const span = { from: Math.min(...read), to: Math.max(...read, Math.min(...instants) + 1) }
+  if (whole.lines.length === 0) return <NoHead series={whole} />
+  const span = { from: Math.min(...read), to: Math.max(Math.max(...read), Math.min(...read) + 3_600_000) }
   const loaded = finer && finer.of === whole ? finer : null
   const clock = localTime(timeZone)
   const inUnit = (metres: number) => convert({ value: metres, unit: 'm' }, units.length)
@@ -99,24 +117,28 @@ export function Hydrograph(props: HydrographProps) {
 
   function zoom(from: number, to: number) {
     clearTimeout(timer.current)
-    if (whole.points.length >= whole.total) return
+    if (whole.lines.every((line) => line.points.length >= line.total)) return
     timer.current = setTimeout(() => void fetchFiner(from, to), 350)
   }
 
-  const points = loaded ? spliced(withBreaks(whole), withBreaks(loaded.series), loaded) : withBreaks(whole)
+  const lines = whole.lines.map((line, index) => {
+    const piece = loaded?.series.lines.find((one) => one.quantity === line.quantity)
+    const points = loaded && piece ? spliced(withBreaks(line), withBreaks(piece), loaded) : withBreaks(line)
+    return {
+      name: lineNames[line.quantity],
+      colour: lineColours[index] ?? 'quiet',
+      // Hand dips beside a logger check it: points, not a second line.
+      pointsOnly: line.quantity === 'dip' && whole.lines.length > 1,
+      dots: line.total <= 120,
+      points: points.map(([at, head]) => [at, head === null ? null : inUnit(head)] as const),
+    }
+  })
   const dividers = whole.levels.filter((level) => level.at >= span.from && level.at <= span.to)
   return (
     <LineChart
       label={describe(instrument.name, whole, units, clock.day)}
       height={380}
-      lines={[
-        {
-          name: 'Head',
-          colour: 'mark',
-          dots: whole.total <= 120,
-          points: points.map(([at, head]) => [at, head === null ? null : inUnit(head)]),
-        },
-      ]}
+      lines={lines}
       marks={whole.marks.map((mark) => ({
         at: mark.at,
         value: mark.head === null ? null : inUnit(mark.head),
@@ -127,7 +149,7 @@ export function Hydrograph(props: HydrographProps) {
         at: level.at,
         word: `${level.levelled} ${formatNumber(inUnit(level.level), 2)}`,
       }))}
-      valueName={`Head (${units.length} above ${datum})`}
+      valueName={`Head (${levels})`}
       decimals={2}
       span={span}
       clockOffset={winterOffset}
@@ -148,9 +170,10 @@ function spliced(
 }
 
 function describe(name: string, series: Series, units: ProjectUnits, day: (iso: string) => string): string {
-  const heads = series.points.map(([, head]) => convert({ value: head, unit: 'm' }, units.length))
-  const [first, last] = [series.points[0], series.points.at(-1)]
-  if (!first || !last) return `Hydrograph of ${name}: no head, ${series.marks.length} readings with a status.`
+  const points = series.lines.flatMap((line) => line.points)
+  const total = series.lines.reduce((sum, line) => sum + line.total, 0)
+  const heads = points.map(([, head]) => convert({ value: head, unit: 'm' }, units.length))
+  const instants = points.map(([at]) => at)
   const iso = (at: number) => day(new Date(at).toISOString())
-  return `Hydrograph of ${name}: ${series.total} heads from ${iso(first[0])} to ${iso(last[0])}, between ${formatNumber(Math.min(...heads), 2)} and ${formatNumber(Math.max(...heads), 2)} ${units.length}.`
+  return `Hydrograph of ${name}: ${total} heads from ${iso(Math.min(...instants))} to ${iso(Math.max(...instants))}, between ${formatNumber(Math.min(...heads), 2)} and ${formatNumber(Math.max(...heads), 2)} ${units.length}.`
 }

@@ -66,7 +66,7 @@ export function ImportBusy({
       <progress
         className="my-1.5 h-2 w-full max-w-lg accent-bourne"
         max={100}
-        value={progress?.percent}
+        value={progress?.percent ?? 0}
         aria-label={title}
       />
       <p className="text-[0.93rem] text-flint-2">

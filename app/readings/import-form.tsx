@@ -425,7 +425,7 @@ function TimeChoices(props: FormProps) {
         hint="Which clock these times were read from. Stored in UTC."
       >
         <option value="">choose …</option>
-        <option value="site">the site’s clock, {siteZone}, with its changes</option>
+        <option value="site">{siteZone}, with its clock changes</option>
         <option value="offset">a clock without changes, so many hours from UTC</option>
         <option value="utc">UTC</option>
         <option value="written">as written: each time carries its offset</option>

@@ -176,10 +176,14 @@ export function UnknownNames({
   return (
     <Notice
       tone="warn"
-      title={`${preview.unknownNames.length} names in the file are no instrument of this project`}
+      title={
+        preview.unknownNames.length === 1
+          ? 'One name in the file is no instrument of this project'
+          : `${preview.unknownNames.length} names in the file are no instrument of this project`
+      }
     >
       <p className="mb-2">
-        Their rows are refused until you say what they are
+        Their rows are refused until you say what is meant
         {addsPlaces ? '.' : '. To add them as instruments, give the columns of their coordinates above.'}
       </p>
       <ul className="grid gap-1.5">

@@ -129,7 +129,8 @@ describe('An import', () => {
     expect(newest).toMatchObject({ entered: 'dry', fileRow: 4, file: 'dips.csv', reference: null })
     expect(second).toMatchObject({ entered: '4.3', fileRow: 3, reference: { level: { value: 102.3 } } })
     const series = await seriesOf(db, project.id, id, { maxPoints: 100 })
-    expect(series.points.map(([, head]) => head)).toEqual([102.3 - 4.25, 102.3 - 4.3])
+    expect(series.lines).toMatchObject([{ quantity: 'dip', total: 2, gaps: [] }])
+    expect(series.lines[0]?.points.map(([, head]) => head)).toEqual([102.3 - 4.25, 102.3 - 4.3])
     expect(series.marks).toMatchObject([{ word: 'dry', head: null }])
   })
 
@@ -425,8 +426,8 @@ test('100 000 rows go through on a thread with progress, and the same file again
     identical: 100_000,
   })
   const series = await seriesOf(db, project.id, ids[0] ?? '', { maxPoints: 1000 })
-  expect(series.total).toBe(50_000)
-  expect(series.points.length).toBeLessThanOrEqual(1000)
+  expect(series.lines[0]?.total).toBe(50_000)
+  expect(series.lines[0]?.points.length).toBeLessThanOrEqual(1000)
   expect(await settingsOfSameMake(db, project.id, dips.header)).toMatchObject({ file: 'logger.csv' })
 })
 

@@ -1,10 +1,12 @@
 import { useMemo } from 'react'
+import { placeSchemas } from '~/book/field'
 import { nextName } from '~/book/next-name'
 import type { RowsEditor } from '~/book/use-rows'
 import { Sheet, type SheetProps, type SheetUse } from '~/components/sheet'
 import type { SheetColumn } from '~/components/sheet-cells'
+import type { DrawnFeature } from '~/ground/drawing/drawn-feature'
 import type { ProjectUnits } from '~/units'
-import { instrumentKinds, instrumentSchema } from './instrument'
+import { type Instrument, instrumentKinds, instrumentSchema } from './instrument'
 
 export const readingSchemas = { instrument: instrumentSchema }
 
@@ -72,6 +74,22 @@ export function instrumentColumns(
   ]
 }
 
+/** What an instrument starts with, whether it comes from the sheet or from the drawing. */
+export function newInstrument(book: RowsEditor): Record<string, unknown> {
+  const names = book.rows('instrument').map((row) => String(row.body.name ?? ''))
+  return { name: nextName(names, 'P'), kind: 'standpipe', outOfService: false }
+}
+
+/** Instruments for the drawing, as soon as they have a place. */
+export function instrumentFeatures(book: RowsEditor): DrawnFeature[] {
+  return book.placed<Instrument>('instrument', placeSchemas.point).map(({ id, body }) => ({
+    id,
+    kind: 'instrument',
+    label: body.name,
+    geometry: { type: 'point', at: [body.x, body.y] },
+  }))
+}
+
 export function InstrumentSheet({
   book,
   units,
@@ -92,14 +110,7 @@ export function InstrumentSheet({
       units={units}
       columns={columns}
       {...book.sheet('instrument')}
-      newRow={() => ({
-        name: nextName(
-          book.rows('instrument').map((row) => String(row.body.name ?? '')),
-          'P',
-        ),
-        kind: 'standpipe',
-        outOfService: false,
-      })}
+      newRow={() => newInstrument(book)}
       usedBy={(id) => uses[id] ?? []}
       empty="No instrument yet. Add one, paste a block from a spreadsheet, or let a survey file bring them."
       tall={10}

@@ -1,7 +1,7 @@
 import { href, Link } from 'react-router'
 import { DataTable } from '~/components/data-table'
 import { localTime } from '~/components/local-time'
-import { convert, formatNumber, type ProjectUnits, type UnitName, unitLabel } from '~/units'
+import { convert, formatNumber, type ProjectUnits } from '~/units'
 import { enteredText } from './reading'
 import type { LastReading } from './readings.server'
 import type { SeriesPoint } from './thin'

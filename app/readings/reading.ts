@@ -5,9 +5,9 @@ export const quantities = ['dip', 'level', 'pressure head'] as const
 export type ReadingQuantity = (typeof quantities)[number]
 
 export const quantityWords: Record<ReadingQuantity, string> = {
-  dip: 'dip: depth of the water below the reference level',
-  level: 'level: the water level above the vertical datum',
-  'pressure head': 'pressure head: the water above the sensor',
+  dip: 'dip below the reference level',
+  level: 'level above the vertical datum',
+  'pressure head': 'pressure head above the sensor',
 }
 
 /** Units that a quantity may be read in; a pressure counts as metres of water. */

@@ -277,13 +277,20 @@ interface LastRow extends ReadingRow {
   quality: Quality
 }
 
-export interface Series {
+/** Heads that came from one quantity: a logger's levels are one line, the dips that check it another. */
+export interface SeriesLine {
+  quantity: ReadingQuantity
   /** Heads in metres above the vertical datum, thinned. */
   points: SeriesPoint[]
   /** Readings with a head, before thinning. */
   total: number
   /** Instants after which the line breaks, because readings are missing. */
   gaps: number[]
+}
+
+export interface Series {
+  /** The one with most readings first. */
+  lines: SeriesLine[]
   /** Readings that give no head, or a number with a caution. */
   marks: { at: number; word: string; entered: string; head: number | null }[]
   /** Changes of a reference level within the span, with its level in metres. */
@@ -292,7 +299,7 @@ export interface Series {
 
 const mostMarks = 400
 
-/** The hydrograph of one instrument, thinned to `maxPoints` without losing a peak or a trough. */
+/** The hydrograph of one instrument, each line thinned to `maxPoints` without losing a peak or a trough. */
 export async function seriesOf(
   db: Database,
   projectId: number,
@@ -309,12 +316,16 @@ export async function seriesOf(
     .select('r.instrument_id', 'r.quantity', 'r.taken_at', 'r.value', 'r.operator', 'r.status', 'r.entered')
   if (span.from) query.where('r.taken_at', '>=', span.from)
   if (span.to) query.where('r.taken_at', '<=', span.to)
-  const points: SeriesPoint[] = []
+  const heads = new Map<ReadingQuantity, SeriesPoint[]>()
   const marks: Series['marks'] = []
   for await (const row of query.stream() as AsyncIterable<ReadingRow & { entered: string }>) {
     const { head, why } = headOf(asStored(row), history)
     const at = row.taken_at.getTime()
-    if (head !== null) points.push([at, head])
+    if (head !== null) {
+      const points = heads.get(row.quantity) ?? []
+      heads.set(row.quantity, points)
+      points.push([at, head])
+    }
     const word =
       row.status ?? (head === null ? (row.operator ? `${row.operator} ${row.entered}` : why) : null)
     if (word !== null && marks.length < mostMarks) marks.push({ at, word, entered: row.entered, head })
@@ -323,9 +334,14 @@ export async function seriesOf(
   const inSpan = (at: number) =>
     (!span.from || at >= span.from.getTime()) && (!span.to || at <= span.to.getTime())
   return {
-    points: thin(points, span.maxPoints),
-    total: points.length,
-    gaps: gaps(points),
+    lines: [...heads]
+      .map(([quantity, points]) => ({
+        quantity,
+        points: thin(points, span.maxPoints),
+        total: points.length,
+        gaps: gaps(points),
+      }))
+      .sort((a, b) => b.total - a.total),
     marks,
     levels: steps
       .filter((step) => inSpan(step.from))

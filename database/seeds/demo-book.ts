@@ -19,7 +19,7 @@ export const demoProject = {
   client: 'Quayside Water',
   calcReference: 'TQ-GW-014',
   crsEpsg: 27700,
-  verticalDatum: 'above site datum',
+  verticalDatum: 'site datum',
   timeZone: 'Europe/London',
   lengthUnit: 'm',
   timeUnit: 'd',

@@ -17,6 +17,7 @@ import { featuresOf } from '~/heads/features'
 import { findRun, isStale, listRuns } from '~/heads/runs.server'
 import { idFrom, membershipContext, permit } from '~/projects/guard.server'
 import { can } from '~/projects/permissions'
+import { levelUnit } from '~/projects/project'
 import { formatNumber } from '~/units'
 import { database } from '~database/connection.server'
 import type { Route } from './+types/fit'
@@ -268,8 +269,8 @@ export default function FitPage({ loaderData, actionData, params }: Route.Compon
                   <OneToOneFigure points={compared} unit={unit} />
                 </Suspense>
                 <figcaption className="pt-1.5 text-[0.87rem] text-flint-2">
-                  Fig. 7.1 Modelled against measured heads, {unit} {project.verticalDatum}. On the dashed line
-                  they agree; above it the model is too high.
+                  Fig. 7.1 Modelled against measured heads, {levelUnit(unit, project.verticalDatum)}. On the
+                  dashed line they agree; above it the model is too high.
                 </figcaption>
               </figure>
               <figure className="mt-7 min-w-0">
@@ -284,7 +285,7 @@ export default function FitPage({ loaderData, actionData, params }: Route.Compon
                     features={run.features}
                     converged={run.converged}
                     unit={unit}
-                    datum={`${unit} ${project.verticalDatum}`}
+                    datum={levelUnit(unit, project.verticalDatum)}
                   />
                 </Suspense>
                 <figcaption className="pt-1.5 text-[0.87rem] text-flint-2">

@@ -12,6 +12,7 @@ import { type Carried, Heading, SectionPage } from '~/components/section-page'
 import { enteredNumber } from '~/components/sheet-cells'
 import { notFound, permit } from '~/projects/guard.server'
 import { can } from '~/projects/permissions'
+import { levelUnit } from '~/projects/project'
 import { Hydrograph } from '~/readings/hydrograph'
 import type { Instrument, ReferenceLevel } from '~/readings/instrument'
 import { ageText } from '~/readings/instrument-table'
@@ -23,7 +24,7 @@ import { convert, formatNumber, formatQuantity, type Quantity, type UnitName, un
 import { database } from '~database/connection.server'
 import type { Route } from './+types/instrument'
 
-const shownReadings = 60
+const shownReadings = 30
 
 export async function loader({ context, params }: Route.LoaderArgs) {
   const { project, member } = permit(context, 'view', 'book')
@@ -116,7 +117,13 @@ export default function InstrumentPage({ loaderData, actionData }: Route.Compone
       carried={carriedForward(loaderData)}
     >
       {failure && <Notice tone="alarm" title={failure} live />}
-      <Heading no="6.2" aside={`${formatNumber(series.total, 0)} heads`}>
+      <Heading
+        no="6.2"
+        aside={`${formatNumber(
+          series.lines.reduce((sum, line) => sum + line.total, 0),
+          0,
+        )} heads`}
+      >
         Hydrograph of {row.body.name}
       </Heading>
       <Hydrograph
@@ -124,7 +131,7 @@ export default function InstrumentPage({ loaderData, actionData }: Route.Compone
         instrument={{ id: row.id, name: row.body.name }}
         series={series}
         units={units}
-        datum={project.verticalDatum}
+        levels={levelUnit(project.units.length, project.verticalDatum)}
         timeZone={project.timeZone}
         winterOffset={winterOffset}
       />
@@ -159,7 +166,7 @@ function factsOf({ row, project }: Loaded) {
     ...(body.serial ? [{ no: 'Serial', text: body.serial }] : []),
     ...(body.installedOn ? [{ no: 'Installed', text: body.installedOn }] : []),
     ...(body.source ? [{ no: 'Source', text: body.source }] : []),
-    { no: 'Levels', text: `above ${project.verticalDatum}` },
+    { no: 'Levels', text: levelUnit(project.units.length, project.verticalDatum) },
   ]
 }
 
@@ -188,7 +195,7 @@ function carriedForward({ readings, series, project, now }: Loaded): Carried[] {
   } else if (last && last.head === null) {
     carried.push({ label: 'Last reading', value: 'no head', note: last.why, state: 'warn' })
   }
-  const heads = series.points.map(([, head]) => head)
+  const heads = series.lines.flatMap((line) => line.points.map(([, head]) => head))
   if (heads.length > 1) {
     const [low, high] = [Math.min(...heads), Math.max(...heads)]
     carried.push({ label: 'Lowest and highest', value: `${metres(low)} – ${metres(high)}`, unit })

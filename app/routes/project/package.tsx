@@ -1,4 +1,4 @@
-import { getFormProps, useForm } from '@conform-to/react'
+import { type SubmissionResult, useForm } from '@conform-to/react'
 import { parseWithZod } from '@conform-to/zod/v4'
 import { useEffect, useState } from 'react'
 import { data, Form, href, useNavigation, useRevalidator } from 'react-router'
@@ -9,9 +9,9 @@ import { DataTable } from '~/components/data-table'
 import { Field, SelectField } from '~/components/field'
 import { fieldProps } from '~/components/form-field'
 import { FormMessage } from '~/components/form-message'
+import { localTime } from '~/components/local-time'
 import { Caution, Notice } from '~/components/notice'
 import { Heading, SectionPage } from '~/components/section-page'
-import { localTime } from '~/components/local-time'
 import { listRuns } from '~/heads/runs.server'
 import { newPackageSchema, type PackageLine, statusMeaning } from '~/packages/package'
 import {
@@ -59,7 +59,12 @@ export async function loader({ context }: Route.LoaderArgs) {
 }
 
 function isOpen(p: Pick<PackageLine, 'status'>): boolean {
-  return p.status === 'draft' || p.status === 'shared for check' || p.status === 'checked' || p.status === 'approved'
+  return (
+    p.status === 'draft' ||
+    p.status === 'shared for check' ||
+    p.status === 'checked' ||
+    p.status === 'approved'
+  )
 }
 
 export async function action({ context, request }: Route.ActionArgs) {
@@ -85,19 +90,34 @@ export async function action({ context, request }: Route.ActionArgs) {
     }
     case 'gather':
       permit(context, 'make', 'package')
-      return answer(await gatherAgain(db, project, packageId(), member.userId), 'The book was gathered again.')
+      return answer(
+        await gatherAgain(db, project, packageId(), member.userId),
+        'The book was gathered again.',
+      )
     case 'withdraw':
       permit(context, 'make', 'package')
-      return answer(await withdrawPackage(db, project, packageId(), member.userId), 'The revision is withdrawn.')
+      return answer(
+        await withdrawPackage(db, project, packageId(), member.userId),
+        'The revision is withdrawn.',
+      )
     case 'sign originator':
       permit(context, 'sign', 'as originator')
-      return answer(await signPackage(db, project, packageId(), 'originator', member.userId), 'Signed, and shared for check.')
+      return answer(
+        await signPackage(db, project, packageId(), 'originator', member.userId),
+        'Signed, and shared for check.',
+      )
     case 'sign checker':
       permit(context, 'sign', 'as checker')
-      return answer(await signPackage(db, project, packageId(), 'checker', member.userId), 'Signed as checker.')
+      return answer(
+        await signPackage(db, project, packageId(), 'checker', member.userId),
+        'Signed as checker.',
+      )
     case 'sign approver':
       permit(context, 'sign', 'as approver')
-      return answer(await signPackage(db, project, packageId(), 'approver', member.userId), 'Signed as approver.')
+      return answer(
+        await signPackage(db, project, packageId(), 'approver', member.userId),
+        'Signed as approver.',
+      )
     case 'issue':
       permit(context, 'issue', 'package')
       return answer(
@@ -116,14 +136,25 @@ export default function PackagePage({ loaderData, actionData, params }: Route.Co
   const issued = packages.find((p) => p.status === 'issued')
   const reopened = states.filter((s) => s.state === 'changed since check')
   const unchecked = states.filter((s) => s.key !== 'package' && s.state === 'drafted')
-  const pdf = (p: PackageLine) => href('/projects/:projectId/packages/:packageId/pdf', { projectId: params.projectId, packageId: String(p.id) })
+  const pdf = (p: PackageLine) =>
+    href('/projects/:projectId/packages/:packageId/pdf', {
+      projectId: params.projectId,
+      packageId: String(p.id),
+    })
   return (
     <SectionPage
       number={9}
       title="Package"
       references={packages
         .filter((p) => p.inputSha256)
-        .map((p) => ({ no: p.revision, text: <>input {p.inputSha256?.slice(0, 12)}…, run {p.runNumber}</> }))}
+        .map((p) => ({
+          no: p.revision,
+          text: (
+            <>
+              input {p.inputSha256?.slice(0, 12)}…, run {p.runNumber}
+            </>
+          ),
+        }))}
       carried={[
         {
           label: 'Latest issued',
@@ -135,7 +166,12 @@ export default function PackagePage({ loaderData, actionData, params }: Route.Co
         {
           label: 'Sections to check',
           value: String(reopened.length + unchecked.length),
-          note: reopened.length > 0 ? `${reopened.length} changed since check` : unchecked.length > 0 ? 'not checked yet' : 'all checked',
+          note:
+            reopened.length > 0
+              ? `${reopened.length} changed since check`
+              : unchecked.length > 0
+                ? 'not checked yet'
+                : 'all checked',
           state: reopened.length > 0 ? 'alarm' : unchecked.length > 0 ? 'warn' : 'good',
         },
       ]}
@@ -146,13 +182,24 @@ export default function PackagePage({ loaderData, actionData, params }: Route.Co
 
       <Heading no="9.1">Revision in hand</Heading>
       {open ? (
-        <OpenRevision key={open.id} line={open} moved={moved} may={may} pdf={pdf(open)} params={params} time={time} />
+        <OpenRevision
+          key={open.id}
+          line={open}
+          moved={moved}
+          may={may}
+          pdf={pdf(open)}
+          params={params}
+          time={time}
+        />
       ) : (
         <p className="text-flint-2">No revision is open.{may.make ? ' Make the next one below.' : ''}</p>
       )}
 
       {may.make && !open && (
-        <NewRevision runs={runs} result={actionData && 'submission' in actionData ? actionData.submission : undefined} />
+        <NewRevision
+          runs={runs}
+          result={actionData && 'submission' in actionData ? actionData.submission : undefined}
+        />
       )}
 
       <Heading no="9.2">Revisions</Heading>
@@ -217,7 +264,13 @@ function OpenRevision({
   const drawing = useDrawing(params.projectId, line)
   const busy = useNavigation().state !== 'idle'
   const next =
-    line.status === 'draft' ? 'originator' : line.status === 'shared for check' ? 'checker' : line.status === 'checked' ? 'approver' : null
+    line.status === 'draft'
+      ? 'originator'
+      : line.status === 'shared for check'
+        ? 'checker'
+        : line.status === 'checked'
+          ? 'approver'
+          : null
   const person = { originator: 'the originator', checker: 'the checker', approver: 'the approver' } as const
   return (
     <div className="border border-rule px-4 py-3">
@@ -269,12 +322,24 @@ function OpenRevision({
         <Form method="post" className="contents">
           <input type="hidden" name="packageId" value={line.id} />
           {next && may.sign[next] && (
-            <Button type="submit" look="primary" name="intent" value={`sign ${next}`} disabled={busy || moved || drawing.active}>
+            <Button
+              type="submit"
+              look="primary"
+              name="intent"
+              value={`sign ${next}`}
+              disabled={busy || moved || drawing.active}
+            >
               Sign as {next}
             </Button>
           )}
           {may.issue && line.status === 'approved' && (
-            <Button type="submit" look="primary" name="intent" value="issue" disabled={busy || moved || drawing.active}>
+            <Button
+              type="submit"
+              look="primary"
+              name="intent"
+              value="issue"
+              disabled={busy || moved || drawing.active}
+            >
               Issue {line.revision}
             </Button>
           )}
@@ -295,9 +360,13 @@ function OpenRevision({
           )}
         </Form>
       </div>
-      {next && !may.sign[next] && <p className="mt-3 text-[0.9rem] text-flint-2">The next move is with {person[next]}.</p>}
+      {next && !may.sign[next] && (
+        <p className="mt-3 text-[0.9rem] text-flint-2">The next move is with {person[next]}.</p>
+      )}
       {line.status === 'approved' && !may.issue && (
-        <p className="mt-3 text-[0.9rem] text-flint-2">The next move is with the project manager, who issues it.</p>
+        <p className="mt-3 text-[0.9rem] text-flint-2">
+          The next move is with the project manager, who issues it.
+        </p>
       )}
       {line.inputSha256 && (
         <p className="mt-3 text-[0.85rem] break-all text-flint-2">
@@ -310,29 +379,33 @@ function OpenRevision({
 
 /** Asks every second while the PDF is being drawn, then reloads the page's data. */
 function useDrawing(projectId: string, line: PackageLine) {
-  const revalidator = useRevalidator()
-  const [state, setState] = useState<{ active: boolean; failed: string | null }>({ active: line.jobId !== null, failed: null })
+  const { revalidate } = useRevalidator()
+  const [state, setState] = useState<{ active: boolean; failed: string | null }>({
+    active: line.drawing,
+    failed: null,
+  })
   useEffect(() => {
-    if (line.jobId === null) return
+    if (!line.drawing) {
+      setState((before) => ({ ...before, active: false }))
+      return
+    }
     let over = false
     const url = href('/projects/:projectId/packages/:packageId', { projectId, packageId: String(line.id) })
-    async function look(first: boolean) {
+    async function look() {
       const response = await fetch(url)
       if (over || !response.ok) return
       const answer = (await response.json()) as { drawing: boolean; failed: string | null }
       if (over) return
       setState({ active: answer.drawing, failed: answer.failed })
-      if (answer.drawing) setTimeout(() => void look(false), 1000)
-      else if (!first) void revalidator.revalidate()
+      if (answer.drawing) setTimeout(() => void look(), 1000)
+      else void revalidate()
     }
     setState((before) => ({ ...before, active: true }))
-    void look(false)
+    void look()
     return () => {
       over = true
     }
-    // The revalidator is a new object on every render; the job is what starts a round of asking.
-    // biome-ignore lint/correctness/useExhaustiveDependencies: see above
-  }, [projectId, line.id, line.jobId])
+  }, [projectId, line.id, line.drawing, revalidate])
   return state
 }
 
@@ -341,7 +414,7 @@ function NewRevision({
   result,
 }: {
   runs: { id: number; number: number; caseName: string; stale: boolean }[]
-  result: Parameters<typeof useForm>[0]['lastResult']
+  result: SubmissionResult<string[]> | undefined
 }) {
   const [form, fields] = useForm({
     lastResult: result,
@@ -350,11 +423,21 @@ function NewRevision({
   })
   const busy = useNavigation().state !== 'idle'
   if (runs.length === 0) {
-    return <Notice tone="warn" title="A package needs a run that has converged: run a case in section 4 first." />
+    return (
+      <Notice tone="warn" title="A package needs a run that has converged: run a case in section 4 first." />
+    )
   }
   return (
-    <Form method="post" {...getFormProps(form)} className="mt-4 grid max-w-2xl gap-4 sm:grid-cols-2">
-      {form.errors && <Notice tone="alarm" title={form.errors.join(' ')} live />}
+    <Form
+      method="post"
+      id={form.id}
+      onSubmit={form.onSubmit}
+      noValidate
+      className="mt-4 grid max-w-2xl gap-4 sm:grid-cols-2"
+    >
+      <div className="sm:col-span-2 empty:hidden">
+        <FormMessage result={result} />
+      </div>
       <SelectField label="Run of record" key={fields.runId.key} {...fieldProps(fields.runId)}>
         {runs.map((run) => (
           <option key={run.id} value={run.id}>
@@ -363,7 +446,11 @@ function NewRevision({
           </option>
         ))}
       </SelectField>
-      <SelectField label="Drawdown against" key={fields.againstRunId.key} {...fieldProps(fields.againstRunId)}>
+      <SelectField
+        label="Drawdown against"
+        key={fields.againstRunId.key}
+        {...fieldProps(fields.againstRunId)}
+      >
         <option value="">no other run</option>
         {runs.map((run) => (
           <option key={run.id} value={run.id}>
@@ -378,7 +465,12 @@ function NewRevision({
         key={fields.fitDate.key}
         {...fieldProps(fields.fitDate)}
       />
-      <Field label="Issued for" key={fields.purpose.key} {...fieldProps(fields.purpose)} placeholder="Approval of the dewatering scheme" />
+      <Field
+        label="Issued for"
+        key={fields.purpose.key}
+        {...fieldProps(fields.purpose)}
+        placeholder="Approval of the dewatering scheme"
+      />
       <div className="sm:col-span-2">
         <Field label="What is new in this revision" key={fields.reason.key} {...fieldProps(fields.reason)} />
       </div>

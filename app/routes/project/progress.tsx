@@ -205,9 +205,8 @@ export default function ProgressPage({ loaderData, actionData, params }: Route.C
         ]}
       />
       <p className="mt-2 text-[0.87rem] text-flint-2">
-        Levels in {project.unit} {project.datum}, times of the site ({project.timeZone}). Predicted: the
-        steady state of the latest issued package; “as predicted” means within {formatNumber(near, 1)}{' '}
-        {project.unit}.
+        Levels in {project.levels}, times of the site ({project.timeZone}). Predicted: the steady state of the
+        latest issued package; “as predicted” means within {formatNumber(near, 1)} {project.unit}.
       </p>
       {view.fit && (
         <p className="mt-3">

@@ -1,4 +1,5 @@
-import { useState } from 'react'
+import { useMemo, useState } from 'react'
+import { href } from 'react-router'
 import { CheckButton } from '~/book/check-button'
 import { ConflictPanel } from '~/book/conflict-panel'
 import { referenceLines } from '~/book/references'
@@ -8,13 +9,23 @@ import { sectionStatus } from '~/book/sections.server'
 import { useRows } from '~/book/use-rows'
 import { localTime } from '~/components/local-time'
 import { type Carried, Heading, SectionPage } from '~/components/section-page'
-import type { Point } from '~/ground/ground'
+import type { DrawnGeometry } from '~/ground/drawing/drawn-feature'
+import { pointFeatures } from '~/ground/drawn-features'
+import type { PlanImage, Point } from '~/ground/ground'
+import { SiteDrawing } from '~/ground/site-drawing'
 import { permit } from '~/projects/guard.server'
 import { can } from '~/projects/permissions'
+import { levelUnit } from '~/projects/project'
 import { ImportList } from '~/readings/import-list'
 import { listImports } from '~/readings/imports.server'
 import type { Instrument } from '~/readings/instrument'
-import { InstrumentSheet, instrumentColumns, readingSchemas } from '~/readings/instrument-sheet'
+import {
+  InstrumentSheet,
+  instrumentColumns,
+  instrumentFeatures,
+  newInstrument,
+  readingSchemas,
+} from '~/readings/instrument-sheet'
 import { InstrumentTable } from '~/readings/instrument-table'
 import { coursesOf, currentReferenceLevels, lastReadings } from '~/readings/readings.server'
 import { Upload } from '~/readings/upload'
@@ -43,7 +54,8 @@ export async function loader({ context }: Route.LoaderArgs) {
     mayCheck: can(member, 'check', 'section'),
     status: await sectionStatus(db, project.id, 'readings'),
     rows: await listRows<Instrument>(db, project.id, 'instrument'),
-    points: points.map((row) => ({ id: row.id, name: row.body.name })),
+    points,
+    planImage: (await listRows<PlanImage>(db, project.id, 'plan image'))[0]?.body ?? null,
     uses: await listUses(db, project.id, rowKinds),
     now: now.toISOString(),
     lines: last.map((line) => ({
@@ -69,7 +81,8 @@ export async function loader({ context }: Route.LoaderArgs) {
 }
 
 export default function ReadingsPage({ loaderData }: Route.ComponentProps) {
-  const { project, member, mayImport, mayCheck, status, rows, points, uses, now, lines, imports } = loaderData
+  const { project, member, mayImport, mayCheck, status, rows, points, uses, now, lines, imports, planImage } =
+    loaderData
   const { units, timeZone } = project
   const book = useRows(rows, {
     projectId: project.id,
@@ -79,6 +92,38 @@ export default function ReadingsPage({ loaderData }: Route.ComponentProps) {
   })
   const [selectedId, onSelect] = useState<string | null>(null)
   const [hoveredId, onHover] = useState<string | null>(null)
+  const pointNames = useMemo(() => points.map((row) => ({ id: row.id, name: row.body.name })), [points])
+  const features = useMemo(
+    () => [
+      ...pointFeatures(points).map((feature) => ({ ...feature, muted: true })),
+      ...instrumentFeatures(book),
+    ],
+    [book, points],
+  )
+  const shownPlan = useMemo(
+    () =>
+      planImage && {
+        ...planImage,
+        url: href('/projects/:projectId/files/:fileId', {
+          projectId: String(project.id),
+          fileId: String(planImage.fileId),
+        }),
+      },
+    [planImage, project.id],
+  )
+
+  function draw(_kind: string, geometry: DrawnGeometry) {
+    if (geometry.type !== 'point') return
+    const id = crypto.randomUUID()
+    const [x, y] = geometry.at
+    book.apply([{ op: 'add', id, kind: 'instrument', body: { ...newInstrument(book), x, y }, cells: {} }])
+    onSelect(id)
+  }
+
+  function place(id: string, geometry: DrawnGeometry) {
+    if (geometry.type === 'point') book.set(id, { x: geometry.at[0], y: geometry.at[1] })
+  }
+
   const references = referenceLines(
     '6.1',
     book.sound<Instrument>('instrument').map(({ body, recordedFrom }) => ({
@@ -101,18 +146,36 @@ export default function ReadingsPage({ loaderData }: Route.ComponentProps) {
       references={[
         ...references,
         { no: 'Times', text: `as clocks in ${timeZone} show them; stored in UTC` },
-        { no: 'Levels', text: `above ${project.verticalDatum}` },
+        { no: 'Levels', text: levelUnit(project.units.length, project.verticalDatum) },
       ]}
       carried={carriedForward(loaderData)}
     >
-      <ConflictPanel book={book} units={units} columns={{ instrument: instrumentColumns(units, points) }} />
+      <ConflictPanel
+        book={book}
+        units={units}
+        columns={{ instrument: instrumentColumns(units, pointNames) }}
+      />
+      <SiteDrawing
+        features={features}
+        selectedId={selectedId}
+        onSelect={onSelect}
+        hoveredId={hoveredId}
+        onHover={onHover}
+        planImage={shownPlan}
+        lengthUnit={units.length}
+        height={320}
+        readOnly={!book.editable}
+        onChange={place}
+        onDraw={draw}
+        tools={['instrument']}
+      />
       <Heading no="6.1" aside="position, response zone, serial">
         Instruments
       </Heading>
       <InstrumentSheet
         book={book}
         units={units}
-        points={points}
+        points={pointNames}
         uses={uses}
         selectedId={selectedId}
         onSelect={onSelect}
