@@ -1,7 +1,6 @@
 import { Form, href, Link, NavLink, Outlet, useLocation } from 'react-router'
 import { sections } from '~/book/sections'
 import { sectionStates } from '~/book/sections.server'
-import { Button } from '~/components/button'
 import { Spine } from '~/components/spine'
 import { TitleBlock } from '~/components/title-block'
 import type { Signature } from '~/packages/title-block'
@@ -127,7 +126,6 @@ export default function ProjectLayout({ loaderData, params }: Route.ComponentPro
             ))}
           </ul>
           <Person person={person} />
-          <ThemeChoice />
         </div>
       </Spine>
       <div className="flex min-w-0 flex-1 flex-col">
@@ -173,34 +171,8 @@ export default function ProjectLayout({ loaderData, params }: Route.ComponentPro
             </li>
           </ul>
           <Person person={person} />
-          <ThemeChoice />
         </footer>
       </div>
     </div>
-  )
-}
-
-function ThemeChoice() {
-  return (
-    <Form
-      method="post"
-      action={href('/theme')}
-      navigate={false}
-      className="mt-2 flex gap-1"
-      aria-label="Colours"
-    >
-      {(['light', 'dark', 'system'] as const).map((theme) => (
-        <Button
-          key={theme}
-          type="submit"
-          name="theme"
-          value={theme}
-          look="quiet"
-          className="min-h-6! px-2! py-0! text-[0.8rem]!"
-        >
-          {theme}
-        </Button>
-      ))}
-    </Form>
   )
 }
