@@ -12,6 +12,8 @@ export interface ChartLine {
   dashed?: boolean
   /** Draws each reading, for a line with few of them. */
   dots?: boolean
+  /** Draws the readings and no line between them. */
+  pointsOnly?: boolean
 }
 
 /** Something that happened at an instant, drawn at a value or, without one, at the foot of the chart. */
@@ -83,12 +85,16 @@ function chartOption(props: LineChartProps, colours: ChartColours): EChartsOptio
     name: line.name,
     type: 'line',
     data: line.points.map(([at, value]) => [at + shift, value]),
-    showSymbol: line.dots ?? false,
+    showSymbol: line.dots || line.pointsOnly || false,
     symbol: 'circle',
-    symbolSize: 5,
+    symbolSize: line.pointsOnly ? 7 : 5,
     connectNulls: false,
     animation: false,
-    lineStyle: { color: colours[line.colour], width: 1.5, type: line.dashed ? 'dashed' : 'solid' },
+    lineStyle: {
+      color: colours[line.colour],
+      width: line.pointsOnly ? 0 : 1.5,
+      type: line.dashed ? 'dashed' : 'solid',
+    },
     itemStyle: { color: colours[line.colour] },
     emphasis: { disabled: true },
     markLine:
@@ -111,6 +117,7 @@ function chartOption(props: LineChartProps, colours: ChartColours): EChartsOptio
       name: props.marksName ?? 'Status',
       type: 'scatter',
       symbol: 'diamond',
+      z: 5,
       symbolSize: 9,
       animation: false,
       itemStyle: { color: colours.warn },

@@ -34,7 +34,9 @@ export function detectEncoding(bytes: Uint8Array): { encoding: Encoding; mark: b
   let oddZeros = 0
   const looked = Math.min(bytes.length, 4096)
   for (let i = 0; i < looked; i++) {
-    if (bytes[i] === 0) i % 2 === 0 ? evenZeros++ : oddZeros++
+    if (bytes[i] !== 0) continue
+    if (i % 2 === 0) evenZeros++
+    else oddZeros++
   }
   if (oddZeros > looked / 4 && evenZeros === 0) return { encoding: 'utf-16le', mark: false }
   if (evenZeros > looked / 4 && oddZeros === 0) return { encoding: 'utf-16be', mark: false }

@@ -1,6 +1,6 @@
 import { useEffect, useRef, useState } from 'react'
 import { href } from 'react-router'
-import { LineChart } from '~/components/line-chart'
+import { type ChartLine, LineChart } from '~/components/line-chart'
 import { localTime } from '~/components/local-time'
 import { Notice } from '~/components/notice'
 import { convert, formatNumber, type ProjectUnits } from '~/units'
@@ -121,7 +121,7 @@ export function Hydrograph(props: HydrographProps) {
     timer.current = setTimeout(() => void fetchFiner(from, to), 350)
   }
 
-  const lines = whole.lines.map((line, index) => {
+  const lines = whole.lines.map((line, index): ChartLine => {
     const piece = loaded?.series.lines.find((one) => one.quantity === line.quantity)
     const points = loaded && piece ? spliced(withBreaks(line), withBreaks(piece), loaded) : withBreaks(line)
     return {

@@ -30,14 +30,11 @@ const placesSchema = z.object({
   kind: z.enum(instrumentKinds, { error: 'Choose the kind of the new instruments.' }),
 })
 
-/** What becomes of a name that is no instrument: the id of an instrument, a new one, or its rows are left out. */
-export const nameAnswers = ['add', 'leave out'] as const
-
 const instrumentsSchema = z.discriminatedUnion('by', [
   z.object({
     by: z.literal('column'),
     column: column('the instrument'),
-    /** By the name as the file has it. */
+    /** By a name in the file that is no instrument: the id of the one meant, 'add' for a new one, or 'leave out'. */
     names: z.record(z.string().max(200), z.string().max(60)).default({}),
     places: placesSchema.nullable().default(null),
   }),

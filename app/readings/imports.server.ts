@@ -504,7 +504,7 @@ async function supersede(trx: Database, importId: number): Promise<number> {
     `insert into readings (${columns})
      select s.project_id, s.instrument_id, s.quantity, s.taken_at,
        (select max(m.revision) + 1 from readings m
-         where m.instrument_id = s.instrument_id and m.quantity = s.quantity and m.taken_at = s.taken_at),
+         where m.project_id = s.project_id and m.instrument_id = s.instrument_id and m.quantity = s.quantity and m.taken_at = s.taken_at),
        s.value, s.entered, s.unit, s.operator, s.status, 'raw', s.import_id, s.file_row
      from reading_staging s where s.import_id = ? and s.outcome = 'conflict'`,
     [importId],

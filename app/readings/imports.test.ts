@@ -96,6 +96,24 @@ async function stateOfReadings() {
 const threeDips =
   'point,time,dip\nP1,2026-03-13 09:00,4.25\nP1,2026-03-14 09:00,4.3\np1 ,2026-03-15 09:00,dry\n'
 
+describe('Two projects whose instruments carry the same id', () => {
+  test('neither see nor supersede nor shut out the readings of each other', async () => {
+    const id = await addInstrument('P1')
+    await take(threeDips)
+    const before = await stateOfReadings()
+    const first = project
+    project = { ...project, id: await makeProject(db, { number: `R-${++count}`, createdBy: userId }) }
+    await save([{ op: 'add', kind: 'instrument', id, body: { name: 'P1', kind: 'standpipe', x: 0, y: 0 } }])
+    const order = { conflicts: 'take new' as const, reason: 'Another site.' }
+    const { receipt } = await take(threeDips.replace('4.25', '9.99'), dips, order)
+    expect(receipt).toMatchObject({ counts: { accepted: 3, identical: 0, conflicts: 0 }, superseded: 0 })
+    project = first
+    expect(await stateOfReadings()).toEqual(before)
+    const [last] = await lastReadings(db, project.id)
+    expect(last?.count).toBe(3)
+  })
+})
+
 describe('An import', () => {
   test('takes a file in, keeps it unchanged, and derives heads from the reference level in force', async () => {
     const id = await addInstrument('P1')

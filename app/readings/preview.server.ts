@@ -276,10 +276,10 @@ async function refuseContradictions(db: Database, importId: number): Promise<voi
 export async function settle(db: Database, importId: number): Promise<void> {
   await db.raw(
     `update reading_staging s
-     left join readings r on r.instrument_id = s.instrument_id and r.quantity = s.quantity and r.taken_at = s.taken_at
-       and r.revision = (
+     left join readings r on r.project_id = s.project_id and r.instrument_id = s.instrument_id and r.quantity = s.quantity
+       and r.taken_at = s.taken_at and r.revision = (
          select max(m.revision) from readings m
-         where m.instrument_id = s.instrument_id and m.quantity = s.quantity and m.taken_at = s.taken_at
+         where m.project_id = s.project_id and m.instrument_id = s.instrument_id and m.quantity = s.quantity and m.taken_at = s.taken_at
        )
      set s.outcome = case when r.instrument_id is null then 'accepted' when ${sameReading('s', 'r')} then 'identical' else 'conflict' end
      where s.import_id = :importId and s.refusal is null and not s.outcome <=> 'repeated'`,
@@ -414,10 +414,10 @@ async function conflictsOf(db: Database, importId: number, most: number): Promis
     `select s.file_row, s.instrument_id, s.taken_at, s.entered, s.unit,
        if(r.unit = s.unit or r.value is null, r.entered, concat(r.entered, ' ', r.unit)) as existing
      from reading_staging s
-     join readings r on r.instrument_id = s.instrument_id and r.quantity = s.quantity and r.taken_at = s.taken_at
-       and r.revision = (
+     join readings r on r.project_id = s.project_id and r.instrument_id = s.instrument_id and r.quantity = s.quantity
+       and r.taken_at = s.taken_at and r.revision = (
          select max(m.revision) from readings m
-         where m.instrument_id = s.instrument_id and m.quantity = s.quantity and m.taken_at = s.taken_at
+         where m.project_id = s.project_id and m.instrument_id = s.instrument_id and m.quantity = s.quantity and m.taken_at = s.taken_at
        )
      where s.import_id = ? and s.outcome = 'conflict' order by s.file_row limit ?`,
     [importId, most],

@@ -29,6 +29,7 @@ function currentReadings(db: Database, projectId: number) {
     .whereNot('r.quality', 'rejected')
     .whereNotExists(
       db('readings as later')
+        .whereRaw('later.project_id = r.project_id')
         .whereRaw('later.instrument_id = r.instrument_id')
         .whereRaw('later.quantity = r.quantity')
         .whereRaw('later.taken_at = r.taken_at')
