@@ -98,7 +98,8 @@ export async function seedDemo(db: Knex): Promise<void> {
     ['checker', checker, '2026-11-25T10:12:00Z'],
     ['approver', approver, '2026-11-25T16:31:00Z'],
   ] as const) {
-    await open(signPackage(db, project, first, role, person))
+    const seen = await findPackage(db, projectId, first)
+    await open(signPackage(db, project, first, role, person, seen?.input_sha256 ?? ''))
     await drawn(db, projectId, first)
     await moveBack(db, at)
   }
@@ -184,7 +185,13 @@ interface Book {
   points: Map<string, string>
 }
 
-async function save(db: Knex, project: Project, userId: number, changes: RowChange[], reason?: string): Promise<void> {
+async function save(
+  db: Knex,
+  project: Project,
+  userId: number,
+  changes: RowChange[],
+  reason?: string,
+): Promise<void> {
   const answer = await saveRows(db, { projectId: project.id, userId, changes, kinds, reason })
   if (!answer.ok) throw new Error(`The demo's rows were refused: ${JSON.stringify(answer)}`)
 }
@@ -194,9 +201,15 @@ function added(kind: string, bodies: readonly unknown[]): (RowChange & { op: 'ad
 }
 
 async function writeBook(db: Knex, project: Project, userId: number): Promise<Book> {
-  const materials = added('material', demoMaterials.map(({ key: _, ...body }) => body))
+  const materials = added(
+    'material',
+    demoMaterials.map(({ key: _, ...body }) => body),
+  )
   const materialId = new Map(demoMaterials.map(({ key }, i) => [key, materials[i]?.id]))
-  const zones = added('zone', demoZones.map(({ material, ...body }) => ({ ...body, materialId: materialId.get(material) })))
+  const zones = added(
+    'zone',
+    demoZones.map(({ material, ...body }) => ({ ...body, materialId: materialId.get(material) })),
+  )
   const points = added(
     'point',
     demoInstruments.map(({ name, x, y, source }) => ({ name, x, y, source })),
@@ -275,7 +288,8 @@ async function runToEnd(db: Knex, project: Project, caseId: string, userId: numb
   if (!answer.ok) throw new Error(`The demo's case cannot run: ${JSON.stringify(answer)}`)
   await jobEnded(answer.jobId)
   const run = await findRun(db, project.id, answer.runId)
-  if (run?.state !== 'done' || !run.converged) throw new Error(`The demo's run did not converge: ${run?.error ?? run?.state}`)
+  if (run?.state !== 'done' || !run.converged)
+    throw new Error(`The demo's run did not converge: ${run?.error ?? run?.state}`)
   return run
 }
 
@@ -353,8 +367,13 @@ const believable: Record<string, [offset: number, tide: number]> = {
   P10: [0.02, 0.42],
 }
 
-async function demoHeads(db: Knex, projectId: number, runs: { before: Run; during: Run }): Promise<DemoHead[]> {
-  const heads = async (run: Run) => new Map((await runPoints(db, projectId, run.id)).map((p) => [p.name, p.head]))
+async function demoHeads(
+  db: Knex,
+  projectId: number,
+  runs: { before: Run; during: Run },
+): Promise<DemoHead[]> {
+  const heads = async (run: Run) =>
+    new Map((await runPoints(db, projectId, run.id)).map((p) => [p.name, p.head]))
   const before = await heads(runs.before)
   const during = await heads(runs.during)
   return demoInstruments.map(({ name, kind, levels }) => {
@@ -373,7 +392,15 @@ async function demoHeads(db: Knex, projectId: number, runs: { before: Run; durin
 
 async function saveEstimates(db: Knex, project: Project, userId: number, run: Run): Promise<void> {
   const pumped = run.result?.wells.reduce((sum, well) => sum + (well.achieved[0] ?? 0), 0) ?? null
-  await save(db, project, userId, added('estimate', demoEstimates.map((estimate) => ({ ...estimate, computed: pumped }))))
+  await save(
+    db,
+    project,
+    userId,
+    added(
+      'estimate',
+      demoEstimates.map((estimate) => ({ ...estimate, computed: pumped })),
+    ),
+  )
 }
 
 async function raiseBasinB(db: Knex, project: Project, userId: number): Promise<void> {
@@ -385,10 +412,14 @@ async function raiseBasinB(db: Knex, project: Project, userId: number): Promise<
     rate: { value: 12, unit: 'mm/d' },
     source: 'Inflow meter at Basin B, November 2026, over the area',
   }
-  await save(db, project, userId, [{ op: 'edit', kind: 'recharge zone', id: basin.id, version: basin.version, body }])
+  await save(db, project, userId, [
+    { op: 'edit', kind: 'recharge zone', id: basin.id, version: basin.version, body },
+  ])
 }
 
-async function open(outcome: Promise<{ ok: true; packageId: number } | { ok: false; message: string }>): Promise<number> {
+async function open(
+  outcome: Promise<{ ok: true; packageId: number } | { ok: false; message: string }>,
+): Promise<number> {
   const answer = await outcome
   if (!answer.ok) throw new Error(`The demo's package was refused: ${answer.message}`)
   return answer.packageId
@@ -403,8 +434,19 @@ async function drawn(db: Knex, projectId: number, packageId: number): Promise<vo
 }
 
 async function checkAll(db: Knex, projectId: number, userId: number): Promise<void> {
-  for (const section of ['cover', 'basis', 'ground', 'water', 'cases', 'heads', 'readings', 'fit', 'checks'] as const) {
-    if (!(await checkSection(db, projectId, section, userId))) throw new Error(`Section ${section} of the demo is empty.`)
+  for (const section of [
+    'cover',
+    'basis',
+    'ground',
+    'water',
+    'cases',
+    'heads',
+    'readings',
+    'fit',
+    'checks',
+  ] as const) {
+    if (!(await checkSection(db, projectId, section, userId)))
+      throw new Error(`Section ${section} of the demo is empty.`)
   }
 }
 

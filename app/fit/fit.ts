@@ -24,7 +24,12 @@ export type FitSpan = { date: string } | { from: string; to: string }
 /** Readings further than this from a date are not compared with it. */
 export const nearestWithinDays = 14
 
-const isoDay = /^\d{4}-\d{2}-\d{2}$/
+/** Whether a text is a day of the calendar; 30 February, which Date would read as 2 March, is none. */
+function real(day: string): boolean {
+  if (!/^\d{4}-\d{2}-\d{2}$/.test(day)) return false
+  const instant = new Date(`${day}T00:00:00Z`)
+  return !Number.isNaN(instant.getTime()) && instant.toISOString().startsWith(day)
+}
 
 /**
  * Reads the span of a comparison from the page's address. A window needs both ends in order; anything else is a
@@ -34,7 +39,6 @@ export function spanFrom(search: URLSearchParams): { span: FitSpan | null; probl
   const date = search.get('date') ?? ''
   const from = search.get('from') ?? ''
   const to = search.get('to') ?? ''
-  const real = (day: string) => isoDay.test(day) && !Number.isNaN(Date.parse(`${day}T00:00:00Z`))
   if (from !== '' || to !== '') {
     if (!real(from) || !real(to)) return { span: null, problem: 'A window needs its first and its last day.' }
     if (from > to) return { span: null, problem: 'The window ends before it begins.' }

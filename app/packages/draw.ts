@@ -159,8 +159,8 @@ function contentsPage(): Content {
   return {
     toc: {
       title: { text: 'Contents', style: 'section', pageBreak: 'before' },
-      textStyle: { fontSize: 9, lineHeight: 1.05 },
-      numberStyle: { color: grey, fontSize: 9, lineHeight: 1.05 },
+      textStyle: { fontSize: 9, lineHeight: 1 },
+      numberStyle: { color: grey, fontSize: 9, lineHeight: 1 },
     },
   }
 }

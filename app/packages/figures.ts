@@ -15,7 +15,7 @@ import {
   type ResidualMark,
 } from '~/heads/picture'
 import { levelUnit } from '~/projects/project'
-import { formatNumber } from '~/units'
+import { formatNumber, formatSigned } from '~/units'
 import type { GatheredContent } from './gathered'
 
 use([LineChart, ScatterChart, GridComponent, TooltipComponent, LabelLayout, SVGRenderer])
@@ -45,14 +45,10 @@ export function residualFigure(content: GatheredContent, field: HeadField): Draw
     const instrument = content.instruments.find((i) => i.name === line.name)
     if (!instrument || line.residual === null) return []
     const { x, y } = instrument
-    return [{ name: line.name, x, y, value: line.residual, label: signedText(line.residual) }]
+    return [{ name: line.name, x, y, value: line.residual, label: formatSigned(line.residual, 2) }]
   })
   if (marks.length === 0) return null
   return draw(content, { ...field, field: 'residual', residuals: marks })
-}
-
-function signedText(value: number): string {
-  return `${value > 0 ? '+' : ''}${formatNumber(value, 2)}`
 }
 
 function draw(

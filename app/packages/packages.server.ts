@@ -1,10 +1,11 @@
 import { createHash } from 'node:crypto'
 import canonicalize from 'canonicalize'
 import { digestOf, recordSection, sectionStates } from '~/book/sections.server'
+import { mostBalanceError } from '~/checks/balance-limit'
 import { environment } from '~/environment.server'
 import { getVerified, putBuffer, recordFile } from '~/files/files.server'
 import { findRun, isStale, runHeads } from '~/heads/runs.server'
-import { startJob } from '~/jobs/jobs.server'
+import { enterJob, launchJob } from '~/jobs/jobs.server'
 import { recordHistory } from '~/projects/history.server'
 import type { Project } from '~/projects/project'
 import type { Database } from '~database/connection.server'
@@ -104,7 +105,7 @@ async function runObjection(db: Database, project: Project, runId: number): Prom
   if (run?.state !== 'done' || !run.result) return 'Choose a run that has finished.'
   if (!run.converged) return `Run ${run.number} did not converge, so it cannot be packaged.`
   const error = Math.abs(run.result.balance.errorPercent[0] ?? Number.POSITIVE_INFINITY)
-  if (!(error <= 0.1))
+  if (!(error <= mostBalanceError))
     return `The water balance of run ${run.number} is out by ${error} %, so it cannot be packaged.`
   return null
 }
@@ -230,7 +231,7 @@ export async function bookHasMoved(db: Database, projectId: number, packageId: n
 }
 
 /**
- * Signs an open revision. Originator first, then checker, then approver; the checker and the approver have made no
+ * Signs an open revision; `seenSha256` is the input hash that the signer had before their eyes. Originator first, then checker, then approver; the checker and the approver have made no
  * part of it: neither the package, nor its run, nor any row of the sections that it prints.
  */
 export async function signPackage(
@@ -239,6 +240,7 @@ export async function signPackage(
   packageId: number,
   role: Signature['role'],
   userId: number,
+  seenSha256: string,
 ): Promise<Outcome> {
   const objection = await signObjection(db, project, packageId, role, userId)
   if (objection) return { ok: false, message: objection }
@@ -249,6 +251,9 @@ export async function signPackage(
       .first()
     if (!row || row.status !== statusAfter[role].from) {
       return { ok: false, message: 'Somebody else was quicker: the package has another status now.' }
+    }
+    if (row.input_sha256 !== seenSha256) {
+      return { ok: false, message: 'The package was gathered again meanwhile: read it before you sign.' }
     }
     await trx('package_signatures').insert({
       package_id: packageId,
@@ -406,15 +411,19 @@ export async function startDrawing(
     heads: new Uint8Array(heads),
     againstHeads: against ? new Uint8Array(against) : null,
   }
-  const jobId = await startJob<{ pdf: ArrayBuffer }>({
+  const jobId = await db.transaction(async (trx) => {
+    const entered = await enterJob(trx, { projectId: project.id, userId, kind: 'draw' })
+    await trx('packages').where({ id: packageId }).update({ job_id: entered })
+    return entered
+  })
+  launchJob<{ pdf: ArrayBuffer }>(jobId, {
     projectId: project.id,
     userId,
     kind: 'draw',
     workerData: { request },
     onDone: async ({ pdf }) =>
-      storePdf(db, project, { packageId, userId, issuing, pdf: new Uint8Array(pdf) }),
+      storePdf(db, project, { packageId, userId, jobId, issuing, pdf: new Uint8Array(pdf) }),
   })
-  await db('packages').where({ id: packageId }).update({ job_id: jobId })
   return jobId
 }
 
@@ -470,11 +479,13 @@ async function gatherCover(
 async function storePdf(
   db: Database,
   project: Project,
-  drawn: { packageId: number; userId: number; issuing?: Date; pdf: Uint8Array },
+  drawn: { packageId: number; userId: number; jobId: number; issuing?: Date; pdf: Uint8Array },
 ): Promise<void> {
-  const { packageId, userId, issuing, pdf } = drawn
+  const { packageId, userId, jobId, issuing, pdf } = drawn
   const row = await findPackage(db, project.id, packageId)
   if (!row) throw new Error(`Package ${packageId} is no longer there.`)
+  // Somebody signed, gathered again or issued while this one was drawn: the later drawing is the one that counts.
+  if (row.job_id !== jobId) return
   const stored = await putBuffer(pdf, {
     folder: `projects/${project.id}/packages`,
     contentType: 'application/pdf',

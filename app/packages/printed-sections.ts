@@ -15,6 +15,7 @@ import {
   facts,
   figure,
   grey,
+  keptWhole,
   labelled,
   notStated,
   type Piece,
@@ -864,31 +865,35 @@ function packageSection(content: GatheredContent, cover: GatheredCover): Content
         cover.sections,
       ),
     ),
-    subsection(
-      '9.4',
-      'Revisions',
-      table(
-        '9.2',
-        'Revision history',
-        [
-          { head: 'Revision', cell: (r) => r.revision },
-          { head: 'Status', words: true, cell: (r) => r.status },
-          { head: 'Reason', words: true, cell: (r) => r.reason },
-          { head: 'Issued', words: true, cell: (r) => localDay(content, r.issuedAt) },
-        ],
-        cover.revisions,
+    // The record closes the document under the revisions, not on a page of its own.
+    keptWhole(
+      cover.revisions.length < 12,
+      subsection(
+        '9.4',
+        'Revisions',
+        table(
+          '9.2',
+          'Revision history',
+          [
+            { head: 'Revision', cell: (r) => r.revision },
+            { head: 'Status', words: true, cell: (r) => r.status },
+            { head: 'Reason', words: true, cell: (r) => r.reason },
+            { head: 'Issued', words: true, cell: (r) => localDay(content, r.issuedAt) },
+          ],
+          cover.revisions,
+        ),
       ),
-    ),
-    subsection(
-      '9.5',
-      'Record',
-      facts([
-        ['Input hash (SHA-256)', cover.inputSha256],
-        ['Model file (SHA-256)', content.run.inputSha256],
-        ['Head field (SHA-256)', content.run.headsSha256],
-        ['Engine', `Lavant engine ${content.run.result.engine}`],
-        ['Kept at', cover.address],
-      ]),
+      subsection(
+        '9.5',
+        'Record',
+        facts([
+          ['Input hash (SHA-256)', cover.inputSha256],
+          ['Model file (SHA-256)', content.run.inputSha256],
+          ['Head field (SHA-256)', content.run.headsSha256],
+          ['Engine', `Lavant engine ${content.run.result.engine}`],
+          ['Kept at', cover.address],
+        ]),
+      ),
     ),
   )
 }

@@ -11,7 +11,7 @@ const rule = '#c9c9c2'
 const paper = '#f4f3ee'
 
 /** A4 with a binding edge on the left, in points. */
-export const page = { width: 595.28, height: 841.89, left: 62, top: 60, right: 48, bottom: 58 }
+export const page = { width: 595.28, height: 841.89, left: 62, top: 60, right: 48, bottom: 54 }
 export const textWidth = page.width - page.left - page.right
 const textHeight = page.height - page.top - page.bottom
 
@@ -35,7 +35,10 @@ export const styles = {
   small: { fontSize: smallSize, color: grey },
 }
 
-/** A piece of the document with its height as estimated, in points; `splits` when it may break over pages. */
+/**
+ * A piece of the document with its height as estimated, in points; `splits` when it may break over pages. What does not
+ * split must be far from a page tall: pdfmake drops what an unbreakable block holds beyond one page.
+ */
 export interface Piece {
   content: Content
   height: number
@@ -76,7 +79,7 @@ export function text(runs: Run | Run[], more: Partial<ContentText> = {}): Piece 
   return {
     content: { text: all, margin: [0, 0, 0, 5], ...more },
     height: estimatedLines(words, textWidth, bodySize) * bodySize * leading + 5,
-    splits: words.length > 1500,
+    splits: words.length > 1200,
   }
 }
 
@@ -86,12 +89,14 @@ export function labelled(label: string, words: string | undefined): Piece[] {
 }
 
 export function bullets(lines: readonly string[]): Piece {
+  const height = lines.reduce(
+    (sum, line) => sum + estimatedLines(line, textWidth - 14, bodySize) * bodySize * leading + 1.5,
+    8,
+  )
   return {
     content: { ul: lines.map((line) => ({ text: line, margin: [0, 0, 0, 1.5] })), margin: [0, 0, 0, 8] },
-    height: lines.reduce(
-      (sum, line) => sum + estimatedLines(line, textWidth - 14, bodySize) * bodySize * leading + 1.5,
-      8,
-    ),
+    height,
+    splits: height > keptTogether,
   }
 }
 
@@ -128,7 +133,7 @@ export function section(number: number, title: string, ...parts: Content[]): Con
     pageBreak: 'before',
     tocItem: true,
     tocStyle: { bold: true },
-    tocMargin: [0, 4, 0, 0],
+    tocMargin: [0, 3, 0, 0],
     outline: true,
     id: `section-${number}`,
   } as Content
@@ -144,7 +149,7 @@ export function subsection(no: string, title: string, ...pieces: Piece[]): Conte
     text: `${no}   ${title}`,
     style: 'sub',
     tocItem: true,
-    tocMargin: [18, -1.2, 0, 0],
+    tocMargin: [18, -1.6, 0, 0],
     outline: true,
     outlineParentId: `section-${no.split('.')[0]}`,
   }
@@ -165,6 +170,11 @@ export function subsection(no: string, title: string, ...pieces: Piece[]): Conte
     return { stack: [{ ...heading, headlineLevel: height + roomBelowHeading } as Content, ...bound, ...rest] }
   }
   return { stack: [{ stack: [heading as Content, ...bound], unbreakable: true }, ...rest] }
+}
+
+/** Subsections on one page, where the caller knows that together they are far from a page tall. */
+export function keptWhole(together: boolean, ...subsections: Content[]): Content {
+  return { stack: subsections, unbreakable: together }
 }
 
 /**
@@ -363,6 +373,14 @@ export function facts(rows: readonly (readonly [label: string, value: string])[]
     { text: label, color: grey },
     { text: value || '–' },
   ])
+  const height = rows.reduce(
+    (sum, [, value]) =>
+      sum +
+      2 * cellPadding +
+      0.35 +
+      estimatedLines(value, textWidth - width - 13, bodySize) * bodySize * leading,
+    10,
+  )
   return {
     content: {
       table: { widths: [width, '*'], dontBreakRows: true, body },
@@ -374,14 +392,8 @@ export function facts(rows: readonly (readonly [label: string, value: string])[]
       },
       margin: [0, 2, 0, 8],
     },
-    height: rows.reduce(
-      (sum, [, value]) =>
-        sum +
-        2 * cellPadding +
-        0.35 +
-        estimatedLines(value, textWidth - width - 13, bodySize) * bodySize * leading,
-      10,
-    ),
+    height,
+    splits: height > keptTogether,
   }
 }
 
@@ -413,7 +425,7 @@ export function signatures(rows: readonly { label: string; name: string | null; 
 /** A figure over its caption. `share`: how much of the measure it takes. */
 export function figure(no: string, { svg, ratio, caption }: DrawnFigure, lead: string, share = 1): Piece {
   // Never taller than a page leaves it, however tall the site is.
-  const width = Math.min(textWidth * share, (0.78 * textHeight) / ratio)
+  const width = Math.min(textWidth * share, (0.7 * textHeight) / ratio)
   return {
     content: {
       stack: [
@@ -421,7 +433,7 @@ export function figure(no: string, { svg, ratio, caption }: DrawnFigure, lead: s
         {
           text: [{ text: `Fig. ${no}  `, bold: true, color: ink }, lead, caption],
           style: 'caption',
-          margin: [0, 3, 0, 10],
+          margin: [0, 3, 0, 6],
         },
       ],
     },

@@ -5,6 +5,7 @@ import { listRows } from '~/book/rows.server'
 import { SaveState } from '~/book/save-state'
 import { sectionStatus } from '~/book/sections.server'
 import { useRows } from '~/book/use-rows'
+import { mostBalanceError } from '~/checks/balance-limit'
 import type { Estimate } from '~/checks/estimate'
 import { checkColumns, checkSchemas, EstimateSheet } from '~/checks/estimate-sheet'
 import { DataTable } from '~/components/data-table'
@@ -16,9 +17,6 @@ import { can } from '~/projects/permissions'
 import { formatNumber, shownUnit, unitLabel } from '~/units'
 import { database } from '~database/connection.server'
 import type { Route } from './+types/checks'
-
-/** Error of the water balance above which a run is no result, percent (common practice, no source). */
-const mostBalanceError = 0.1
 
 export async function loader({ context }: Route.LoaderArgs) {
   const { project, member } = permit(context, 'view', 'book')

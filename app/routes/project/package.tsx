@@ -73,6 +73,7 @@ export async function action({ context, request }: Route.ActionArgs) {
   const form = await request.formData()
   const intent = String(form.get('intent'))
   const packageId = () => idFrom(String(form.get('packageId') ?? ''))
+  const seen = String(form.get('inputSha256') ?? '')
   const answer = (outcome: { ok: true } | { ok: false; message: string }, done: string) =>
     outcome.ok
       ? data({ done }, { status: 200 })
@@ -103,19 +104,19 @@ export async function action({ context, request }: Route.ActionArgs) {
     case 'sign originator':
       permit(context, 'sign', 'as originator')
       return answer(
-        await signPackage(db, project, packageId(), 'originator', member.userId),
+        await signPackage(db, project, packageId(), 'originator', member.userId, seen),
         'Signed, and shared for check.',
       )
     case 'sign checker':
       permit(context, 'sign', 'as checker')
       return answer(
-        await signPackage(db, project, packageId(), 'checker', member.userId),
+        await signPackage(db, project, packageId(), 'checker', member.userId, seen),
         'Signed as checker.',
       )
     case 'sign approver':
       permit(context, 'sign', 'as approver')
       return answer(
-        await signPackage(db, project, packageId(), 'approver', member.userId),
+        await signPackage(db, project, packageId(), 'approver', member.userId, seen),
         'Signed as approver.',
       )
     case 'issue':
@@ -321,6 +322,7 @@ function OpenRevision({
         )}
         <Form method="post" className="contents">
           <input type="hidden" name="packageId" value={line.id} />
+          <input type="hidden" name="inputSha256" value={line.inputSha256 ?? ''} />
           {next && may.sign[next] && (
             <Button
               type="submit"
