@@ -39,7 +39,7 @@ test('The checker cannot sign before the sections that wait are checked', async 
 
 test('Each section that waits is ticked, and the spine shows it as checked', async () => {
   const waiting = (await sectionsThatAre('drafted', 'changed since check')).filter((one) => one !== 'Package')
-  expect(waiting.length).toBeGreaterThan(3)
+  expect(waiting).toContain('Heads')
   const spine = page.getByRole('navigation', { name: 'Calc book' })
   for (const title of waiting) {
     await spine.getByRole('link', { name: title }).click()

@@ -124,6 +124,8 @@ test('The run is held against the readings of a day, and the comparison is kept 
   await page.getByRole('button', { name: 'Keep this comparison in the book' }).click()
   await page.getByText(`The comparison with run ${runNumber} is kept as section 7.`).waitFor()
   const references = page.getByRole('complementary', { name: 'References' })
+  await references.getByText(`run ${runNumber}, readings of 23 Nov 2026, by Ines Marlowe`).waitFor()
+})
   expect(await textOf(references)).toContain(`run ${runNumber}, readings of 23 Nov 2026, by Ines Marlowe`)
 })
 

@@ -150,9 +150,10 @@ export async function textOf(place: Locator): Promise<string> {
   return ((await place.textContent()) ?? '').replaceAll(/\s+/g, ' ').trim()
 }
 
-/** What axe finds wrong with the page as it stands, a line each; empty when all is well. */
-export async function accessibilityFaults(page: Page): Promise<string[]> {
-  const { violations } = await new AxeBuilder({ page }).analyze()
+/** What axe finds wrong with the page as it stands, a line each; of these rules only, where they are named. */
+export async function accessibilityFaults(page: Page, rules: string[] = []): Promise<string[]> {
+  const axe = new AxeBuilder({ page })
+  const { violations } = await (rules.length > 0 ? axe.withRules(rules) : axe).analyze()
   return violations.flatMap(({ id, nodes }) =>
     nodes.map((node) => `${id}: ${node.target.join(' ')}: ${node.failureSummary?.replaceAll(/\s+/g, ' ')}`),
   )

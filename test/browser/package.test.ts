@@ -58,10 +58,9 @@ test('The project manager makes a revision of the newest run; its PDF is a draft
 test('The originator signs, and the revision is shared for check', async () => {
   await originator.goto(`${project}/package`)
   await originator.getByRole('button', { name: 'Sign as originator' }).click()
-  await originator.getByText('Signed, and shared for check.').waitFor()
+  await originator.getByText('The next move is with the checker.').waitFor()
   await drawn(originator)
   expect(await originator.getByRole('button', { name: /^Sign as/ }).count()).toBe(0)
-  await originator.getByText('The next move is with the checker.').waitFor()
 })
 
 test('The checker signs once every section is checked', async () => {
@@ -74,16 +73,15 @@ test('The checker signs once every section is checked', async () => {
   }
   await checker.goto(`${project}/package`)
   await checker.getByRole('button', { name: 'Sign as checker' }).click()
-  await checker.getByText('Signed as checker.').waitFor()
+  await checker.getByText('The next move is with the approver.').waitFor()
   await drawn(checker)
 })
 
 test('The approver signs, and the next move is with the project manager', async () => {
   await approver.goto(`${project}/package`)
   await approver.getByRole('button', { name: 'Sign as approver' }).click()
-  await approver.getByText('Signed as approver.').waitFor()
-  await drawn(approver)
   await approver.getByText('The next move is with the project manager, who issues it.').waitFor()
+  await drawn(approver)
 })
 
 test('The project manager issues it: the PDF is signed, is no draft, and is the file whose SHA-256 is shown', async () => {
@@ -97,12 +95,11 @@ test('The project manager issues it: the PDF is signed, is no draft, and is the 
   const shown = await line.locator('code').getAttribute('title')
   const link = await line.getByRole('link', { name: 'PDF' }).getAttribute('href')
   const answer = await manager.request.get(link ?? '')
-  expect(answer.headers()).toMatchObject({
-    'content-type': 'application/pdf',
-    'x-content-type-options': 'nosniff',
-  })
-  expect(answer.headers()['content-disposition']).toContain('attachment')
-  expect(answer.headers()['content-security-policy']).toContain('sandbox')
+  const headers = answer.headers()
+  expect(headers['content-type']).toBe('application/pdf')
+  expect(headers['x-content-type-options']).toContain('nosniff')
+  expect(headers['content-disposition']).toContain('attachment')
+  expect(headers['content-security-policy']).toContain('sandbox')
 
   await manager.goto(`${project}/progress`)
   const pdf = await downloaded(manager, new RegExp(`^Download ${revision}`))

@@ -25,7 +25,7 @@ export async function withdrawOpenRevision(page: Page): Promise<void> {
   if ((await withdraw.count()) === 0) return
   await withdraw.click()
   await page.getByRole('button', { name: /^Withdraw P\d+/ }).click()
-  await page.getByText('The revision is withdrawn.').waitFor()
+  await page.getByText('No revision is open.').waitFor()
 }
 
 /** Makes a new revision of a run by the form of the page, and waits until its PDF is drawn. */
@@ -59,7 +59,7 @@ export async function withRevisionSharedForCheck(
   await withdrawOpenRevision(originator)
   const revision = await makeRevision(originator, run, reason)
   await originator.getByRole('button', { name: 'Sign as originator' }).click()
-  await originator.getByText('Signed, and shared for check.').waitFor()
+  await originator.getByText('The next move is with the checker.').waitFor()
   await drawn(originator)
   return revision
 }
