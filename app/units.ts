@@ -225,6 +225,12 @@ export function formatNumber(value: number | null | undefined, decimals?: number
   return sign + groupThousands(String(Number(size.toPrecision(4))))
 }
 
+/** As `formatNumber`, with a plus sign before what is above zero as shown: +0.12, −0.12, 0.00. */
+export function formatSigned(value: number | null | undefined, decimals?: number): string {
+  const text = formatNumber(value, decimals)
+  return typeof value === 'number' && value > 0 && /[1-9]/.test(text) ? `+${text}` : text
+}
+
 function groupThousands(text: string): string {
   const [whole = '', fraction] = text.split('.')
   const grouped = whole.length > 4 ? whole.replace(/\B(?=(\d{3})+$)/g, '\u202f') : whole

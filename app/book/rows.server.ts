@@ -47,6 +47,17 @@ interface StoredRow {
   recorded_by_name: string
 }
 
+/** Of book_rows joined with the users who recorded them. */
+const storedColumns = [
+  'book_rows.id',
+  'version',
+  'kind',
+  'position',
+  'body',
+  'recorded_from',
+  'users.name as recorded_by_name',
+]
+
 /** MariaDB keeps JSON as text; the driver may or may not have parsed it already. */
 function parsed(body: unknown): unknown {
   return typeof body === 'string' ? JSON.parse(body) : body
@@ -67,15 +78,7 @@ export async function listRows<Body>(
     .orderBy('position')
     .orderBy('recorded_from')
     .orderBy('book_rows.id')
-    .select<StoredRow[]>(
-      'book_rows.id',
-      'version',
-      'kind',
-      'position',
-      'body',
-      'recorded_from',
-      'users.name as recorded_by_name',
-    )
+    .select<StoredRow[]>(storedColumns)
   if (asKnownOn) {
     query
       .where('recorded_from', '<=', asKnownOn)
@@ -123,7 +126,8 @@ export async function saveRows(
   const problems: RowProblem[] = []
   const bodies = new Map<RowChange, unknown>()
   for (const change of changes) {
-    const kind = kinds[change.kind]
+    // Its own only: every object has a "constructor" besides.
+    const kind = Object.hasOwn(kinds, change.kind) ? kinds[change.kind] : undefined
     if (!kind) {
       problems.push({
         id: change.id,
@@ -287,15 +291,7 @@ async function currentRows(
     )
     .whereNull('recorded_to')
     .forUpdate()
-    .select<StoredRow[]>(
-      'book_rows.id',
-      'version',
-      'kind',
-      'position',
-      'body',
-      'recorded_from',
-      'users.name as recorded_by_name',
-    )
+    .select<StoredRow[]>(storedColumns)
   return new Map(rows.map((row) => [row.id, row]))
 }
 

@@ -14,8 +14,6 @@ export const sections = [
 
 export type SectionKey = (typeof sections)[number]['key']
 
-export const sectionKeys = sections.map((section) => section.key) as [SectionKey, ...SectionKey[]]
-
 export function isSectionKey(text: string): text is SectionKey {
   return sections.some((section) => section.key === text)
 }

@@ -8,7 +8,7 @@ import { type Dimension, type Quantity, units } from '~/units'
  * hydraulic conductivity k of a wall or a material (ky keeps its ratio to kx), the level of a boundary along its
  * whole line, the flux of a boundary.
  */
-export const overridable = ['rate', 'recharge', 'k', 'level', 'flux'] as const
+const overridable = ['rate', 'recharge', 'k', 'level', 'flux'] as const
 export type Overridable = (typeof overridable)[number]
 
 export const overrideDimension: Record<Overridable, Dimension> = {
@@ -66,11 +66,10 @@ export const caseSchema = z
       .max(1e-4, 'A tolerance above 1e-4 is too loose for heads.')
       .nullable()
       .default(null),
-    overrides: z
-      .array(overrideSchema)
+    overrides: list(overrideSchema, { most: 2000 })
       .default([])
       .refine(
-        (list) => new Set(list.map((o) => `${o.rowId} ${o.quantity}`)).size === list.length,
+        (all) => new Set(all.map((o) => `${o.rowId} ${o.quantity}`)).size === all.length,
         'A case can set a quantity once only.',
       ),
   })

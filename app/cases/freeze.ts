@@ -299,7 +299,7 @@ function sameNames(rows: readonly Row<{ name: string }>[]): Row<{ name: string }
 const fewestCellsBetween = 3
 
 /** Wells that share a cell, and wells so near a fixed head that they draw from it rather than from the ground. */
-export function crowding(
+function crowding(
   inputs: Pick<CaseInputs, 'wells' | 'boundaries'>,
   extent: NonNullable<CaseSettings['extent']>,
   grid: GridSize,

@@ -1,5 +1,34 @@
 import { useEffect, useState } from 'react'
 
+export type ChartTheme = 'light' | 'dark' | 'print'
+
+/** Colours in force: the person's choice or the system's, and ink on paper while the page is being printed. */
+export function useChartTheme(): ChartTheme {
+  const [theme, setTheme] = useState<ChartTheme>('light')
+  useEffect(() => {
+    const dark = matchMedia('(prefers-color-scheme: dark)')
+    const root = document.documentElement
+    const read = () => {
+      const chosen = root.dataset.theme
+      setTheme(chosen === 'dark' || (chosen !== 'light' && dark.matches) ? 'dark' : 'light')
+    }
+    const toPaper = () => setTheme('print')
+    read()
+    const observer = new MutationObserver(read)
+    observer.observe(root, { attributes: true, attributeFilter: ['data-theme'] })
+    dark.addEventListener('change', read)
+    window.addEventListener('beforeprint', toPaper)
+    window.addEventListener('afterprint', read)
+    return () => {
+      observer.disconnect()
+      dark.removeEventListener('change', read)
+      window.removeEventListener('beforeprint', toPaper)
+      window.removeEventListener('afterprint', read)
+    }
+  }, [])
+  return theme
+}
+
 /** Colours of the present theme as six-digit hex, which every renderer understands. */
 export interface ChartColours {
   text: string
@@ -43,18 +72,9 @@ function readColours(): ChartColours | null {
 
 /** Colours of the theme in force, null on the server; they follow when the theme changes. */
 export function useChartColours(): ChartColours | null {
+  const theme = useChartTheme()
   const [colours, setColours] = useState<ChartColours | null>(null)
-  useEffect(() => {
-    const read = () => setColours(readColours())
-    read()
-    const observer = new MutationObserver(read)
-    observer.observe(document.documentElement, { attributeFilter: ['data-theme'] })
-    const dark = window.matchMedia('(prefers-color-scheme: dark)')
-    dark.addEventListener('change', read)
-    return () => {
-      observer.disconnect()
-      dark.removeEventListener('change', read)
-    }
-  }, [])
+  // biome-ignore lint/correctness/useExhaustiveDependencies: the theme decides what the variables say.
+  useEffect(() => setColours(readColours()), [theme])
   return colours
 }

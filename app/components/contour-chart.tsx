@@ -10,35 +10,6 @@ echarts.use([CanvasRenderer, CustomChart, LineChart, GridComponent, LegendCompon
 // Its bare module paths do not load in Node, and a server has no canvas to draw on.
 const Chart = lazy(() => import('echarts-for-react/esm/core'))
 
-export type ChartTheme = 'light' | 'dark' | 'print'
-
-/** Colours in force: the person's choice or the system's, and ink on paper while the page is being printed. */
-export function useChartTheme(): ChartTheme {
-  const [theme, setTheme] = useState<ChartTheme>('light')
-  useEffect(() => {
-    const dark = matchMedia('(prefers-color-scheme: dark)')
-    const root = document.documentElement
-    const read = () => {
-      const chosen = root.dataset.theme
-      setTheme(chosen === 'dark' || (chosen !== 'light' && dark.matches) ? 'dark' : 'light')
-    }
-    const toPaper = () => setTheme('print')
-    read()
-    const observer = new MutationObserver(read)
-    observer.observe(root, { attributes: true, attributeFilter: ['data-theme'] })
-    dark.addEventListener('change', read)
-    window.addEventListener('beforeprint', toPaper)
-    window.addEventListener('afterprint', read)
-    return () => {
-      observer.disconnect()
-      dark.removeEventListener('change', read)
-      window.removeEventListener('beforeprint', toPaper)
-      window.removeEventListener('afterprint', read)
-    }
-  }, [])
-  return theme
-}
-
 /** Canvas type falls back silently when a weight has not been loaded yet: wait for the two that charts use. */
 function useType(): boolean {
   const [ready, setReady] = useState(false)

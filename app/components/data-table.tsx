@@ -28,7 +28,7 @@ export function DataTable<Row>({
     return <p className="border border-rule bg-chalk-2 px-3 py-2.5 text-flint-2">{empty}</p>
   return (
     // biome-ignore lint/a11y/noNoninteractiveTabindex: a region that scrolls must be reachable by keyboard
-    <div className="overflow-x-auto border border-rule" tabIndex={0} role="region" aria-label={caption}>
+    <section className="overflow-x-auto border border-rule" tabIndex={0} aria-label={caption}>
       <table className="w-full border-collapse text-[0.93rem]">
         <caption className="sr-only">{caption}</caption>
         <thead>
@@ -82,6 +82,6 @@ export function DataTable<Row>({
           ))}
         </tbody>
       </table>
-    </div>
+    </section>
   )
 }

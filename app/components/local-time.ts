@@ -3,7 +3,9 @@ export function localTime(timeZone: string) {
   return {
     /** 24 Nov 2026 */
     day: (iso: string) =>
-      new Intl.DateTimeFormat('en-GB', { day: 'numeric', month: 'short', year: 'numeric', timeZone }).format(new Date(iso)),
+      new Intl.DateTimeFormat('en-GB', { day: 'numeric', month: 'short', year: 'numeric', timeZone }).format(
+        new Date(iso),
+      ),
     /** 24 Nov 2026, 16:08 */
     minute: (iso: string) =>
       new Intl.DateTimeFormat('en-GB', {

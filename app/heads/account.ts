@@ -15,7 +15,7 @@ export function byGravity(warnings: readonly Warning[]): Warning[] {
   return [...warnings].sort((a, b) => order.indexOf(a.severity) - order.indexOf(b.severity))
 }
 
-export const methodNames: Record<Result['method'], string> = {
+const methodNames: Record<Result['method'], string> = {
   sor: 'red-black successive over-relaxation',
 }
 
@@ -35,7 +35,7 @@ export function recordInWords(result: Result): string {
 }
 
 /** Two figures are enough for a residual or an error. */
-export function shortly(value: number): string {
+function shortly(value: number): string {
   if (value === 0) return '0'
   return formatNumber(Number(value.toPrecision(2)))
 }

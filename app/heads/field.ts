@@ -17,7 +17,7 @@ export function centresBetween(edges: Float64Array): Float64Array {
 }
 
 /** Index of the interval of rising `edges` that holds `value`, its ends included; -1 beyond either end. */
-export function intervalHolding(edges: Float64Array, value: number): number {
+function intervalHolding(edges: Float64Array, value: number): number {
   const last = edges.length - 1
   if (!(value >= (edges[0] as number) && value <= (edges[last] as number))) return -1
   let low = 0

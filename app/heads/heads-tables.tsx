@@ -2,7 +2,7 @@ import type { ReactNode } from 'react'
 import { type Column, DataTable } from '~/components/data-table'
 import { Notice } from '~/components/notice'
 import type { NamedFlow, Result, Warning } from '~/solver/result'
-import { formatNumber } from '~/units'
+import { formatNumber, formatSigned } from '~/units'
 import { balanceState, byGravity, errorInWords, severityWords } from './account'
 
 /** A named point of the run, with its head and what is known of the run compared with; in the run's unit. */
@@ -171,7 +171,7 @@ function flowColumns(first: string, rate: string): Column<FlowLine>[] {
     { head: first, cell: (line) => line.name },
     { head: 'Into the ground', unit: rate, cell: (line) => zero(line.inflow) },
     { head: 'Out of the ground', unit: rate, cell: (line) => zero(line.outflow) },
-    { head: 'Net', unit: rate, cell: (line) => signed(netOf(line)) },
+    { head: 'Net', unit: rate, cell: (line) => formatSigned(netOf(line)) },
   ]
 }
 
@@ -179,10 +179,6 @@ function flowColumns(first: string, rate: string): Column<FlowLine>[] {
 function netOf({ inflow, outflow }: FlowLine): number {
   const net = inflow - outflow
   return Math.abs(net) < 1e-9 * Math.max(inflow, outflow) ? 0 : net
-}
-
-function signed(value: number): string {
-  return value > 0 ? `+${formatNumber(value)}` : formatNumber(value)
 }
 
 function steady({ name, inflow, outflow }: NamedFlow): FlowLine {

@@ -8,10 +8,20 @@ import {
   contouringOf,
   headsPicture,
   headsPictureSvg,
-  noFeatures,
+  type PictureFeatures,
   type PictureInput,
   pictureLayout,
 } from './picture'
+
+const noFeatures: PictureFeatures = {
+  wells: [],
+  rechargeZones: [],
+  boundaries: [],
+  walls: [],
+  points: [],
+  rings: [],
+  noFlowEdges: [],
+}
 
 function even(from: number, to: number, cells: number): Float64Array {
   return Float64Array.from({ length: cells + 1 }, (_, i) => from + ((to - from) * i) / cells)

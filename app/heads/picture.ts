@@ -63,16 +63,6 @@ export interface PictureFeatures {
   noFlowEdges: readonly string[]
 }
 
-export const noFeatures: PictureFeatures = {
-  wells: [],
-  rechargeZones: [],
-  boundaries: [],
-  walls: [],
-  points: [],
-  rings: [],
-  noFlowEdges: [],
-}
-
 /** A residual (measured - modelled) to mark on a plan. */
 export interface ResidualMark {
   name: string

@@ -22,7 +22,7 @@ export interface FollowedRun {
 }
 
 /** Follows a run by polling while it is under way; picks up again after a reload, since the server keeps the state. */
-export function useRun(projectId: number, initial: RunStatus): FollowedRun {
+function useRun(projectId: number, initial: RunStatus): FollowedRun {
   const [status, setStatus] = useState(initial)
   const [residuals, setResiduals] = useState<readonly Residual[]>(() => withResidual([], initial))
   const [silent, setSilent] = useState(false)

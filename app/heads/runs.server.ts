@@ -463,7 +463,7 @@ export async function listRuns(db: Database, project: Project): Promise<RunLine[
  * The runs that the book has moved away from: their case, frozen now, would have another input (or none). A change
  * that does not reach a case, such as a new case beside it, leaves its runs current.
  */
-export async function staleRuns(
+async function staleRuns(
   db: Database,
   project: Project,
   runs: readonly Pick<Run, 'id' | 'caseId' | 'inputSha256' | 'sectionsDigest'>[],

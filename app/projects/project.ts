@@ -16,7 +16,7 @@ export interface Project {
   createdAt: Date
 }
 
-export function isTimeZone(name: string): boolean {
+function isTimeZone(name: string): boolean {
   try {
     new Intl.DateTimeFormat('en', { timeZone: name })
     return true

@@ -2,6 +2,7 @@ import { data, Form, href, redirect, useNavigation } from 'react-router'
 import { Button } from '~/components/button'
 import { DataTable } from '~/components/data-table'
 import { FormMessage } from '~/components/form-message'
+import { localTime } from '~/components/local-time'
 import { PageTitle } from '~/components/page-title'
 import { ThemeChoice } from '~/components/theme-choice'
 import { sessionContext, signedInContext } from '~/sign-in/guard.server'
@@ -35,10 +36,9 @@ export async function action({ context, request }: Route.ActionArgs) {
   return redirect(href('/sign-in'), { headers: { 'Set-Cookie': await endSession(database(), request) } })
 }
 
-const time = new Intl.DateTimeFormat('en-GB', { dateStyle: 'medium', timeStyle: 'short', timeZone: 'UTC' })
-
 export default function Account({ loaderData, actionData }: Route.ComponentProps) {
   const isBusy = useNavigation().state !== 'idle'
+  const { minute } = localTime('UTC')
   return (
     <>
       <PageTitle title="Account" />
@@ -63,8 +63,8 @@ export default function Account({ loaderData, actionData }: Route.ComponentProps
               words: true,
               cell: (session) => (session.isThisOne ? 'this one' : 'another one'),
             },
-            { head: 'Signed in', unit: 'UTC', cell: (session) => time.format(new Date(session.startedAt)) },
-            { head: 'Last used', unit: 'UTC', cell: (session) => time.format(new Date(session.lastSeenAt)) },
+            { head: 'Signed in', unit: 'UTC', cell: (session) => minute(session.startedAt) },
+            { head: 'Last used', unit: 'UTC', cell: (session) => minute(session.lastSeenAt) },
           ]}
         />
         <p className="mt-2 mb-4 text-[0.9rem] text-flint-2">

@@ -7,6 +7,7 @@ import { Confirm } from '~/components/confirm'
 import { Field } from '~/components/field'
 import { fieldProps } from '~/components/form-field'
 import { FormMessage } from '~/components/form-message'
+import { localTime } from '~/components/local-time'
 import { PageTitle } from '~/components/page-title'
 import {
   addPerson,
@@ -32,7 +33,7 @@ export async function loader({ context }: Route.LoaderArgs) {
       email: person.email,
       isAdministrator: person.isAdministrator,
       hasSignedIn: person.firstSignedInAt !== null,
-      leftOn: person.leftAt?.toISOString().slice(0, 10),
+      leftOn: person.leftAt && localTime('UTC').day(person.leftAt.toISOString()),
     })),
   }
 }

@@ -19,7 +19,7 @@ export function solveDense(matrix: number[][], right: number[]): number[] {
       for (let m = k; m <= n; m++) row[m] = (row[m] as number) - factor * (top[m] as number)
     }
   }
-  const solution = new Array<number>(n).fill(0)
+  const solution = Array.from({ length: n }, () => 0)
   for (let k = n - 1; k >= 0; k--) {
     const row = rows[k] as number[]
     let sum = row[n] as number

@@ -583,7 +583,7 @@ function subtractReference(d: Discretised): void {
   if (highest < lowest) {
     throw new ModelError(
       'boundaries',
-      'nothing fixes the level of the heads: give at least one fixed head or head-dependent boundary',
+      'nothing fixes the level of the heads: give at least one fixed head or head-dependent flux',
     )
   }
   d.reference = lowest + (highest - lowest) / 2
@@ -668,8 +668,8 @@ function refuseWithoutReference(d: Discretised): void {
     throw new ModelError(
       'boundaries',
       tied.length === 1
-        ? 'nothing fixes the level of the heads: give at least one fixed head or head-dependent boundary'
-        : `${cells} ${cells === 1 ? 'cell' : 'cells'} around (${x}, ${y}) are cut off from every fixed head and head-dependent boundary; their heads could be anything`,
+        ? 'nothing fixes the level of the heads: give at least one fixed head or head-dependent flux'
+        : `${cells} ${cells === 1 ? 'cell' : 'cells'} around (${x}, ${y}) are cut off from every fixed head and head-dependent flux; their heads could be anything`,
     )
   }
 }

@@ -176,8 +176,3 @@ export function transmissivityAt(profile: Profile, k: number[], h: number): numb
   }
   return sum
 }
-
-/** Thickness of all layers; infinite without a top. */
-export function fullThickness(profile: Profile): number {
-  return thicknessAt(profile, Number.POSITIVE_INFINITY)
-}

@@ -26,7 +26,6 @@ export const rechargeZoneSchema = z.strictObject({
 export type RechargeZone = z.infer<typeof rechargeZoneSchema>
 
 export const boundaryKinds = ['fixed head', 'specified flux', 'head-dependent flux', 'drain'] as const
-export type BoundaryKind = (typeof boundaryKinds)[number]
 export const fluxDirections = ['into the model', 'out of the model'] as const
 
 /**
@@ -38,7 +37,7 @@ export const boundarySchema = z
     name: text(80, 'Name the boundary.'),
     kind: z.enum(boundaryKinds, { error: 'Choose the kind of boundary.' }),
     line: polyline,
-    levels: z.array(quantity('length')).nullable().default(null),
+    levels: list(quantity('length'), { most: 2000 }).nullable().default(null),
     flux: notNegative('line flux', 'A flux').nullable().default(null),
     direction: z.enum(fluxDirections).default('into the model'),
     conductance: positive('conductivity', 'Conductance').nullable().default(null),

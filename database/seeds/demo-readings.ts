@@ -30,7 +30,7 @@ export const readingsFrom = Date.UTC(2025, 10, 20)
 export const readingsTo = Date.UTC(2026, 10, 28)
 const pumpingFrom = Date.UTC(2026, 8, 14, 9)
 
-/** Mulberry32: small, seeded, good enough for noise (public domain, T. Ettinger 2017, from memory). */
+/** Mulberry32: small, seeded, good enough for noise (public domain, T. Ettinger 2017). */
 function randomFrom(seed: number): () => number {
   let state = seed >>> 0
   return () => {

@@ -1,5 +1,5 @@
 /** Where a label stands about its symbol. */
-export const labelPlaces = [
+const labelPlaces = [
   'right',
   'left',
   'above',

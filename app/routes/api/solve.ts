@@ -3,6 +3,7 @@ import { cellCount } from '~/cases/cell-count'
 import { parseModelFile } from '~/cases/model-file'
 import { findModelSolve, forgetOldModelSolves, startModelSolve } from '~/heads/model-solves.server'
 import { jobEnded } from '~/jobs/jobs.server'
+import { limitedText, parseJson } from '~/json-body.server'
 import { findSignedIn, requireSameOrigin } from '~/sign-in/guard.server'
 import { database } from '~database/connection.server'
 import type { Route } from './+types/solve'
@@ -24,7 +25,7 @@ export async function action({ request }: Route.ActionArgs) {
   requireSameOrigin(request)
   const type = request.headers.get('content-type')?.split(';')[0]?.trim().toLowerCase()
   if (type !== 'application/json') return refuse(415, null, 'Send the model file as application/json.')
-  const text = await limitedText(request)
+  const text = await limitedText(request, largestBody)
   if (text === null) return refuse(413, null, 'A model file may have 8 MB at most.')
 
   const json = parseJson(text)
@@ -65,29 +66,6 @@ const privately = { 'Cache-Control': 'private, no-store' }
 
 function refuse(status: number, path: string | null, message: string, headers: Record<string, string> = {}) {
   return Response.json({ errors: [{ path, message }] }, { status, headers: { ...privately, ...headers } })
-}
-
-/** The body as text, or null once it is larger than a model file may be. */
-async function limitedText(request: Request): Promise<string | null> {
-  if (Number(request.headers.get('content-length') ?? 0) > largestBody) return null
-  if (!request.body) return ''
-  const chunks: Uint8Array[] = []
-  let bytes = 0
-  for await (const chunk of request.body as unknown as AsyncIterable<Uint8Array>) {
-    bytes += chunk.byteLength
-    if (bytes > largestBody) return null
-    chunks.push(chunk)
-  }
-  return Buffer.concat(chunks).toString('utf8')
-}
-
-function parseJson(text: string): unknown {
-  try {
-    return JSON.parse(text)
-  } catch (error) {
-    if (error instanceof SyntaxError) return undefined
-    throw error
-  }
 }
 
 function waitSeconds(request: Request): number {

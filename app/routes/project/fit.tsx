@@ -18,7 +18,7 @@ import { findRun, isStale, listRuns } from '~/heads/runs.server'
 import { idFrom, membershipContext, permit } from '~/projects/guard.server'
 import { can } from '~/projects/permissions'
 import { levelUnit } from '~/projects/project'
-import { formatNumber } from '~/units'
+import { formatNumber, formatSigned } from '~/units'
 import { database } from '~database/connection.server'
 import type { Route } from './+types/fit'
 
@@ -109,7 +109,7 @@ export default function FitPage({ loaderData, actionData, params }: Route.Compon
   const marks = useMemo(
     () =>
       lines.flatMap(({ name, x, y, residual }) =>
-        residual === null ? [] : [{ name, x, y, value: residual, label: withSign(residual) }],
+        residual === null ? [] : [{ name, x, y, value: residual, label: formatSigned(residual, 3) }],
       ),
     [lines],
   )
@@ -153,7 +153,7 @@ export default function FitPage({ loaderData, actionData, params }: Route.Compon
           ? [
               {
                 label: 'Bias (mean residual)',
-                value: withSign(statistics.bias),
+                value: formatSigned(statistics.bias, 3),
                 unit,
                 note:
                   statistics.bias > 0
@@ -228,9 +228,7 @@ export default function FitPage({ loaderData, actionData, params }: Route.Compon
               {
                 head: 'Residual',
                 unit,
-                cell: (line) => (
-                  <b className="font-semibold">{line.residual === null ? '–' : withSign(line.residual)}</b>
-                ),
+                cell: (line) => <b className="font-semibold">{formatSigned(line.residual, 3)}</b>,
               },
               { head: 'n', cell: (line) => formatNumber(line.n, 0) },
               {
@@ -300,18 +298,8 @@ export default function FitPage({ loaderData, actionData, params }: Route.Compon
   )
 }
 
-function withSign(value: number): string {
-  return `${value > 0 ? '+' : ''}${formatNumber(value, 3)}`
-}
-
 function spanWords(span: FitSpan): string {
-  const day = (iso: string) =>
-    new Intl.DateTimeFormat('en-GB', {
-      day: 'numeric',
-      month: 'short',
-      year: 'numeric',
-      timeZone: 'UTC',
-    }).format(new Date(`${iso}T12:00:00Z`))
+  const { day } = localTime('UTC')
   return 'date' in span ? day(span.date) : `${day(span.from)} to ${day(span.to)}`
 }
 

@@ -1,4 +1,5 @@
 import { DataTable } from '~/components/data-table'
+import { localTime } from '~/components/local-time'
 import { PageTitle } from '~/components/page-title'
 import { permit } from '~/projects/guard.server'
 import { recentHistory } from '~/projects/history.server'
@@ -7,15 +8,11 @@ import type { Route } from './+types/history'
 
 export async function loader({ context }: Route.LoaderArgs) {
   const { project } = permit(context, 'view', 'history')
-  const time = new Intl.DateTimeFormat('en-GB', {
-    dateStyle: 'medium',
-    timeStyle: 'short',
-    timeZone: project.timeZone,
-  })
+  const { minute } = localTime(project.timeZone)
   const lines = await recentHistory(database(), project.id)
   return {
     timeZone: project.timeZone,
-    lines: lines.map(({ at, ...line }) => ({ ...line, at: time.format(at) })),
+    lines: lines.map(({ at, ...line }) => ({ ...line, at: minute(at.toISOString()) })),
   }
 }
 

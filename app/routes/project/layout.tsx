@@ -39,13 +39,12 @@ export async function loader({ context }: Route.LoaderArgs) {
       number: project.number,
       title: project.title,
       calcReference: project.calcReference,
+      timeZone: project.timeZone,
     },
     states: await sectionStates(db, project.id),
     titleBlock: await titleBlockFacts(db, project.id),
   }
 }
-
-const shortDate = new Intl.DateTimeFormat('en-GB', { day: 'numeric', month: 'short', timeZone: 'UTC' })
 
 function initials(name: string): string {
   return name
@@ -55,10 +54,11 @@ function initials(name: string): string {
     .toUpperCase()
 }
 
-function signed(signatures: Signature[], role: Signature['role']) {
+function signed(signatures: Signature[], role: Signature['role'], timeZone: string) {
   const signature = signatures.find((s) => s.role === role)
   if (!signature) return <span className="font-normal text-flint-2">–</span>
-  return `${initials(signature.name)} ${shortDate.format(new Date(signature.at))}`
+  const day = new Intl.DateTimeFormat('en-GB', { day: 'numeric', month: 'short', timeZone })
+  return `${initials(signature.name)} ${day.format(new Date(signature.at))}`
 }
 
 function Person({ person }: { person: { name: string; role: string } }) {
@@ -143,17 +143,17 @@ export default function ProjectLayout({ loaderData, params }: Route.ComponentPro
                 <span className="font-normal text-flint-2">none yet</span>
               ),
             },
-            { label: 'Made', value: signed(titleBlock.signatures, 'originator') },
+            { label: 'Made', value: signed(titleBlock.signatures, 'originator', project.timeZone) },
             {
               label: 'Checked',
               value:
                 reopened > 0 ? (
                   <span className="font-normal text-madder">{reopened} reopened</span>
                 ) : (
-                  signed(titleBlock.signatures, 'checker')
+                  signed(titleBlock.signatures, 'checker', project.timeZone)
                 ),
             },
-            { label: 'Approved', value: signed(titleBlock.signatures, 'approver') },
+            { label: 'Approved', value: signed(titleBlock.signatures, 'approver', project.timeZone) },
             { label: 'Section', value: current ? `${current.number} of ${sections.length - 1}` : '–' },
           ]}
         />

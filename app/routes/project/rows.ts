@@ -1,5 +1,7 @@
 import { z } from 'zod'
+import { list } from '~/book/list'
 import { saveRows } from '~/book/rows.server'
+import { limitedText, parseJson } from '~/json-body.server'
 import { membershipContext, notFound } from '~/projects/guard.server'
 import { can, type Subject } from '~/projects/permissions'
 import { rowKinds } from '~/row-kinds.server'
@@ -13,16 +15,14 @@ const id = z.string().regex(/^[A-Za-z0-9-]{1,36}$/)
 const version = z.number().int().positive()
 const kind = z.string().max(40)
 const requestSchema = z.strictObject({
-  changes: z
-    .array(
-      z.discriminatedUnion('op', [
-        z.strictObject({ op: z.literal('add'), kind, id, body: z.unknown() }),
-        z.strictObject({ op: z.literal('edit'), kind, id, version, body: z.unknown() }),
-        z.strictObject({ op: z.literal('delete'), kind, id, version, alsoElsewhere: z.boolean().optional() }),
-      ]),
-    )
-    .min(1)
-    .max(1000)
+  changes: list(
+    z.discriminatedUnion('op', [
+      z.strictObject({ op: z.literal('add'), kind, id, body: z.unknown() }),
+      z.strictObject({ op: z.literal('edit'), kind, id, version, body: z.unknown() }),
+      z.strictObject({ op: z.literal('delete'), kind, id, version, alsoElsewhere: z.boolean().optional() }),
+    ]),
+    { least: 1, most: 1000 },
+  )
     .refine(
       (changes) => new Set(changes.map((change) => change.id)).size === changes.length,
       'One change a row.',
@@ -52,7 +52,7 @@ export async function action({ request, context }: Route.ActionArgs) {
   if (!request.headers.get('content-type')?.startsWith('application/json')) {
     return refusal(415, 'Rows are sent as JSON.')
   }
-  const text = await limitedText(request)
+  const text = await limitedText(request, mostBytes)
   if (text === null) return refusal(413, 'This is too much for one save: 2 MB at most.')
   const read = requestSchema.safeParse(parseJson(text))
   if (!read.success) {
@@ -60,7 +60,7 @@ export async function action({ request, context }: Route.ActionArgs) {
   }
   const { changes, reason } = read.data
   for (const change of changes) {
-    const section = rowKinds[change.kind]?.section
+    const section = Object.hasOwn(rowKinds, change.kind) ? rowKinds[change.kind]?.section : undefined
     if (section && !can(member, 'edit', section as Subject<'edit'>)) {
       return refusal(403, `your role (${member.role}) may not edit ${section}`)
     }
@@ -74,32 +74,4 @@ export async function action({ request, context }: Route.ActionArgs) {
   })
   const status = answer.ok ? 200 : answer.conflicts.length > 0 ? 409 : 400
   return Response.json(answer, { status })
-}
-
-/** The body as text, or null once it is longer than it may be. */
-async function limitedText(request: Request): Promise<string | null> {
-  if (Number(request.headers.get('content-length') ?? 0) > mostBytes) return null
-  const chunks: Uint8Array[] = []
-  let length = 0
-  const reader = request.body?.getReader()
-  while (reader) {
-    const { done, value } = await reader.read()
-    if (done) break
-    length += value.byteLength
-    if (length > mostBytes) {
-      await reader.cancel()
-      return null
-    }
-    chunks.push(value)
-  }
-  return Buffer.concat(chunks).toString('utf8')
-}
-
-function parseJson(text: string): unknown {
-  try {
-    return JSON.parse(text)
-  } catch (error) {
-    if (error instanceof SyntaxError) return undefined
-    throw error
-  }
 }

@@ -8,6 +8,7 @@ import { DataTable } from '~/components/data-table'
 import { Field, SelectField } from '~/components/field'
 import { fieldProps } from '~/components/form-field'
 import { FormMessage } from '~/components/form-message'
+import { localTime } from '~/components/local-time'
 import { PageTitle } from '~/components/page-title'
 import { membershipContext, permit } from '~/projects/guard.server'
 import {
@@ -34,7 +35,10 @@ export async function loader({ context }: Route.LoaderArgs) {
     settings: settingsOf(project),
     seen: settingsVersion(project),
     timeZones: can(member, 'edit', 'settings') ? Intl.supportedValuesOf('timeZone') : [],
-    members: members.map((line) => ({ ...line, since: line.since.toISOString().slice(0, 10) })),
+    members: members.map((line) => ({
+      ...line,
+      since: localTime(project.timeZone).day(line.since.toISOString()),
+    })),
     me: member.userId,
     mayEdit: can(member, 'edit', 'settings'),
     mayManage: can(member, 'manage', 'members'),
