@@ -4,8 +4,17 @@ import { lineLength, signedArea, type Vertex } from '~/book/field'
 import { sections } from '~/book/sections'
 import { mostBalanceError } from '~/checks/balance-limit'
 import type { HeadField } from '~/heads/field'
+import { levelUnit } from '~/projects/project'
 import { decodeHeads } from '~/solver/heads-buffer'
-import { convert, type Dimension, formatNumber, type Quantity, shownUnit, unitLabel } from '~/units'
+import {
+  convert,
+  type Dimension,
+  formatNumber,
+  formatSigned,
+  type Quantity,
+  shownUnit,
+  unitLabel,
+} from '~/units'
 import { drawdownFigure, headsFigure, oneToOneFigure, residualFigure } from './figures'
 import type { DrawRequest, GatheredContent, GatheredCover } from './gathered'
 import {
@@ -65,11 +74,6 @@ export function localDay(content: GatheredContent, iso: string | null): string {
   return DateTime.fromISO(iso, { zone: content.project.timeZone }).setLocale('en-GB').toFormat('d LLL yyyy')
 }
 
-function signed(value: number | null): string {
-  if (value === null) return '–'
-  return `${value > 0 ? '+' : ''}${formatNumber(value, 2)}`
-}
-
 // ---- 1 Basis --------------------------------------------------------------------------------------------------
 
 function basisSection(content: GatheredContent): Content[] {
@@ -77,7 +81,7 @@ function basisSection(content: GatheredContent): Content[] {
   const { length, time } = project.units
   const rate = unitLabel(shownUnit('rate', project.units))
   const symbols: [symbol: string, meaning: string, unit: string][] = [
-    ['h', `head, ${project.verticalDatum}`, length],
+    ['h', 'head above the vertical datum', length],
     [
       'K, T',
       'hydraulic conductivity; transmissivity, K × thickness',
@@ -493,7 +497,7 @@ function headsSection({ content, heads, againstHeads }: DrawRequest): Content[] 
       figure(
         '5.1',
         headsFigure(content, field),
-        `Heads, ${length} ${project.verticalDatum}; case ${run.caseName}, run ${run.number}, ${localDay(content, run.endedAt)}. `,
+        `Heads, ${levelUnit(length, project.verticalDatum)}; case ${run.caseName}, run ${run.number}, ${localDay(content, run.endedAt)}. `,
       ),
     ),
     subsection('5.2', 'Heads at named points', pointsTable(content)),
@@ -530,20 +534,20 @@ function pointsTable({ run, against, project }: GatheredContent): Piece {
   const before = new Map(against?.result.points.map((p) => [p.name, p.head[0] ?? null]))
   const rows = run.result.points.map((point) => {
     const now = point.head[0] ?? null
-    const then = before.get(point.name) ?? null
+    const other = before.get(point.name) ?? null
     return {
       name: point.name,
       head: now,
-      then,
-      drawdown: now === null || then === null ? null : then - now,
+      other,
+      drawdown: now === null || other === null ? null : other - now,
       why: point.why ?? '',
     }
   })
   return table(
     '5.1',
     against
-      ? `Heads at named points, ${length} ${project.verticalDatum}, and drawdown against run ${against.number}`
-      : `Heads at named points, ${length} ${project.verticalDatum}`,
+      ? `Heads at named points, ${levelUnit(length, project.verticalDatum)}, and drawdown against run ${against.number}`
+      : `Heads at named points, ${levelUnit(length, project.verticalDatum)}`,
     [
       { head: 'Point', cell: (p) => p.name },
       { head: 'Head', unit: length, cell: (p) => formatNumber(p.head, 3) },
@@ -552,7 +556,7 @@ function pointsTable({ run, against, project }: GatheredContent): Piece {
             {
               head: `Run ${against.number}`,
               unit: length,
-              cell: (p: (typeof rows)[number]) => formatNumber(p.then, 3),
+              cell: (p: (typeof rows)[number]) => formatNumber(p.other, 3),
             },
             {
               head: 'Drawdown Δh',
@@ -622,7 +626,7 @@ function readingsSection(content: GatheredContent): Content[] {
       'Instruments',
       table(
         '6.1',
-        `Instruments and last heads, ${units.length} ${verticalDatum}`,
+        `Instruments and last heads, ${levelUnit(units.length, verticalDatum)}`,
         [
           { head: 'Instrument', cell: (i) => (i.outOfService ? `${i.name} (out of service)` : i.name) },
           { head: 'Kind', words: true, cell: (i) => i.kind },
@@ -706,7 +710,7 @@ function fitSection({ content, heads }: DrawRequest): Content[] {
           {
             head: 'Residual',
             unit: length,
-            cell: (l) => (l.residual !== null && l.residual > 0 ? '+' : '') + formatNumber(l.residual, 3),
+            cell: (l) => formatSigned(l.residual, 3),
           },
           { head: 'Note', words: true, optional: true, cell: (l) => l.why ?? '' },
         ],
@@ -718,7 +722,7 @@ function fitSection({ content, heads }: DrawRequest): Content[] {
             'Statistics of the residuals; scaled RMSE is RMSE over the range of the measured heads',
             [
               { head: 'Comparisons n', cell: (s) => `${s.n} of ${lines.length}` },
-              { head: 'Bias (mean)', unit: length, cell: (s) => signed(s.bias) },
+              { head: 'Bias (mean)', unit: length, cell: (s) => formatSigned(s.bias, 2) },
               { head: 'MAE', unit: length, cell: (s) => formatNumber(s.mae, 3) },
               { head: 'RMSE', unit: length, cell: (s) => formatNumber(s.rmse, 3) },
               {
@@ -726,7 +730,7 @@ function fitSection({ content, heads }: DrawRequest): Content[] {
                 unit: '%',
                 cell: (s) => (s.scaledRmse === null ? '–' : formatNumber(100 * s.scaledRmse, 1)),
               },
-              { head: 'Largest', unit: length, cell: (s) => signed(s.largest) },
+              { head: 'Largest', unit: length, cell: (s) => formatSigned(s.largest, 2) },
             ],
             [statistics],
           )
