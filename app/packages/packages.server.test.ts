@@ -214,8 +214,10 @@ describe('A revision of the package', { timeout: 240_000 }, () => {
     })
   })
 
-  it('keeps its number when it is withdrawn', async () => {
+  it('keeps its number when it is withdrawn, and is not opened by a gathering that began before', async () => {
+    const gathering = gatherAgain(fresh.database, project, second, people.originator)
     expect(await withdrawPackage(fresh.database, project, second, people.manager)).toMatchObject({ ok: true })
+    await gathering
     runId = (await strip.compute()).id
     const third = await made('More water, one point more')
     expect((await found(third)).revision).toBe('P03')

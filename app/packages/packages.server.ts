@@ -5,7 +5,7 @@ import { mostBalanceError } from '~/checks/balance-limit'
 import { environment } from '~/environment.server'
 import { getVerified, putBuffer, recordFile } from '~/files/files.server'
 import { findRun, isStale, runHeads } from '~/heads/runs.server'
-import { enterJob, launchJob } from '~/jobs/jobs.server'
+import { cancelJob, enterJob, launchJob } from '~/jobs/jobs.server'
 import { recordHistory } from '~/projects/history.server'
 import type { Project } from '~/projects/project'
 import type { Database } from '~database/connection.server'
@@ -122,9 +122,9 @@ export async function makePackage(
 ): Promise<Outcome> {
   const objection = await runObjection(db, project, input.runId)
   if (objection) return { ok: false, message: objection }
-  const content = await gatherContent(db, project, input)
-  const frozen = freeze(content)
+  // Before the content: what changes while it is gathered counts as moved, never as gathered.
   const sectionsDigest = await digestOf(db, project.id, printed)
+  const frozen = freeze(await gatherContent(db, project, input))
   const made = await db.transaction(async (trx): Promise<Outcome> => {
     await trx('projects').where({ id: project.id }).forUpdate().first('id')
     const taken = await trx<PackageRow>('packages')
@@ -172,6 +172,8 @@ export async function gatherAgain(
   const row = await findPackage(db, project.id, packageId)
   if (!row || !isOpen(row.status))
     return { ok: false, message: 'Only an open revision can be gathered again.' }
+  // Before the content: what changes while it is gathered counts as moved, never as gathered.
+  const sectionsDigest = await digestOf(db, project.id, printed)
   const frozen = freeze(
     await gatherContent(db, project, {
       runId: row.run_id,
@@ -179,8 +181,18 @@ export async function gatherAgain(
       fitDate: row.fit_date?.toISOString().slice(0, 10),
     }),
   )
-  const sectionsDigest = await digestOf(db, project.id, printed)
-  await db.transaction(async (trx) => {
+  const gathered = await db.transaction(async (trx): Promise<Outcome> => {
+    const now = await trx<PackageRow>('packages')
+      .where({ id: packageId, project_id: project.id })
+      .forUpdate()
+      .first()
+    // Gathering takes a while, in which the revision may have been issued: then it never changes again.
+    if (now?.status !== row.status || now.input_sha256 !== row.input_sha256) {
+      return {
+        ok: false,
+        message: 'Somebody else was quicker: the package has moved on. Nothing was gathered.',
+      }
+    }
     await trx('package_signatures').where({ package_id: packageId }).delete()
     await trx('packages').where({ id: packageId }).update({
       gathered: frozen.text,
@@ -191,9 +203,10 @@ export async function gatherAgain(
     await noteChange(trx, project.id, userId, 'gathered package again', row.revision, {
       input: frozen.sha256,
     })
+    return { ok: true, packageId }
   })
-  await startDrawing(db, project, packageId, userId)
-  return { ok: true, packageId }
+  if (gathered.ok) await startDrawing(db, project, packageId, userId)
+  return gathered
 }
 
 function isOpen(status: PackageStatus): boolean {
@@ -231,8 +244,9 @@ export async function bookHasMoved(db: Database, projectId: number, packageId: n
 }
 
 /**
- * Signs an open revision; `seenSha256` is the input hash that the signer had before their eyes. Originator first, then checker, then approver; the checker and the approver have made no
- * part of it: neither the package, nor its run, nor any row of the sections that it prints.
+ * Signs an open revision; `seenSha256` is the input hash that the signer had before their eyes. Originator first, then
+ * checker, then approver; the checker and the approver have made no part of it: neither the package, nor its run, nor
+ * any row or import of the sections that it prints.
  */
 export async function signPackage(
   db: Database,
@@ -320,6 +334,7 @@ async function hasMadeAnyOf(
     db('packages').where({ id: packageId, created_by: userId }).first('id'),
     db('runs').where({ id: runId, created_by: userId }).first('id'),
     db('book_rows').where({ project_id: projectId, recorded_by: userId }).first('id'),
+    db('imports').where({ project_id: projectId, state: 'committed', committed_by: userId }).first('id'),
     db('package_signatures')
       .where({ package_id: packageId, user_id: userId, role: 'originator' })
       .first('package_id'),
@@ -416,6 +431,8 @@ export async function startDrawing(
     await trx('packages').where({ id: packageId }).update({ job_id: entered })
     return entered
   })
+  // What was being drawn until now is out of date.
+  if (row.job_id !== null) await cancelJob(row.job_id)
   launchJob<{ pdf: ArrayBuffer }>(jobId, {
     projectId: project.id,
     userId,

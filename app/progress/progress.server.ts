@@ -43,6 +43,7 @@ export async function progressView(db: Database, project: Project): Promise<Prog
       name: reading.name,
       outOfService: reading.outOfService,
       head: inProjectUnit(reading.lastHead?.head ?? null, unit),
+      headAt: reading.lastHead?.at ?? null,
       at: reading.last?.at ?? null,
       status: reading.last?.status ?? null,
       quality: reading.last?.quality ?? null,

@@ -33,8 +33,9 @@ export interface IssuedDocument {
 export interface ProgressInstrument {
   name: string
   outOfService: boolean
-  /** Last head in the project's unit, null without one. */
+  /** Last head in the project's unit and when it was read, null without one. */
   head: number | null
+  headAt: string | null
   /** When the last reading of any sort was taken. */
   at: string | null
   /** "dry", "frozen" … of the last reading. */
@@ -44,14 +45,17 @@ export interface ProgressInstrument {
   predicted: number | null
 }
 
-const dayLength = 86_400_000
-
-/** How old a reading is, in words. */
-export function ageWords(at: string | null, now: number): string {
+/** How old a reading is, in words, by the calendar of the site. */
+export function ageWords(at: string | null, now: number, timeZone: string): string {
   if (at === null) return 'never read'
-  const days = Math.floor((now - Date.parse(at)) / dayLength)
-  if (days < 1) return 'today or yesterday'
-  if (days < 14) return `${days} ${days === 1 ? 'day' : 'days'} ago`
+  const day = (instant: number) => {
+    const parts = new Intl.DateTimeFormat('en-CA', { timeZone, dateStyle: 'short' }).format(instant)
+    return Date.parse(`${parts}T00:00:00Z`) / 86_400_000
+  }
+  const days = day(now) - day(Date.parse(at))
+  if (days <= 0) return 'today'
+  if (days === 1) return 'yesterday'
+  if (days < 14) return `${days} days ago`
   if (days < 70) return `${Math.round(days / 7)} weeks ago`
   return `${Math.round(days / 30.4)} months ago`
 }
@@ -59,6 +63,11 @@ export function ageWords(at: string | null, now: number): string {
 export interface Against {
   words: string
   shape: '●' | '▲' | '▼' | '–'
+}
+
+/** The head that the last reading gave: none when it found the instrument dry, say, whatever was read before. */
+export function presentHead(instrument: Pick<ProgressInstrument, 'head' | 'headAt' | 'at'>): number | null {
+  return instrument.headAt === instrument.at ? instrument.head : null
 }
 
 /**

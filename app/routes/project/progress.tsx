@@ -7,7 +7,13 @@ import { TextField } from '~/components/field'
 import { FormMessage } from '~/components/form-message'
 import { localTime } from '~/components/local-time'
 import { statusMeaning } from '~/packages/package'
-import { againstPrediction, ageWords } from '~/progress/progress'
+import {
+  type Against,
+  againstPrediction,
+  ageWords,
+  type ProgressInstrument,
+  presentHead,
+} from '~/progress/progress'
 import { progressView } from '~/progress/progress.server'
 import { permit } from '~/projects/guard.server'
 import { can } from '~/projects/permissions'
@@ -62,6 +68,16 @@ export default function ProgressPage({ loaderData, actionData, params }: Route.C
     .flatMap((i) => (i.at ? [i.at] : []))
     .sort()
     .at(-1)
+  const lines = view.instruments.map((instrument): Line => {
+    const present = presentHead(instrument)
+    return {
+      ...instrument,
+      present,
+      against: againstPrediction(present, instrument.predicted, near),
+      age: ageWords(instrument.at, now, project.timeZone),
+    }
+  })
+  const compared = lines.filter((line) => line.against.shape !== '–')
   const working = view.instruments.filter((i) => !i.outOfService).length
   const provisional = view.instruments.some((i) => i.quality === 'raw' || i.quality === 'provisional')
   const pdf = (id: number) =>
@@ -167,43 +183,52 @@ export default function ProgressPage({ loaderData, actionData, params }: Route.C
         {view.instruments.length > 0 &&
           `${working} of ${view.instruments.length} instruments are in service. ${provisional ? 'Readings are as taken and not yet checked.' : ''}`}
       </p>
-      <DataTable
-        caption="Last reading of each instrument, and what was predicted"
-        rows={view.instruments}
-        rowKey={(instrument) => instrument.name}
-        empty="There are no instruments yet."
-        columns={[
-          { head: 'Instrument', cell: (i) => i.name },
-          { head: 'Water level', unit: project.unit, cell: (i) => formatNumber(i.head, 2) },
-          {
-            head: 'Read',
-            words: true,
-            cell: (i) => (
-              <>
-                {ageWords(i.at, now)}
-                {i.status && <span className="text-ochre"> · {i.status}</span>}
-                {i.outOfService && <span className="text-madder"> · out of service</span>}
-              </>
-            ),
-          },
-          { head: 'Predicted', unit: project.unit, cell: (i) => formatNumber(i.predicted, 2) },
-          {
-            head: 'Against the prediction',
-            words: true,
-            cell: (i) => {
-              const { words, shape } = againstPrediction(i.head, i.predicted, near)
-              return (
-                <span className={shape === '●' ? 'text-moss' : shape === '–' ? 'text-flint-2' : 'text-ochre'}>
-                  <span aria-hidden className="mr-1.5 text-[0.75rem]">
-                    {shape}
-                  </span>
-                  {words}
-                </span>
-              )
-            },
-          },
-        ]}
-      />
+      {compared.length > 0 && <p className="mb-3 font-semibold">{summaryOf(compared)}</p>}
+      {view.instruments.length === 0 && (
+        <p className="border border-rule bg-chalk-2 px-3 py-2.5 text-flint-2">
+          There are no instruments yet.
+        </p>
+      )}
+      <ul className="border-t border-rule empty:hidden sm:hidden">
+        {lines.map((line) => (
+          <li
+            key={line.name}
+            className="grid grid-cols-[1fr_auto] gap-x-4 border-b border-rule py-2.5 leading-snug"
+          >
+            <b className="text-[1.08rem] font-semibold">{line.name}</b>
+            <span className="text-right text-[1.08rem] tabular-nums">
+              {formatNumber(line.present, 2)} <span className="text-flint-2">{project.unit}</span>
+            </span>
+            <AgainstPrediction against={line.against} />
+            <span className="text-right text-[0.93rem] text-flint-2 tabular-nums">
+              predicted {formatNumber(line.predicted, 2)}
+            </span>
+            <span className="col-span-2 text-[0.93rem] text-flint-2">
+              <ReadingAge line={line} />
+            </span>
+          </li>
+        ))}
+      </ul>
+      <div className="hidden sm:block">
+        {lines.length > 0 && (
+          <DataTable
+            caption="Last reading of each instrument, and what was predicted"
+            rows={lines}
+            rowKey={(line) => line.name}
+            columns={[
+              { head: 'Instrument', cell: (line) => line.name },
+              { head: 'Water level', unit: project.unit, cell: (line) => formatNumber(line.present, 2) },
+              { head: 'Predicted', unit: project.unit, cell: (line) => formatNumber(line.predicted, 2) },
+              {
+                head: 'Against the prediction',
+                words: true,
+                cell: (line) => <AgainstPrediction against={line.against} />,
+              },
+              { head: 'Read', words: true, cell: (line) => <ReadingAge line={line} /> },
+            ]}
+          />
+        )}
+      </div>
       <p className="mt-2 text-[0.87rem] text-flint-2">
         Levels in {project.levels}, times of the site ({project.timeZone}). Predicted: the steady state of the
         latest issued package; “as predicted” means within {formatNumber(near, 1)} {project.unit}.
@@ -222,6 +247,49 @@ export default function ProgressPage({ loaderData, actionData, params }: Route.C
         licensed practice govern.
       </p>
     </main>
+  )
+}
+
+interface Line extends ProgressInstrument {
+  /** The head of the last reading, null when it gave none. */
+  present: number | null
+  against: Against
+  age: string
+}
+
+/** "8 of 10 levels are as predicted, 1 is higher, 1 is lower." */
+function summaryOf(compared: readonly Line[]): string {
+  const count = (shape: Against['shape']) => compared.filter((line) => line.against.shape === shape).length
+  const agree = count('●')
+  if (agree === compared.length) {
+    return agree === 1 ? 'The one level compared is as predicted.' : `All ${agree} levels are as predicted.`
+  }
+  const others = [
+    [count('▲'), 'higher'],
+    [count('▼'), 'lower'],
+  ] as const
+  const rest = others.flatMap(([n, word]) => (n === 0 ? [] : [`${n} ${n === 1 ? 'is' : 'are'} ${word}`]))
+  return `${agree} of ${compared.length} levels ${agree === 1 ? 'is' : 'are'} as predicted, ${rest.join(', ')}.`
+}
+
+function AgainstPrediction({ against: { shape, words } }: { against: Against }) {
+  return (
+    <span className={shape === '●' ? 'text-moss' : shape === '–' ? 'text-flint-2' : 'text-ochre'}>
+      <span aria-hidden className="mr-1.5 text-[0.75rem]">
+        {shape}
+      </span>
+      {words}
+    </span>
+  )
+}
+
+function ReadingAge({ line }: { line: Line }) {
+  return (
+    <>
+      {line.age}
+      {line.status && <span className="text-ochre"> · {line.status}</span>}
+      {line.outOfService && <span className="text-madder"> · out of service</span>}
+    </>
   )
 }
 
