@@ -1,5 +1,6 @@
 import { z } from 'zod'
 import { convert, type Dimension, isUnitName, type Quantity, unitLabel, units, unitsOf } from '~/units'
+import { list } from './list'
 
 /** Building blocks of row schemas, with messages that a sheet can show beside the cell. */
 
@@ -49,11 +50,16 @@ export const coordinate = z
 export const vertex = z.tuple([coordinate, coordinate])
 export type Vertex = [number, number]
 
-export const polyline = z.array(vertex).min(2, 'A line needs two vertices at least.').max(2000)
-export const polygon = z
-  .array(vertex)
-  .min(3, 'A polygon needs three vertices at least.')
-  .max(2000)
+export const polyline = list(vertex, {
+  least: 2,
+  most: 2000,
+  tooFew: 'A line needs two vertices at least.',
+})
+export const polygon = list(vertex, {
+  least: 3,
+  most: 2000,
+  tooFew: 'A polygon needs three vertices at least.',
+})
   .refine((ring) => Math.abs(signedArea(ring as Vertex[])) > 0, 'This polygon has no area.')
   .refine((ring) => !crossesItself(ring as Vertex[]), 'The edges of this polygon cross each other.')
 

@@ -43,6 +43,18 @@ async function add(kind: string, body: unknown, projectId = site): Promise<strin
   return id
 }
 
+describe('a kind of row', () => {
+  it('that is none is refused by name, also where every object has something of that name', async () => {
+    for (const kind of ['pump', 'constructor', '__proto__']) {
+      const answer = await save([{ op: 'add', kind, id: crypto.randomUUID(), body: {} }])
+      expect(answer).toMatchObject({
+        ok: false,
+        problems: [{ message: `There is no kind of row called "${kind}" here.` }],
+      })
+    }
+  })
+})
+
 describe('two people who edit the same well', () => {
   it('the second is shown both values, and nothing of either is lost', async () => {
     const id = await add('well', well('W1'))

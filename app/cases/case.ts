@@ -1,5 +1,6 @@
 import { z } from 'zod'
 import { coordinate, positive, quantity, text } from '~/book/field'
+import { list } from '~/book/list'
 import type { Row } from '~/book/row'
 import { type Dimension, type Quantity, units } from '~/units'
 

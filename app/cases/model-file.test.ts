@@ -62,6 +62,18 @@ describe('the model file', () => {
     expect(errors(file({ format: 'other' }))).toHaveProperty('format')
   })
 
+  it('names the first wrong entries of a list and reads no further, however many there are', () => {
+    const begun = performance.now()
+    const wrong = errors(file({ materials: Array(1_000_000).fill(0) }))
+    expect(Object.keys(wrong)).toHaveLength(20)
+    expect(wrong).toHaveProperty(['materials[19]'])
+    expect(performance.now() - begun).toBeLessThan(2000)
+    const few = { name: 'B', kind: 'fixed head', line: [[0, 0]], head: 1 }
+    expect(errors(file({ boundaries: [few] }))).toHaveProperty(['boundaries[0].line'])
+    const many = Object.fromEntries(Array.from({ length: 5000 }, (_, k) => [`field${k}`, 1]))
+    expect(Object.keys(errors(file(many)))).toHaveLength(20)
+  })
+
   it('reads what this version does not compute, so that the engine can refuse it by name', () => {
     const time = {
       kind: 'transient',

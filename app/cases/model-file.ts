@@ -1,26 +1,27 @@
 import { z } from 'zod'
+import { list, mostNamed } from '~/book/list'
 import type { Model } from '~/solver/model'
 
 const position = z.tuple([z.number(), z.number()])
-const line = z.array(position).min(2)
-const polygon = z.array(position).min(3)
+const line = list(position, { least: 2 })
+const polygon = list(position, { least: 3 })
 const name = z.string()
 const source = z.string().optional()
-const stageValue = z.union([z.number(), z.array(z.number())])
-const value = z.union([z.number(), z.array(z.number()), z.strictObject({ stages: z.array(stageValue) })])
+const stageValue = z.union([z.number(), list(z.number())])
+const value = z.union([z.number(), list(z.number()), z.strictObject({ stages: list(stageValue) })])
 const surface = z.union([
   z.number(),
-  z.strictObject({ xyz: z.array(z.tuple([z.number(), z.number(), z.number()])).min(1) }),
+  z.strictObject({ xyz: list(z.tuple([z.number(), z.number(), z.number()]), { least: 1 }) }),
 ])
 
 const grid = z.union([
   z.strictObject({ columns: z.int().min(1), rows: z.int().min(1) }),
-  z.strictObject({ xEdges: z.array(z.number()).min(2), yEdges: z.array(z.number()).min(2) }),
+  z.strictObject({ xEdges: list(z.number(), { least: 2 }), yEdges: list(z.number(), { least: 2 }) }),
   z.strictObject({
     cellSize: z.number().positive(),
-    refine: z
-      .array(z.strictObject({ x: z.number(), y: z.number(), cellSize: z.number().positive() }))
-      .optional(),
+    refine: list(
+      z.strictObject({ x: z.number(), y: z.number(), cellSize: z.number().positive() }),
+    ).optional(),
   }),
 ])
 
@@ -30,23 +31,22 @@ const time = z.discriminatedUnion('kind', [
     kind: z.literal('transient'),
     initialHead: z.union([
       z.number(),
-      z.array(z.number().nullable()),
+      list(z.number().nullable()),
       z.literal('steady'),
       z.literal('steady with wells'),
     ]),
     report: z.enum(['stages', 'steps']).optional(),
-    stages: z
-      .array(
-        z.strictObject({
-          name: z.string().optional(),
-          duration: z.number().positive(),
-          firstStep: z.number().positive().optional(),
-          growth: z.number().min(1).optional(),
-          largestStep: z.number().positive().optional(),
-          steps: z.literal('automatic').optional(),
-        }),
-      )
-      .min(1),
+    stages: list(
+      z.strictObject({
+        name: z.string().optional(),
+        duration: z.number().positive(),
+        firstStep: z.number().positive().optional(),
+        growth: z.number().min(1).optional(),
+        largestStep: z.number().positive().optional(),
+        steps: z.literal('automatic').optional(),
+      }),
+      { least: 1 },
+    ),
   }),
 ])
 
@@ -73,7 +73,7 @@ const ground = z.strictObject({
   material: z.string().optional(),
   base: surface.optional(),
   top: surface.optional(),
-  layers: z.array(layer).min(1).optional(),
+  layers: list(layer, { least: 1 }).optional(),
   source,
 })
 
@@ -113,7 +113,7 @@ const boundary = z.discriminatedUnion('kind', [
 ])
 
 /** The model file, version 1: strict, so that a misspelt field is an error and not a silent default. */
-export const modelFile = z.strictObject({
+const modelFile = z.strictObject({
   format: z.literal('lavant-model'),
   version: z.literal(1),
   title: z.string().optional(),
@@ -131,40 +131,34 @@ export const modelFile = z.strictObject({
   extent: z.strictObject({ x: position, y: position }),
   grid,
   time,
-  materials: z.array(material).min(1),
-  ground: z.array(ground).min(1),
-  wells: z.array(well).optional(),
-  recharge: z.array(recharge).optional(),
-  boundaries: z.array(boundary).optional(),
-  walls: z
-    .array(
-      z.strictObject({ name, line, thickness: z.number().positive(), k: z.number().nonnegative(), source }),
-    )
-    .optional(),
-  leakage: z
-    .array(
-      z.strictObject({
-        name,
-        polygon: polygon.optional(),
-        head: value,
-        leakance: z.number().nonnegative(),
-        source,
-      }),
-    )
-    .optional(),
-  points: z
-    .array(
-      z.strictObject({
-        name,
-        x: z.number(),
-        y: z.number(),
-        side: z.enum(['left', 'right']).optional(),
-        source,
-      }),
-    )
-    .optional(),
-  lines: z.array(z.strictObject({ name, line, source })).optional(),
-  rings: z.array(z.strictObject({ name, polygon, source })).optional(),
+  materials: list(material, { least: 1 }),
+  ground: list(ground, { least: 1 }),
+  wells: list(well).optional(),
+  recharge: list(recharge).optional(),
+  boundaries: list(boundary).optional(),
+  walls: list(
+    z.strictObject({ name, line, thickness: z.number().positive(), k: z.number().nonnegative(), source }),
+  ).optional(),
+  leakage: list(
+    z.strictObject({
+      name,
+      polygon: polygon.optional(),
+      head: value,
+      leakance: z.number().nonnegative(),
+      source,
+    }),
+  ).optional(),
+  points: list(
+    z.strictObject({
+      name,
+      x: z.number(),
+      y: z.number(),
+      side: z.enum(['left', 'right']).optional(),
+      source,
+    }),
+  ).optional(),
+  lines: list(z.strictObject({ name, line, source })).optional(),
+  rings: list(z.strictObject({ name, polygon, source })).optional(),
   solver: z
     .strictObject({
       method: z.enum(['automatic', 'sor', 'multigrid']).optional(),
@@ -174,11 +168,9 @@ export const modelFile = z.strictObject({
   want: z
     .strictObject({
       verify: z.boolean().optional(),
-      sensitivities: z.array(z.string()).optional(),
+      sensitivities: list(z.string()).optional(),
       responses: z.boolean().optional(),
-      flowLines: z
-        .array(z.strictObject({ from: position, direction: z.enum(['forward', 'back']) }))
-        .optional(),
+      flowLines: list(z.strictObject({ from: position, direction: z.enum(['forward', 'back']) })).optional(),
     })
     .optional(),
 })
@@ -205,7 +197,7 @@ type Issue = z.core.$ZodIssue
 function errorsOf(issue: Issue, before: PropertyKey[], json: unknown): ModelFileError[] {
   const path = [...before, ...issue.path]
   if (issue.code === 'unrecognized_keys') {
-    return issue.keys.map((key) => ({
+    return issue.keys.slice(0, mostNamed).map((key) => ({
       path: written([...path, key]),
       message: 'is not a field of the model file',
     }))

@@ -1,4 +1,5 @@
 import { z } from 'zod'
+import { list } from '~/book/list'
 import { isUnitName, type UnitName } from '~/units'
 import { delimiters, encodings } from './file-format'
 import { instrumentKinds } from './instrument'
@@ -102,7 +103,7 @@ export const importSettingsSchema = z
       status: column('the status').nullable().default(null),
     }),
     /** The cells of the header row, by which a later file of the same make is recognised. */
-    header: z.array(z.string().max(200)).max(500).default([]),
+    header: list(z.string().max(200), { most: 500 }).default([]),
   })
   .refine((s) => unitsOfQuantity(s.value.quantity).includes(s.value.unit), {
     path: ['value', 'unit'],

@@ -1,5 +1,6 @@
 import { z } from 'zod'
 import { coordinate, notNegative, polygon, polyline, positive, quantity, source, text } from '~/book/field'
+import { list } from '~/book/list'
 
 export const wellKinds = ['abstraction', 'recharge'] as const
 

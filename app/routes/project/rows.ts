@@ -22,11 +22,10 @@ const requestSchema = z.strictObject({
       z.strictObject({ op: z.literal('delete'), kind, id, version, alsoElsewhere: z.boolean().optional() }),
     ]),
     { least: 1, most: 1000 },
-  )
-    .refine(
-      (changes) => new Set(changes.map((change) => change.id)).size === changes.length,
-      'One change a row.',
-    ),
+  ).refine(
+    (changes) => new Set(changes.map((change) => change.id)).size === changes.length,
+    'One change a row.',
+  ),
   reason: z.string().trim().max(500).optional(),
 })
 
