@@ -6,6 +6,7 @@ import express, { type NextFunction, type Request, type Response } from 'express
 import { RouterContextProvider, type ServerBuild } from 'react-router'
 import { clientAddress } from '../app/client-address.ts'
 import { type Environment, environment } from '../app/environment.server.ts'
+import { limitBody } from './services/body-limit.ts'
 import { closed, listening } from './services/listening.ts'
 import { reportAndFail } from './services/report-and-fail.ts'
 import { runUnderParent } from './services/under-parent.ts'
@@ -38,8 +39,9 @@ function makeServer(build: ServerBuild, settings: Environment) {
   app.use((request, response, next) => {
     response.set(headers)
     if (settings.mode === 'production') logWhenAnswered(request, response)
-    // A page elsewhere that renames itself to this machine must not read the demo's mail.
-    if (settings.mode === 'demo' && !loopbackNames.has(request.hostname)) {
+    // A page elsewhere that renames itself to this machine must not read the demo's mail. Only Host counts: such a page
+    // may send a forwarded host of its choice.
+    if (settings.mode === 'demo' && !loopbackNames.has(hostOf(request))) {
       response.status(421).type('text').send('The demo answers to the name of this machine only.')
       return
     }
@@ -56,6 +58,7 @@ function makeServer(build: ServerBuild, settings: Environment) {
     }),
   )
   app.use(express.static(join(root, 'build/client'), { maxAge: '1h', index: false, redirect: false }))
+  app.use(limitBody)
   app.use(
     createRequestHandler({
       build,
@@ -69,6 +72,10 @@ function makeServer(build: ServerBuild, settings: Environment) {
   )
   app.use(answerError)
   return createServer(app)
+}
+
+function hostOf(request: Request): string {
+  return request.headers.host?.replace(/:\d*$/, '').toLowerCase() ?? ''
 }
 
 /** One line a request. Without its query string, which may hold what a person searched for or typed. */
