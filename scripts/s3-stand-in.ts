@@ -24,7 +24,8 @@ await store.configureBuckets()
 const answer = store.callback()
 
 const server = createServer((request, response) => {
-  const named = `${request.headers.authorization ?? ''} ${decodeURIComponent(request.url ?? '')}`
+  // Not decoded: an address that is no proper encoding, which any web page may ask for, must not end this process.
+  const named = `${request.headers.authorization ?? ''} ${request.url ?? ''}`.replaceAll('%2F', '/')
   if (!named.includes(`Credential=${s3.accessKey}/`)) {
     response.writeHead(403).end()
     return

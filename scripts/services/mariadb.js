@@ -208,7 +208,7 @@ export async function startMariadb({
       `--port=${port}`,
       '--skip-name-resolve',
       '--skip-log-bin',
-      '--local-infile=1',
+      '--local-infile=0',
       '--default-time-zone=+00:00',
       '--character-set-server=utf8mb4',
       '--collation-server=utf8mb4_unicode_ci',
