@@ -198,6 +198,7 @@ export function downloadHeaders(file: { name: string; content_type: string }, in
     'Content-Disposition': `${inline ? 'inline' : 'attachment'}; filename="${plain}"; filename*=UTF-8''${encodeURIComponent(file.name)}`,
     'X-Content-Type-Options': 'nosniff',
     'Content-Security-Policy': "sandbox; default-src 'none'",
-    'Cache-Control': 'private, max-age=3600',
+    // A browser may keep it but asks each time: somebody else may sit there by then, or the person have left.
+    'Cache-Control': 'private, no-cache',
   })
 }
