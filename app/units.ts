@@ -143,6 +143,7 @@ export function isUnitName(name: string): name is UnitName {
   return Object.hasOwn(units, name)
 }
 
+/** The unit as it is printed: "m³/d". */
 export function unitLabel(unit: UnitName): string {
   return units[unit].label
 }

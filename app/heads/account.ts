@@ -40,14 +40,18 @@ function shortly(value: number): string {
   return formatNumber(Number(value.toPrecision(2)))
 }
 
+/** The water-balance error, in percent, to two figures; what is below rounding is said to be. */
 export function errorInWords(percent: number): string {
   return Math.abs(percent) < 1e-4 ? 'below 0.0001 %' : `${shortly(percent)} %`
 }
 
-/** A steady balance should close far below 0.1 % of the inflow; one that is out by more than 1 % is not a balance. */
+/** Error of the water balance above which a run is no result, in percent of the inflow (common practice, no source). */
+export const mostBalanceError = 0.1
+
+/** A steady balance closes far below its limit; one that is out by more than 1 % is not a balance. */
 export function balanceState(percent: number): 'good' | 'warn' | 'alarm' {
   const size = Math.abs(percent)
-  return size <= 0.1 ? 'good' : size <= 1 ? 'warn' : 'alarm'
+  return size <= mostBalanceError ? 'good' : size <= 1 ? 'warn' : 'alarm'
 }
 
 /** "north and part of west" for a sentence. */

@@ -9,14 +9,17 @@ export function columnFaceCount(grid: Grid): number {
   return (grid.columns + 1) * grid.rows
 }
 
+/** How many faces a grid has, those on its edge included. */
 export function faceCount(grid: Grid): number {
   return columnFaceCount(grid) + grid.columns * (grid.rows + 1)
 }
 
+/** Index of the face on the low-x side of cell (i, j); i = columns gives the edge of high x. */
 export function faceBetweenColumns(grid: Grid, i: number, j: number): number {
   return j * (grid.columns + 1) + i
 }
 
+/** Index of the face on the low-y side of cell (i, j), behind all faces between columns; j = rows gives the edge of high y. */
 export function faceBetweenRows(grid: Grid, i: number, j: number): number {
   return columnFaceCount(grid) + j * grid.columns + i
 }

@@ -52,6 +52,10 @@ export interface FlowModel {
   linear: boolean
 }
 
+/**
+ * What the flow between cells needs and no head changes: transmissivities [length²/time] where confined, profiles
+ * with their film [length], which keeps dry cells in the equations, where unconfined.
+ */
 export function flowModelOf(d: Discretised): FlowModel {
   const linear =
     !d.unconfined &&
@@ -78,6 +82,7 @@ export function flowModelOf(d: Discretised): FlowModel {
   return { d, flows, fullX: [], fullY: [], film, linear }
 }
 
+/** A matrix of zeros for the model's cells; symmetric where confined, where opposite faces share their coefficient. */
 export function emptyMatrix(model: FlowModel): Matrix {
   const { columns, rows } = model.d.grid
   const n = columns * rows

@@ -20,6 +20,10 @@ const magic = 'LAVHEADS'
 const version = 1
 const headerBytes = 24
 
+/**
+ * One buffer of a head field: header, edges along x and y, then heads by row from the lowest y, all in the model's
+ * length, NaN where there is none. Throws RangeError when the heads do not fit the grid.
+ */
 export function encodeHeads(grid: Grid, heads: Float64Array): ArrayBuffer {
   const { columns, rows, xEdges, yEdges } = grid
   if (heads.length !== columns * rows) {

@@ -42,6 +42,7 @@ export function checkLine(line: Position[], path: string): void {
   if (lineLength(line) === 0) throw new ModelError(path, 'the line has no length')
 }
 
+/** Length of a line through its vertices, in their unit. */
 export function lineLength(line: Position[]): number {
   let length = 0
   for (let s = 0; s + 1 < line.length; s++) length += segmentLength(line, s)

@@ -20,6 +20,10 @@ export interface Stencil {
   visible: [boolean, boolean, boolean, boolean]
 }
 
+/**
+ * The four cell centres around a place and where it lies between them, for bilinear interpolation. Beyond the outer
+ * centres the grid is mirrored at its edge; a cell that is not there is -1 and not visible.
+ */
 export function stencilAt(model: Model, grid: Grid, active: Uint8Array, x: number, y: number): Stencil {
   const xCentres = centresOf(grid.xEdges)
   const yCentres = centresOf(grid.yEdges)
@@ -51,6 +55,7 @@ function pairAround(edges: Float64Array, centres: Float64Array, index: number): 
   return [first, second]
 }
 
+/** Bilinear weight of a corner (0 low x and y, 1 high x, 2 high y, 3 both); the four add up to 1. */
 export function weightOf(stencil: Stencil, corner: number): number {
   const wx = corner & 1 ? stencil.fx : 1 - stencil.fx
   const wy = corner >> 1 ? stencil.fy : 1 - stencil.fy

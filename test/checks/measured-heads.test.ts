@@ -24,7 +24,7 @@ interface Measured {
 }
 
 /** Positions in metres. */
-const measured: Measured[] = readFileSync(join(import.meta.dirname, 'wolfcamp_heads.csv'), 'utf8')
+const measured: Measured[] = readFileSync(join(import.meta.dirname, 'data/wolfcamp_heads.csv'), 'utf8')
   .trim()
   .split('\n')
   .slice(1)

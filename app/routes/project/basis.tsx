@@ -62,7 +62,12 @@ export default function BasisPage({ loaderData }: Route.ComponentProps) {
       actions={
         <>
           <SaveState book={book} />
-          <CheckButton projectId={project.id} status={status} mayCheck={mayCheck} />
+          <CheckButton
+            projectId={project.id}
+            timeZone={project.timeZone}
+            status={status}
+            mayCheck={mayCheck}
+          />
         </>
       }
       references={referenceLines(

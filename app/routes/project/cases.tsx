@@ -207,7 +207,12 @@ export default function Cases({ loaderData }: Route.ComponentProps) {
               {base && <Button onClick={() => newCase(base)}>Add case</Button>}
             </>
           )}
-          <CheckButton projectId={project.id} status={loaderData.section} mayCheck={loaderData.mayCheck} />
+          <CheckButton
+            projectId={project.id}
+            timeZone={project.timeZone}
+            status={loaderData.section}
+            mayCheck={loaderData.mayCheck}
+          />
         </>
       }
     >

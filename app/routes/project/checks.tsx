@@ -5,12 +5,12 @@ import { listRows } from '~/book/rows.server'
 import { SaveState } from '~/book/save-state'
 import { sectionStatus } from '~/book/sections.server'
 import { useRows } from '~/book/use-rows'
-import { mostBalanceError } from '~/checks/balance-limit'
 import type { Estimate } from '~/checks/estimate'
 import { checkColumns, checkSchemas, EstimateSheet } from '~/checks/estimate-sheet'
 import { DataTable } from '~/components/data-table'
 import { Caution, Notice } from '~/components/notice'
 import { Heading, SectionPage } from '~/components/section-page'
+import { mostBalanceError } from '~/heads/account'
 import { latestDoneRun } from '~/heads/runs.server'
 import { permit } from '~/projects/guard.server'
 import { can } from '~/projects/permissions'
@@ -76,7 +76,12 @@ export default function ChecksPage({ loaderData }: Route.ComponentProps) {
       actions={
         <>
           <SaveState book={book} />
-          <CheckButton projectId={project.id} status={status} mayCheck={mayCheck} />
+          <CheckButton
+            projectId={project.id}
+            timeZone={project.timeZone}
+            status={status}
+            mayCheck={mayCheck}
+          />
         </>
       }
       references={referenceLines(

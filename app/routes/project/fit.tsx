@@ -10,7 +10,7 @@ import { localTime } from '~/components/local-time'
 import { Notice } from '~/components/notice'
 import { Heading, SectionPage } from '~/components/section-page'
 import { toTsv } from '~/components/spreadsheet'
-import { type FitSpan, inProjectUnit, nearestWithinDays, spanFrom } from '~/fit/fit'
+import { type FitLine, type FitSpan, inProjectUnit, nearestWithinDays, spanFrom } from '~/fit/fit'
 import { dayOfLastReading, fitOf, keptComparison, recordFit } from '~/fit/fit.server'
 import { fitTable } from '~/fit/fit-table'
 import { featuresOf } from '~/heads/features'
@@ -122,7 +122,12 @@ export default function FitPage({ loaderData, actionData, params }: Route.Compon
       number={7}
       title="Fit"
       actions={
-        <CheckButton projectId={project.id} status={loaderData.status} mayCheck={loaderData.mayCheck} />
+        <CheckButton
+          projectId={project.id}
+          timeZone={project.timeZone}
+          status={loaderData.status}
+          mayCheck={loaderData.mayCheck}
+        />
       }
       status={
         run ? (
@@ -241,7 +246,15 @@ export default function FitPage({ loaderData, actionData, params }: Route.Compon
                       : `${time.day(line.firstAt)} to ${time.day(line.lastAt)}`
                     : '–',
               },
-              { head: 'Note', words: true, cell: (line) => <span className="text-flint-2">{line.why}</span> },
+              ...(lines.some((line) => line.why)
+                ? [
+                    {
+                      head: 'Note',
+                      words: true,
+                      cell: (line: FitLine) => <span className="text-flint-2">{line.why}</span>,
+                    },
+                  ]
+                : []),
             ]}
           />
           {mayKeep && (

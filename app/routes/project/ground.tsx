@@ -134,7 +134,12 @@ export default function GroundPage({ loaderData }: Route.ComponentProps) {
       actions={
         <>
           <SaveState book={book} />
-          <CheckButton projectId={project.id} status={status} mayCheck={mayCheck} />
+          <CheckButton
+            projectId={project.id}
+            timeZone={project.timeZone}
+            status={status}
+            mayCheck={mayCheck}
+          />
         </>
       }
       references={sourced}

@@ -244,7 +244,12 @@ function Computed({ data }: { data: Ready }) {
             none="no other run"
             onChoose={(id) => choose('against', id)}
           />
-          <CheckButton projectId={Number(projectId)} status={status} mayCheck={mayCheck} />
+          <CheckButton
+            projectId={Number(projectId)}
+            timeZone={project.timeZone}
+            status={status}
+            mayCheck={mayCheck}
+          />
         </>
       }
       status={<RunStatusLine data={data} />}

@@ -140,7 +140,12 @@ export default function ReadingsPage({ loaderData }: Route.ComponentProps) {
       actions={
         <>
           <SaveState book={book} />
-          <CheckButton projectId={project.id} status={status} mayCheck={mayCheck} />
+          <CheckButton
+            projectId={project.id}
+            timeZone={project.timeZone}
+            status={status}
+            mayCheck={mayCheck}
+          />
         </>
       }
       references={[
@@ -169,6 +174,18 @@ export default function ReadingsPage({ loaderData }: Route.ComponentProps) {
         onDraw={draw}
         tools={['instrument']}
       />
+      <nav aria-label="Parts of this section" className="screen-only mb-3 flex flex-wrap gap-x-5 gap-y-1">
+        {[
+          { no: '6.1', title: 'Instruments', count: lines.length },
+          { no: '6.2', title: 'Last readings', count: lines.filter((line) => line.last).length },
+          { no: '6.3', title: 'Imports', count: imports.length },
+        ].map(({ no, title, count }) => (
+          <a key={no} href={`#s${no.replace('.', '-')}`}>
+            <span className="mr-1 text-flint-2">{no}</span>
+            {title} <span className="text-flint-2">{count}</span>
+          </a>
+        ))}
+      </nav>
       <Heading no="6.1" aside="position, response zone, serial">
         Instruments
       </Heading>
