@@ -24,6 +24,9 @@ function useType(): boolean {
   return ready
 }
 
+/** Pixels below which axes leave no room for a plot; a page being laid out anew passes through such widths. */
+const leastWidth = 200
+
 /**
  * A chart as wide as its place. `draw` gets the width in pixels and returns what to draw and how high; it is called
  * again when the width or `draw` itself changes, so keep it (useCallback). `onHover` and `onPick` get pixels from the chart's top left corner; `onHover` gets null
@@ -55,7 +58,7 @@ export function ContourChart({
     observer.observe(frame.current)
     return () => observer.disconnect()
   }, [])
-  const drawn = useMemo(() => (ready && width > 0 ? draw(width) : null), [draw, ready, width])
+  const drawn = useMemo(() => (ready && width >= leastWidth ? draw(width) : null), [draw, ready, width])
   const height = drawn?.height
 
   function listen(chart: echarts.ECharts) {

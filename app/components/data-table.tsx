@@ -33,21 +33,25 @@ export function DataTable<Row>({
         <caption className="sr-only">{caption}</caption>
         <thead>
           <tr className="border-b border-flint-2">
-            {columns.map((column, index) => (
-              <th
-                // biome-ignore lint/suspicious/noArrayIndexKey: columns are fixed
-                key={index}
-                scope="col"
-                className={`bg-chalk-2 px-2.5 py-1.5 font-semibold whitespace-nowrap ${
-                  column.words || index === 0 ? 'text-left' : 'text-right'
-                } ${index === 0 ? 'sticky left-0 z-10' : ''}`}
-              >
-                {column.head}
-                {column.unit && (
-                  <span className="ml-1 text-[0.82em] font-normal text-flint-2">{column.unit}</span>
-                )}
-              </th>
-            ))}
+            {columns.map((column, index) => {
+              // A heading without words is no heading: a screen reader would announce nothing.
+              const Cell = column.head === '' ? 'td' : 'th'
+              return (
+                <Cell
+                  // biome-ignore lint/suspicious/noArrayIndexKey: columns are fixed
+                  key={index}
+                  scope={Cell === 'th' ? 'col' : undefined}
+                  className={`bg-chalk-2 px-2.5 py-1.5 font-semibold whitespace-nowrap ${
+                    column.words || index === 0 ? 'text-left' : 'text-right'
+                  } ${index === 0 ? 'sticky left-0 z-10' : ''}`}
+                >
+                  {column.head}
+                  {column.unit && (
+                    <span className="ml-1 text-[0.82em] font-normal text-flint-2">{column.unit}</span>
+                  )}
+                </Cell>
+              )
+            })}
           </tr>
         </thead>
         <tbody>

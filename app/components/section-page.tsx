@@ -68,12 +68,11 @@ export function SectionPage({
       <main id="work" className="order-1 min-w-0 px-3 pt-4 pb-10 wide:order-2 wide:px-5.5 wide:pt-5">
         <div className="flex flex-wrap items-end justify-between gap-x-5 gap-y-3">
           <h1 className="text-[1.75rem] leading-none font-semibold">
-            <span className="mr-3 font-normal text-flint-2">{number}</span>
-            {title}
+            <span className="mr-2 font-normal text-flint-2">{number}</span> {title}
           </h1>
           {actions && <div className="screen-only flex flex-wrap items-center gap-2.5">{actions}</div>}
         </div>
-        {status && <div className="mt-3 text-[0.93rem] text-flint-2">{status}</div>}
+        {status && <div className="mt-3 text-[0.93rem] text-flint-2 [&_a]:underline">{status}</div>}
         <div className="mt-4">{children}</div>
       </main>
       <aside
@@ -122,8 +121,7 @@ export function Heading({ no, children, aside }: { no: string; children: ReactNo
   return (
     <div className="mt-7 mb-2 flex flex-wrap items-baseline justify-between gap-3 first:mt-0">
       <h2 className="text-[1.15rem] font-semibold" id={`s${no.replace('.', '-')}`}>
-        <span className="mr-2 font-normal text-flint-2">{no}</span>
-        {children}
+        <span className="mr-1 font-normal text-flint-2">{no}</span> {children}
       </h2>
       {aside && <div className="text-[0.9rem] text-flint-2">{aside}</div>}
     </div>

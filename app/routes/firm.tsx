@@ -44,7 +44,7 @@ export default function Firm({ loaderData }: Route.ComponentProps) {
               {loaderData.name}
               {loaderData.isAdministrator && <span className="text-flint-2">, administrator</span>}
             </span>
-            <Form method="post" action={href('/sign-out')}>
+            <Form method="post" action={href('/sign-out')} reloadDocument>
               <button type="submit" className="text-bourne hover:underline">
                 Sign out
               </button>

@@ -34,7 +34,7 @@ test('The checker cannot sign before the sections that wait are checked', async 
   expect(await sectionsThatAre('drafted', 'changed since check')).not.toEqual([])
   await page.getByRole('button', { name: 'Sign as checker' }).click()
   await page.getByText(/Check these sections first:/).waitFor()
-  expect(lavant.troubles(/status of 400/)).toEqual([])
+  lavant.forgive(400)
 })
 
 test('Each section that waits is ticked, and the spine shows it as checked', async () => {

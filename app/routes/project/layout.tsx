@@ -71,7 +71,7 @@ function Person({ person }: { person: { name: string; role: string } }) {
       <div className="flex flex-wrap items-center gap-x-3 wide:mt-2">
         <Link to={href('/projects')}>Projects</Link>
         <Link to={href('/account')}>Account</Link>
-        <Form method="post" action={href('/sign-out')}>
+        <Form method="post" action={href('/sign-out')} reloadDocument>
           <button type="submit" className="text-bourne hover:underline">
             Sign out
           </button>
