@@ -7,7 +7,7 @@ import { coverRowId } from '../app/book/cover'
 import { coverKinds } from '../app/book/cover-kinds.server'
 import type { RowChange } from '../app/book/row'
 import { listRows, type RowKind, saveRows } from '../app/book/rows.server'
-import { checkSection } from '../app/book/sections.server'
+import { checkSection, sectionStatus } from '../app/book/sections.server'
 import { casesKinds } from '../app/cases/cases-kinds.server'
 import { checkKinds } from '../app/checks/check-kinds.server'
 import { putObject, recordFile } from '../app/files/files.server'
@@ -445,7 +445,8 @@ async function checkAll(db: Knex, projectId: number, userId: number): Promise<vo
     'fit',
     'checks',
   ] as const) {
-    if (!(await checkSection(db, projectId, section, userId)))
+    const { digest } = await sectionStatus(db, projectId, section)
+    if ((await checkSection(db, projectId, section, userId, digest)) !== 'checked')
       throw new Error(`Section ${section} of the demo is empty.`)
   }
 }

@@ -5,6 +5,7 @@ import { type FreshDatabase, freshDatabase } from '../../test/database'
 import { makePerson, makeProject } from '../../test/people'
 import type { RowChange } from './row'
 import { listRows, listUses, saveRows } from './rows.server'
+import type { SectionKey } from './sections'
 import { checkSection, sectionStatus } from './sections.server'
 
 let fresh: FreshDatabase
@@ -131,15 +132,28 @@ describe('a saved row', () => {
   it('reopens its section and those made from it once they were checked', async () => {
     await add('assumption', { reference: 'A1', statement: 'The clay is tight.' })
     const id = await add('material', sand)
-    await checkSection(db, site, 'ground', tom)
-    await checkSection(db, site, 'water', tom)
-    await checkSection(db, site, 'basis', tom)
+    await tick('ground')
+    await tick('water')
+    await tick('basis')
     await save([{ op: 'edit', kind: 'material', id, version: 1, body: { ...sand, name: 'Silty sand' } }])
     expect((await sectionStatus(db, site, 'ground')).state).toBe('changed since check')
     expect((await sectionStatus(db, site, 'water')).state).toBe('changed since check')
     expect((await sectionStatus(db, site, 'basis')).state).toBe('checked')
   })
+
+  it('is not ticked in another state than the checker saw', async () => {
+    const id = await add('material', sand)
+    const { digest } = await sectionStatus(db, site, 'ground')
+    await save([{ op: 'edit', kind: 'material', id, version: 1, body: { ...sand, name: 'Clayey sand' } }])
+    expect(await checkSection(db, site, 'ground', tom, digest)).toBe('changed meanwhile')
+    expect((await sectionStatus(db, site, 'ground')).state).not.toBe('checked')
+  })
 })
+
+async function tick(section: SectionKey) {
+  const { digest } = await sectionStatus(db, site, section)
+  expect(await checkSection(db, site, section, tom, digest)).toBe('checked')
+}
 
 describe('a row that others use', () => {
   it('stays while one of them cannot do without it', async () => {

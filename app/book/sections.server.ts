@@ -57,16 +57,18 @@ export async function sectionStates(db: Database, projectId: number): Promise<Se
   const digests = new Map([...rows].map(([key, row]) => [key, row.digest]))
   return sections.map(({ key }) => {
     const row = rows.get(key)
+    const digest = combined(key, digests)
     const state = !row?.digest
       ? 'empty'
       : !row.checked_digest
         ? 'drafted'
-        : row.checked_digest === combined(key, digests)
+        : row.checked_digest === digest
           ? 'checked'
           : 'changed since check'
     return {
       key,
       state,
+      digest,
       changedAt: row?.changed_at ?? null,
       checkedAt: row?.checked_at ?? null,
       checkedBy: row?.checked_by_name ?? null,
@@ -98,24 +100,32 @@ export async function digestOf(
   return hash.digest('hex')
 }
 
-/** Marks a section as checked in its present state. Returns false when there is nothing in it to check. */
+export type CheckAnswer = 'checked' | 'nothing to check' | 'changed meanwhile'
+
+/**
+ * Marks a section as checked in its present state, and in no other than the checker saw: `seen` is the digest of the
+ * page that was checked.
+ */
 export async function checkSection(
   db: Database,
   projectId: number,
   section: SectionKey,
   userId: number,
-): Promise<boolean> {
-  return db.transaction(async (trx) => {
+  seen: string,
+): Promise<CheckAnswer> {
+  return db.transaction(async (trx): Promise<CheckAnswer> => {
     const rows = await trx('book_sections')
       .where({ project_id: projectId })
       .forUpdate()
       .select('section', 'digest')
     const digests = new Map<SectionKey, string | null>(rows.map((row) => [row.section, row.digest]))
-    if (!digests.get(section)) return false
+    if (!digests.get(section)) return 'nothing to check'
+    const digest = combined(section, digests)
+    if (digest !== seen) return 'changed meanwhile'
     await trx('book_sections')
       .where({ project_id: projectId, section })
-      .update({ checked_digest: combined(section, digests), checked_at: new Date(), checked_by: userId })
+      .update({ checked_digest: digest, checked_at: new Date(), checked_by: userId })
     await recordHistory(trx, { projectId, userId, section, action: 'checked section', subject: section })
-    return true
+    return 'checked'
   })
 }

@@ -37,6 +37,8 @@ export type SectionState = 'empty' | 'drafted' | 'checked' | 'changed since chec
 export interface SectionStatus {
   key: SectionKey
   state: SectionState
+  /** Of what the section and those it is made from hold: a check says which it saw. */
+  digest: string
   changedAt: Date | null
   checkedAt: Date | null
   checkedBy: string | null

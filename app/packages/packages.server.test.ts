@@ -37,9 +37,9 @@ async function pump(rate: number) {
 }
 
 async function checkEverything() {
-  for (const { key, state } of await sectionStates(fresh.database, project.id)) {
+  for (const { key, state, digest } of await sectionStates(fresh.database, project.id)) {
     if (state !== 'empty' && key !== 'package') {
-      await checkSection(fresh.database, project.id, key, people.checker)
+      await checkSection(fresh.database, project.id, key, people.checker, digest)
     }
   }
 }

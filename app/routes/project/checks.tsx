@@ -161,8 +161,12 @@ export default function ChecksPage({ loaderData }: Route.ComponentProps) {
             ]}
             rowKey={(row) => row.what}
             columns={[
-              { head: `Run ${run.number}, ${run.caseName}`, cell: (row) => row.what },
-              { head: 'Found', words: true, cell: (row) => row.value },
+              { head: 'Check', cell: (row) => row.what },
+              {
+                head: 'Found',
+                words: true,
+                cell: (row) => <span className="whitespace-nowrap">{row.value}</span>,
+              },
               { head: 'Held against', words: true, cell: (row) => row.limit },
             ]}
           />

@@ -239,12 +239,15 @@ export default function FitPage({ loaderData, actionData, params }: Route.Compon
               {
                 head: 'Read',
                 words: true,
-                cell: (line) =>
-                  line.firstAt && line.lastAt
-                    ? line.firstAt === line.lastAt
-                      ? time.minute(line.lastAt)
-                      : `${time.day(line.firstAt)} to ${time.day(line.lastAt)}`
-                    : '–',
+                cell: (line) => (
+                  <span className="whitespace-nowrap">
+                    {line.firstAt && line.lastAt
+                      ? line.firstAt === line.lastAt
+                        ? time.minute(line.lastAt)
+                        : `${time.day(line.firstAt)} to ${time.day(line.lastAt)}`
+                      : '–'}
+                  </span>
+                ),
               },
               ...(lines.some((line) => line.why)
                 ? [

@@ -184,8 +184,10 @@ export default function ImportPage({ loaderData, actionData }: Route.ComponentPr
       title="Readings"
       status={
         <>
-          <Link to={readingsPath}>Readings</Link> / import of{' '}
-          <b className="font-semibold text-flint">{file.name}</b>
+          <Link to={readingsPath} className="underline">
+            Readings
+          </Link>{' '}
+          / import of <b className="font-semibold text-flint">{file.name}</b>
         </>
       }
       references={[

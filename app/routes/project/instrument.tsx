@@ -108,8 +108,10 @@ export default function InstrumentPage({ loaderData, actionData }: Route.Compone
       title="Readings"
       status={
         <>
-          <Link to={readingsPath}>Readings</Link> /{' '}
-          <b className="font-semibold text-flint">{row.body.name}</b>, {row.body.kind}
+          <Link to={readingsPath} className="underline">
+            Readings
+          </Link>{' '}
+          / <b className="font-semibold text-flint">{row.body.name}</b>, {row.body.kind}
           {row.body.outOfService && ', out of service'}
         </>
       }
@@ -253,7 +255,7 @@ function Levels({ loaderData }: { loaderData: Loaded }) {
           ...(mayEdit
             ? [
                 {
-                  head: '',
+                  head: 'Change',
                   words: true,
                   cell: (level: Row<ReferenceLevel>) => (
                     <Form method="post" className="screen-only flex items-start gap-3">

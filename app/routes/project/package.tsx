@@ -211,11 +211,23 @@ export default function PackagePage({ loaderData, actionData, params }: Route.Co
         empty="No revision has been made yet."
         columns={[
           { head: 'Revision', cell: (p) => p.revision },
-          { head: 'Status', words: true, cell: (p) => p.status },
-          { head: 'Reason', words: true, cell: (p) => p.reason },
+          { head: 'Status', words: true, cell: (p) => <span className="whitespace-nowrap">{p.status}</span> },
+          { head: 'Reason', words: true, cell: (p) => <span className="block min-w-40">{p.reason}</span> },
           { head: 'Run', cell: (p) => p.runNumber ?? '–' },
-          { head: 'Made', words: true, cell: (p) => `${time.day(p.createdAt)}, ${p.createdBy}` },
-          { head: 'Issued', words: true, cell: (p) => (p.issuedAt ? time.day(p.issuedAt) : '–') },
+          {
+            head: 'Made',
+            words: true,
+            cell: (p) => (
+              <>
+                <span className="whitespace-nowrap">{time.day(p.createdAt)}</span>, {p.createdBy}
+              </>
+            ),
+          },
+          {
+            head: 'Issued',
+            words: true,
+            cell: (p) => <span className="whitespace-nowrap">{p.issuedAt ? time.day(p.issuedAt) : '–'}</span>,
+          },
           {
             head: 'PDF',
             words: true,
