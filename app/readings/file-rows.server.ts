@@ -105,7 +105,10 @@ export function sampleRows(
   // The sample may end within a row: leave that one out, unless it is all there is.
   const end = Math.max(whole.lastIndexOf('\n'), whole.lastIndexOf('\r'))
   const text = end > 0 && bytes.length >= longestRow ? whole.slice(0, end) : whole
-  const lines = text.split(/\r\n|\n|\r/).slice(0, 400)
+  const lines = text
+    .replace(/[\r\n]+$/, '')
+    .split(/\r\n|\n|\r/)
+    .slice(0, 400)
   const delimiter = chosen.delimiter ?? detectDelimiter(lines.join('\n'))
   const rows = lines.map((line) => cellsOf(line, delimiter))
   return {

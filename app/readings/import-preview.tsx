@@ -251,7 +251,7 @@ export function InstrumentTable({
       empty="No row of the file belongs to an instrument."
       columns={[
         { head: 'Instrument', cell: (row) => row.name, words: true },
-        { head: '', cell: (row) => (row.isNew ? 'new' : ''), words: true },
+        { head: 'New', cell: (row) => (row.isNew ? 'new' : '–'), words: true },
         { head: 'Rows', cell: (row) => formatNumber(row.rows, 0) },
         { head: 'First', cell: (row) => clock.minute(row.firstAt) },
         { head: 'Last', cell: (row) => clock.minute(row.lastAt) },

@@ -439,11 +439,11 @@ async function addInstruments(
   order: { projectId: number; userId: number; file: string; added: NewInstrument[] },
 ): Promise<void> {
   if (order.added.length === 0) return
-  const changes: RowChange[] = order.added.map(({ id, name, kind, x, y, row }) => ({
+  const changes: RowChange[] = order.added.map(({ id, name, kind, x, y }) => ({
     op: 'add',
     kind: 'instrument',
     id,
-    body: { name, kind, x, y, source: `${order.file}, row ${row}` },
+    body: { name, kind, x, y, source: order.file },
   }))
   const answer = await saveRows(trx, {
     projectId: order.projectId,

@@ -183,7 +183,7 @@ describe('An import', () => {
     const added = (await listRows<Instrument>(db, project.id, 'instrument')).find(
       (row) => row.body.name === 'P2',
     )
-    expect(added?.body).toMatchObject({ x: 1500, y: 2250, source: 'dips.csv, row 3' })
+    expect(added?.body).toMatchObject({ x: 1500, y: 2250, source: 'dips.csv' })
     expect(await stateOfReadings()).not.toEqual(before)
 
     const undone = await undoImport(db, { projectId: project.id, userId, importId })
