@@ -151,7 +151,7 @@ export default function GroundPage({ loaderData }: Route.ComponentProps) {
         {...shared}
         planImage={shownPlan}
         lengthUnit={units.length}
-        height={400}
+        height={520}
         readOnly={!book.editable}
         onChange={(id, geometry) => book.set(id, placeOf(geometry))}
         onDraw={draw}

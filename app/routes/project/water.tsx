@@ -146,7 +146,7 @@ export default function WaterPage({ loaderData }: Route.ComponentProps) {
         {...shared}
         planImage={shownPlan}
         lengthUnit={units.length}
-        height={400}
+        height={520}
         readOnly={!book.editable}
         onChange={place}
         onDraw={draw}
