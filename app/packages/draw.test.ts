@@ -397,7 +397,9 @@ describe('A package of an unusual project', () => {
     expect(paper.words).toContain('DID NOT CONVERGE')
   })
 
-  it('loses no row of 300 wells, nor a word of names and texts as long as the book allows', async () => {
+  it('loses no row of 300 wells, nor a word of names and texts as long as the book allows', {
+    timeout: 180_000,
+  }, async () => {
     const long = (words: string, length: number) =>
       words.repeat(Math.ceil(length / words.length)).slice(0, length)
     const paper = read(

@@ -1,9 +1,11 @@
+import { execFileSync } from 'node:child_process'
 import { createHash } from 'node:crypto'
 import { afterAll, beforeAll, describe, expect, it } from 'vitest'
 import { checkSection, sectionStates } from '~/book/sections.server'
 import { findRun } from '~/heads/runs.server'
 import { findJob, jobEnded } from '~/jobs/jobs.server'
 import type { Project } from '~/projects/project'
+import { formatNumber } from '~/units'
 import { type FreshDatabase, freshDatabase } from '../../test/database'
 import { makePerson } from '../../test/people'
 import { add, makeStrip, type Strip, stripWell } from '../../test/strip'
@@ -175,6 +177,28 @@ describe('A revision of the package', { timeout: 240_000 }, () => {
       .digest('hex')
     expect([row.pdf_sha256, pdf?.sha256]).toEqual([sha256, sha256])
     expect(await packagePdf(fresh.database, project.id + 1, first)).toBeUndefined()
+  })
+
+  it('prints the water balance and the heads at named points as the database has them', async () => {
+    const run = await findRun(fresh.database, project.id, runId)
+    const pdf = await packagePdf(fresh.database, project.id, first)
+    const text = execFileSync('pdftotext', ['-layout', '-', '-'], { input: pdf?.bytes, encoding: 'utf8' })
+    const result = run?.result
+    if (!result) throw new Error('The run has a result.')
+    const { balance, boundaries, points, wells } = result
+    expect(boundaries.map((part) => part.name)).toEqual(['West', 'East'])
+    for (const { name, inflow, outflow } of [...boundaries, { ...balance, name: 'Total' }]) {
+      const [into, out] = [inflow, outflow].map((rate) => formatNumber(rate[0], 2).replace('.', '\\.'))
+      expect(text).toMatch(new RegExp(`^ *${name}\\b.* ${into} +${out}$`, 'm'))
+    }
+    expect(text).toContain(`error ${formatNumber(balance.errorPercent[0])} % of the inflow`)
+    expect(points).toHaveLength(1)
+    for (const { name, head } of points) {
+      expect(text).toMatch(new RegExp(`^ *${name} +${formatNumber(head[0], 3).replace('.', '\\.')}$`, 'm'))
+    }
+    expect(text).toMatch(new RegExp(`^ *W1 +100 +100 +${formatNumber(wells[0]?.cellHead[0], 2)}`, 'm'))
+    expect(text).toContain(run?.inputSha256)
+    expect(text).toContain(run?.headsSha256)
   })
 
   it('never changes once it is issued', async () => {

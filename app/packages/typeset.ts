@@ -264,10 +264,13 @@ export function table<Row>(
   const heads = columns.map(({ head, unit }) => (unit ? `${head} ${unit}` : head))
   const natural = columns.map((_, index) => ({
     words: isWords[index] === true,
-    natural: cells.reduce(
-      (widest, row) => Math.max(widest, estimatedWidth(row[index] ?? '', tableSize, index === 0)),
-      estimatedWidth(heads[index] ?? '', smallSize, true),
-    ),
+    // Two points more, so that a short head does not lose its full stop to the next line.
+    natural:
+      2 +
+      cells.reduce(
+        (widest, row) => Math.max(widest, estimatedWidth(row[index] ?? '', tableSize, index === 0)),
+        estimatedWidth(heads[index] ?? '', smallSize, true),
+      ),
   }))
   const afterNumbers = isWords.map((words, index) => words && index > 0 && isWords[index - 1] === false)
   const padding = columns.reduce((sum, _, index) => sum + leftPadding(index, afterNumbers) + 3, 0)
