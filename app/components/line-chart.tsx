@@ -79,7 +79,7 @@ export function LineChart(props: LineChartProps) {
 function chartOption(props: LineChartProps, colours: ChartColours): EChartsOption {
   const { lines, marks = [], dividers = [], decimals, span, clockOffset } = props
   const shift = clockOffset * 60_000
-  const font = { color: colours.quiet, fontFamily: 'Source Sans 3, sans-serif', fontSize: 13 }
+  const font = { color: colours.quiet, fontFamily: "'Source Sans 3', sans-serif", fontSize: 13 }
   const series: SeriesOption[] = lines.map((line, index) => ({
     id: line.name,
     name: line.name,

@@ -1,5 +1,6 @@
 import type { EChartsOption } from 'echarts'
 import type { Palette } from '~/heads/palette'
+import { typeFace } from '~/heads/shapes'
 import { formatNumber } from '~/units'
 
 export interface OneToOnePoint {
@@ -50,7 +51,7 @@ export function oneToOnePlot(
   return {
     animation: false,
     backgroundColor: colours.paper,
-    textStyle: { fontFamily: 'Source Sans 3', color: colours.ink },
+    textStyle: { fontFamily: typeFace, color: colours.ink },
     grid: { left: 64, right: 24, top: 16, bottom: 52 },
     tooltip: {
       trigger: 'item',
