@@ -74,7 +74,7 @@ export interface SorOptions {
   target: number
   /** ... and the estimated error of every head at most this share of the range of the heads' changes. */
   headTolerance: number
-  /** 2 / (1 + root(2 lambda)) is the first factor; see `smallestEigenvalue`. */
+  /** 2 / (1 + root(2 lambda)) is the first factor; see `slowestMode`. */
   lambda: number
   /** Zones whose common level is corrected at the end of every window; null: none. */
   zones: Zones | null
@@ -169,11 +169,13 @@ export function relax(system: SorSystem, options: SorOptions): SorOutcome {
   const { target, headTolerance, weight } = options
   const now: Measure = { norm: 0, largest: 0, range: 0, floor: 0 }
   const { zones } = options
-  if (zones) correctZones(system, weight, zones)
+  let withMode = false
+  if (zones) correctZones(system, weight, zones, withMode)
   measure(system, weight, now)
   // Away from symmetry a factor may let errors grow for long before they fall: then go back and relax less.
   const kept = system.symmetric ? null : x.slice()
-  let highestOmega = 2 - 1e-7
+  // Corrections upset what a window shows of the convergence: with them the factor may not run away towards 2.
+  let highestOmega = zones ? 2 / (1 + 0.3 * Math.sqrt(2 * options.lambda)) : 2 - 1e-7
   let omega = 2 / (1 + Math.sqrt(2 * Math.min(options.lambda, 0.5)))
   let sweeps = 0
   let windowSweeps = 0
@@ -228,14 +230,16 @@ export function relax(system: SorSystem, options: SorOptions): SorOutcome {
       const mu = (lambda + omega - 1) / (omega * Math.sqrt(lambda))
       if (mu < 1) {
         const better = 2 / (1 + Math.sqrt(1 - mu * mu))
-        if (better > omega + 1e-3 * (2 - omega) && omega < highestOmega) {
+        // The slowest mode is corrected apart only when convergence shows that it is there.
+        if (zones?.mode && !withMode) withMode = true
+        else if (better > omega + 1e-3 * (2 - omega) && omega < highestOmega) {
           omega = Math.min(better, highestOmega)
           idleWindows = 0
         }
       }
     }
     if (zones && now.norm > 30 * now.floor) {
-      correctZones(system, weight, zones)
+      correctZones(system, weight, zones, withMode)
       measure(system, weight, now)
     }
     windowSweeps = 0
@@ -251,12 +255,14 @@ export function relax(system: SorSystem, options: SorOptions): SorOutcome {
 }
 
 /** Raises or lowers each zone as a whole until it balances with the others. */
-function correctZones(system: SorSystem, weight: Float64Array, zones: Zones): void {
+function correctZones(system: SorSystem, weight: Float64Array, zones: Zones, withMode: boolean): void {
   const { nx, ny, b, w, e, s, n, root, x } = system
-  const excess = new Array<number>(zones.count).fill(0)
+  const { count: zoneCount, zoneOf } = zones
+  const mode = withMode ? zones.mode : null
+  const excess = new Array<number>(zones.matrix.length).fill(0)
   const count = nx * ny
   for (let c = 0; c < count; c++) {
-    const zone = zones.zoneOf[c] as number
+    const zone = zoneOf[c] as number
     if (zone < 0) continue
     const p = c + nx
     const r =
@@ -266,14 +272,18 @@ function correctZones(system: SorSystem, weight: Float64Array, zones: Zones): vo
       (s[c] as number) * (x[p - nx] as number) +
       (n[c] as number) * (x[p + nx] as number) -
       (x[p] as number)
-    excess[zone] = (excess[zone] as number) + r * (root[c] as number)
+    const flow = r * (root[c] as number)
+    excess[zone] = (excess[zone] as number) + flow
+    if (mode) excess[zoneCount] = (excess[zoneCount] as number) + flow * (mode[c] as number)
   }
   const rise = solveDense(zones.matrix, excess)
   if (!rise.every(Number.isFinite)) return
+  const ofMode = mode ? (rise[zoneCount] as number) : 0
   for (let c = 0; c < count; c++) {
-    const zone = zones.zoneOf[c] as number
-    if (zone >= 0)
-      x[c + nx] = (x[c + nx] as number) + (rise[zone] as number) * (weight[c] as number) * (root[c] as number)
+    const zone = zoneOf[c] as number
+    if (zone < 0) continue
+    const change = (rise[zone] as number) * (weight[c] as number) + (mode ? ofMode * (mode[c] as number) : 0)
+    x[c + nx] = (x[c + nx] as number) + change * (root[c] as number)
   }
 }
 
@@ -297,7 +307,7 @@ interface Level {
  * grids coarsened two by two, carried back and smoothed, and its Rayleigh quotient taken on the fine grid (an error of
  * the mode enters only squared). With mu = 1 - lambda the best factor is 2 / (1 + root(1 - mu^2)) (Young 1954).
  */
-export function smallestEigenvalue(matrix: Matrix, nx: number, ny: number): number {
+export function slowestMode(matrix: Matrix, nx: number, ny: number): { lambda: number; mode: Float64Array } {
   const levels = [finest(matrix, nx, ny)]
   for (;;) {
     const fine = levels[levels.length - 1] as Level
@@ -315,7 +325,7 @@ export function smallestEigenvalue(matrix: Matrix, nx: number, ny: number): numb
     for (let k = 0; k < 3; k++) smooth(level, mode, Math.min(rayleigh(level, mode), 0.9), 4)
   }
   const lambda = rayleigh(level, mode)
-  return Number.isFinite(lambda) ? Math.min(1, Math.max(lambda, 1e-14)) : 1
+  return { lambda: Number.isFinite(lambda) ? Math.min(1, Math.max(lambda, 1e-14)) : 1, mode }
 }
 
 function finest(matrix: Matrix, nx: number, ny: number): Level {

@@ -12,7 +12,7 @@ import {
   type ProfileFlow,
 } from './flow'
 import { levelOfPotential, potentialAt, slopeAt } from './saturated'
-import { relax, scaledSystem, smallestEigenvalue } from './sor'
+import { relax, scaledSystem, slowestMode } from './sor'
 import { logEquivalentRadius, type PlacedWell } from './wells'
 import { type Zones, zonesOf } from './zones'
 
@@ -69,6 +69,8 @@ interface Run {
   cancelled: boolean
   atFloor: boolean
   headError: number
+  /** Smallest eigenvalue, as last estimated. */
+  lambda: number
   residual: number
   options: SteadyOptions
   phase: string
@@ -104,6 +106,7 @@ export function solveSteady(d: Discretised, tolerance: number, options: SteadyOp
     cancelled: false,
     atFloor: false,
     headError: 0,
+    lambda: 1,
     residual: 0,
     options,
     phase: 'heads',
@@ -162,6 +165,7 @@ function balanceCells(run: Run): boolean {
     idleSteps = run.residual > 0.5 * before ? idleSteps + 1 : 0
     if (idleSteps >= (flow.linear ? 2 : 8)) {
       run.atFloor = run.residual < 1e-6
+      run.headError = largestChange(run) / run.lambda
       return run.atFloor && run.headError <= 1e-6 * headSpread(run)
     }
     before = Math.min(before, run.residual)
@@ -202,16 +206,31 @@ function balanceCells(run: Run): boolean {
 function relaxationOf(run: Run): { lambda: number; zones: Zones | null } {
   const { d, matrix } = run
   const { columns, rows } = d.grid
-  const lambda = smallestEigenvalue(matrix, columns, rows)
+  const { lambda, mode } = slowestMode(matrix, columns, rows)
+  run.lambda = lambda
   const slowest = 0.5 / Math.max(columns, rows) ** 2
   const free = (cell: number) => d.active[cell] === 1 && (d.fixedBy[cell] as number) < 0
   const nearlySingular = lambda < 0.05 * slowest
-  const zones = zonesOf(matrix, free, columns, rows, nearlySingular)
+  const slow = matrix.symmetric && nearlySingular ? mode : null
+  const zones = zonesOf(matrix, free, columns, rows, 0.3 * slowest, slow, nearlySingular)
   // Zones no slower than the rest are better left to relaxation, except where it is not symmetric and may stumble.
   const worth =
     !matrix.symmetric || nearlySingular || (zones && zones.slowest < 0.5 * Math.min(lambda, slowest))
   if (!zones || !worth) return { lambda, zones: null }
   return { lambda: Math.max(lambda, slowest), zones }
+}
+
+/** Largest change of head that would balance a cell by itself. */
+function largestChange(run: Run): number {
+  const { d, matrix, state } = run
+  let largest = 0
+  for (let c = 0; c < d.active.length; c++) {
+    if (d.active[c] !== 1 || (d.fixedBy[c] as number) >= 0) continue
+    const change =
+      (state.imbalance[c] as number) / ((matrix.diag[c] as number) * (matrix.weight[c] as number))
+    largest = Math.max(largest, Math.abs(change))
+  }
+  return largest
 }
 
 function clearHeld(d: Discretised, b: Float64Array): void {
@@ -352,21 +371,45 @@ export function wellHeadOf(
 /** The lowest level a well may have: its own, and 1 % of the thickness above the base in unconfined ground. */
 export function lowestLevelOf(flow: FlowModel, well: PlacedWell): number {
   if (!flow.d.unconfined) return well.lowestLevel
-  const { base } = flow.flows[flow.d.profileOf[mainCell(well)] as number] as ProfileFlow
-  return Math.max(well.lowestLevel, base + 0.01 * Math.max(flow.d.highestHead - base, 0))
+  return Math.max(well.lowestLevel, yieldLevel(flow, mainCell(well)))
 }
 
-/** How far, in discharge potential, a well stands above its lowest level: nearly linear in its rate. */
-function clearance(flow: FlowModel, well: PlacedWell, rate: number, heads: Float64Array): number {
+/** Below this a cell of unconfined ground yields nothing to a well: 1 % of its thickness at the highest known level. */
+function yieldLevel(flow: FlowModel, cell: number): number {
+  const { base } = flow.flows[flow.d.profileOf[cell] as number] as ProfileFlow
+  return base + 0.01 * Math.max(flow.d.highestHead - base, 0)
+}
+
+/**
+ * How far, in discharge potential, a well stands above its lowest level: nearly linear in its rate. In unconfined
+ * ground none of the cells that share it may fall dry either; `cell` is the one that decides then, else -1.
+ */
+function clearance(
+  flow: FlowModel,
+  well: PlacedWell,
+  rate: number,
+  heads: Float64Array,
+): { above: number; cell: number } {
   const loss = (rate * logRadii(flow, well, heads)) / (2 * Math.PI)
   const limit = lowestLevelOf(flow, well)
   const main = mainCell(well)
-  if (!flow.d.unconfined) return wellTransmissivity(flow, main, 0) * (cellHeadOf(well, heads) - limit) + loss
+  if (!flow.d.unconfined) {
+    return { above: wellTransmissivity(flow, main, 0) * (cellHeadOf(well, heads) - limit) + loss, cell: -1 }
+  }
   const potential = wellPotential(flow, main)
-  return well.shares.reduce(
-    (sum, { cell, weight }) => sum + weight * potentialAt(potential, heads[cell] as number),
-    loss - potentialAt(potential, limit),
-  )
+  let decides = {
+    above: well.shares.reduce(
+      (sum, share) => sum + share.weight * potentialAt(potential, heads[share.cell] as number),
+      loss - potentialAt(potential, limit),
+    ),
+    cell: -1,
+  }
+  for (const { cell } of well.shares) {
+    const own = wellPotential(flow, cell)
+    const above = potentialAt(own, heads[cell] as number) - potentialAt(own, yieldLevel(flow, cell))
+    if (above < decides.above) decides = { above, cell }
+  }
+  return decides
 }
 
 /**
@@ -385,7 +428,9 @@ function reduceWells(run: Run): boolean {
       const above = Math.abs(d.highestHead - lowestLevelOf(flow, well))
       return wellTransmissivity(flow, mainCell(well), d.highestHead) * Math.max(above, 1e-6)
     }
-    const below = wells.map((well, w) => clearance(flow, well, run.rates[w] as number, run.heads) / scale(w))
+    const below = wells.map(
+      (well, w) => clearance(flow, well, run.rates[w] as number, run.heads).above / scale(w),
+    )
     for (const [w, well] of wells.entries()) {
       if (well.requested < 0 && !limited.has(w) && (below[w] as number) < -1e-9) {
         limited.add(w)
@@ -405,7 +450,7 @@ function reduceWells(run: Run): boolean {
     if (stale || !flow.linear) response = open.map((w) => responseOf(run, w, open))
     stale = false
     const wanted = open.map(
-      (w) => -clearance(flow, wells[w] as PlacedWell, run.rates[w] as number, run.heads),
+      (w) => -clearance(flow, wells[w] as PlacedWell, run.rates[w] as number, run.heads).above,
     )
     const changes = solveDense(
       open.map((_, a) => open.map((__, b) => (response[b] as number[])[a] as number)),
@@ -447,13 +492,15 @@ function responseOf(run: Run, source: number, open: number[]): number[] {
       return run.cancelled
     },
   })
+  const rise = (cell: number) => {
+    const y = (system.x[cell + columns] as number) / (system.root[cell] as number)
+    return (wellTransmissivity(flow, cell, run.heads[cell] as number) * y) / (weight[cell] as number)
+  }
   return open.map((w) => {
     const well = d.wells[w] as PlacedWell
-    const change = well.shares.reduce((sum, { cell, weight: part }) => {
-      const y = (system.x[cell + columns] as number) / (system.root[cell] as number)
-      const t = wellTransmissivity(flow, cell, run.heads[cell] as number)
-      return sum + (part * t * y) / (weight[cell] as number)
-    }, 0)
+    const decides = clearance(flow, well, run.rates[w] as number, run.heads).cell
+    if (decides >= 0) return rise(decides)
+    const change = well.shares.reduce((sum, share) => sum + share.weight * rise(share.cell), 0)
     return change + (w === source ? logRadii(flow, well, run.heads) / (2 * Math.PI) : 0)
   })
 }

@@ -1,3 +1,4 @@
+import { solveDense } from './dense'
 import type { Matrix } from './flow'
 
 /**
@@ -8,7 +9,9 @@ import type { Matrix } from './flow'
 export interface Zones {
   zoneOf: Int32Array
   count: number
-  /** Balance of zone k for a unit rise of head in zone l, row by row. */
+  /** The slowest mode, as far as it is not a level of zones, in the system's unknown; null: it adds nothing to them. */
+  mode: Float64Array | null
+  /** Balance of zone k for a unit rise of head in zone l, row by row; the mode, if any, comes last. */
   matrix: number[][]
   /** The smallest share of its diagonals that a zone exchanges with the rest: about the eigenvalue of its own mode. */
   slowest: number
@@ -19,14 +22,17 @@ const weakLink = 2e-3
 const mostZones = 250
 
 /**
- * Finds the zones of an unscaled matrix, or null when there is only one or too many to be worth it. With `always` a
- * single zone is taken too.
+ * Finds the zones of an unscaled matrix and joins the slowest mode to them, where it is given and
+ * stays slower than `slow` (an eigenvalue) beside them. Null when there are too many zones, or
+ * just one and `always` is not set: then nothing needs correcting.
  */
 export function zonesOf(
   matrix: Matrix,
   free: (cell: number) => boolean,
   nx: number,
   ny: number,
+  slow: number,
+  slowestMode: Float64Array | null,
   always: boolean,
 ): Zones | null {
   const { diag, west, east, south, north, weight } = matrix
@@ -62,23 +68,80 @@ export function zonesOf(
   }
   if (zones === 0 || (zones === 1 && !always)) return null
   const mass = new Float64Array(zones)
-  const rows = Array.from({ length: zones }, () => new Array<number>(zones).fill(0))
+  const part = new Float64Array(zones)
+  for (let c = 0; c < count; c++) {
+    const zone = zoneOf[c] as number
+    if (zone < 0) continue
+    mass[zone] = (mass[zone] as number) + strength(c)
+    if (slowestMode) {
+      part[zone] = (part[zone] as number) + (diag[c] as number) * (slowestMode[c] as number)
+    }
+  }
+  // What the zones' levels can do already is taken out of the mode.
+  const mode = new Float64Array(count)
+  let whole = 0
+  let left = 0
+  for (let c = 0; c < count; c++) {
+    const zone = zoneOf[c] as number
+    if (zone < 0) continue
+    const own = slowestMode ? (slowestMode[c] as number) : 0
+    const rest = own - ((part[zone] as number) / (mass[zone] as number)) * (weight[c] as number)
+    mode[c] = rest
+    whole += (diag[c] as number) * own * own
+    left += (diag[c] as number) * rest * rest
+  }
+  const withMode = left > 1e-12 * whole
+  const size = zones + (withMode ? 1 : 0)
+  const rows = Array.from({ length: size }, () => new Array<number>(size).fill(0))
   for (let c = 0; c < count; c++) {
     const own = zoneOf[c] as number
     if (own < 0) continue
-    const row = rows[own] as number[]
     function add(cell: number, value: number): void {
       const zone = zoneOf[cell] as number
-      if (zone >= 0) row[zone] = (row[zone] as number) + value * (weight[cell] as number)
+      if (zone < 0) return
+      raise(rows[own] as number[], zone, value * (weight[cell] as number))
+      if (!withMode) return
+      const last = rows[zones] as number[]
+      raise(rows[own] as number[], zones, value * (mode[cell] as number))
+      raise(last, zone, (mode[c] as number) * value * (weight[cell] as number))
+      raise(last, zones, (mode[c] as number) * value * (mode[cell] as number))
     }
     const i = c % nx
-    mass[own] = (mass[own] as number) + strength(c)
     add(c, diag[c] as number)
     if (i > 0) add(c - 1, -(west[c] as number))
     if (i < nx - 1) add(c + 1, -(east[c] as number))
     if (c >= nx) add(c - nx, -(south[c] as number))
     if (c < count - nx) add(c + nx, -(north[c] as number))
   }
-  const slowest = Math.min(...rows.map((row, k) => (row[k] as number) / (mass[k] as number)))
-  return { zoneOf, count: zones, matrix: rows, slowest }
+  let slowest = Number.POSITIVE_INFINITY
+  for (let k = 0; k < zones; k++) {
+    slowest = Math.min(slowest, ((rows[k] as number[])[k] as number) / (mass[k] as number))
+  }
+  if (!withMode) return { zoneOf, count: zones, mode: null, matrix: rows, slowest }
+  // What is left once the zones have found their best levels for it: still slow, or only the mode's rough edges?
+  const levels = rows.slice(0, zones).map((row) => row.slice(0, zones))
+  const pull = rows.slice(0, zones).map((row) => row[zones] as number)
+  const taken = solveDense(levels, pull)
+  const last = rows[zones] as number[]
+  const energy = taken.reduce((sum, value, k) => sum - value * (pull[k] as number), last[zones] as number)
+  let rest = 0
+  for (let c = 0; c < count; c++) {
+    const zone = zoneOf[c] as number
+    if (zone < 0) continue
+    mode[c] = (mode[c] as number) - (taken[zone] as number) * (weight[c] as number)
+    rest += (diag[c] as number) * (mode[c] as number) ** 2
+  }
+  if (!(energy > 0 && energy < slow * rest))
+    return { zoneOf, count: zones, mode: null, matrix: levels, slowest }
+  // The mode no longer moves the zones' balances, nor they its own.
+  for (let k = 0; k < zones; k++) {
+    ;(rows[k] as number[])[zones] = 0
+    last[k] = 0
+  }
+  last[zones] = energy
+  return { zoneOf, count: zones, mode, matrix: rows, slowest }
+}
+
+function raise(row: number[], k: number, by: number): void {
+  row[k] = (row[k] as number) + by
 }
