@@ -122,11 +122,13 @@ for (const visit of visits) {
     expect(await accessibilityFaults(page), 'light, 1440 pixels').toEqual([])
     await page.emulateMedia({ colorScheme: 'dark' })
     await settled(page)
-    expect(await accessibilityFaults(page, ['color-contrast']), 'dark, 1440 pixels').toEqual([])
+    expect(await accessibilityFaults(page, { only: 'color-contrast' }), 'dark, 1440 pixels').toEqual([])
     await page.emulateMedia({ colorScheme: 'light' })
     await page.setViewportSize({ width: 390, height: 844 })
     await settled(page)
-    expect(await accessibilityFaults(page), 'light, 390 pixels').toEqual([])
+    // Colours are the same on a phone, and take longest to look at; but the client's page is another one there.
+    const colours = visit.as === 'client' ? {} : { without: 'color-contrast' }
+    expect(await accessibilityFaults(page, colours), 'light, 390 pixels').toEqual([])
     const overflow = await page.evaluate(() => document.documentElement.scrollWidth - window.innerWidth)
     expect(overflow, 'wider than a phone').toBeLessThanOrEqual(0)
     if (visit.refused) lavant.forgive(404)

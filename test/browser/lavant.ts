@@ -157,12 +157,16 @@ export async function textOf(place: Locator): Promise<string> {
   return ((await place.textContent()) ?? '').replaceAll(/\s+/g, ' ').trim()
 }
 
-/** What axe finds wrong with the page as it stands, a line each; of these rules only, where they are named. */
-export async function accessibilityFaults(page: Page, rules: string[] = []): Promise<string[]> {
+/** What axe finds wrong with the page as it stands, a line each; by one rule only, or without one. */
+export async function accessibilityFaults(
+  page: Page,
+  { only, without }: { only?: string; without?: string } = {},
+): Promise<string[]> {
   // No page has frames, so the findings need not be brought together in a page of their own.
   const axe = new AxeBuilder({ page }).setLegacyMode().options({
     resultTypes: ['violations'],
-    ...(rules.length > 0 ? { runOnly: { type: 'rule', values: rules } } : {}),
+    ...(only ? { runOnly: { type: 'rule', values: [only] } } : {}),
+    ...(without ? { rules: { [without]: { enabled: false } } } : {}),
   })
   const { violations } = await axe.analyze()
   return violations.flatMap(({ id, nodes }) =>

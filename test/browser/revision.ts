@@ -63,3 +63,31 @@ export async function withRevisionSharedForCheck(
   await drawn(originator)
   return revision
 }
+
+/** Sections of the spine in one of these states, by title. */
+export async function sectionsThatAre(page: Page, ...states: string[]): Promise<string[]> {
+  const lines = await page
+    .getByRole('navigation', { name: 'Calc book' })
+    .getByRole('listitem')
+    .allInnerTexts()
+  return lines.flatMap((line) => {
+    const [, title = '', state = ''] = line.split('\n').map((part) => part.trim())
+    return states.includes(state) ? [title] : []
+  })
+}
+
+/** Ticks every section that waits for its check, and sees the spine follow. Returns their titles. */
+export async function checkWaitingSections(checker: Page): Promise<string[]> {
+  const waiting = (await sectionsThatAre(checker, 'drafted', 'changed since check')).filter(
+    (title) => title !== 'Package',
+  )
+  const spine = checker.getByRole('navigation', { name: 'Calc book' })
+  for (const title of waiting) {
+    await spine.getByRole('link', { name: title }).click()
+    await checker.getByRole('button', { name: 'Mark as checked' }).click()
+    await checker.getByText(/^Checked by Hanne Brevik, /).waitFor()
+    const checked = await sectionsThatAre(checker, 'checked')
+    if (!checked.includes(title)) throw new Error(`${title} was ticked, and the spine does not show it.`)
+  }
+  return waiting
+}
