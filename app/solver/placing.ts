@@ -120,11 +120,11 @@ export function sharesAt(
   active: Uint8Array,
   x: number,
   y: number,
-): { shares: Share[] } | 'on a wall' | 'outside' {
+): { shares: Share[] } | 'on a wall' | 'hidden' | 'outside' {
   if (wallAt(model, grid, x, y)) return 'on a wall'
   const stencil = stencilAt(model, grid, active, x, y)
   const corners = [0, 1, 2, 3].filter((k) => stencil.visible[k as 0])
-  if (corners.length === 0) return 'outside'
+  if (corners.length === 0) return stencil.cells.some((cell) => active[cell] === 1) ? 'hidden' : 'outside'
   const weights = corners.map((k) => weightOf(stencil, k))
   const total = weights.reduce((sum, weight) => sum + weight, 0)
   if (total <= 1e-6) {

@@ -49,6 +49,9 @@ export function pointResults(
     const [x, y] = placeOf(d, point, `points[${index}]`)
     const head = headAt(flow, heads, inflow, x, y)
     if (head === 'no ground') return { name: point.name, head: [null], why: 'there is no ground here' }
+    if (head === 'hidden') {
+      return { name: point.name, head: [null], why: 'there is no cell centre on this side of the walls' }
+    }
     if (head === 'dry') return { name: point.name, head: [null], why: 'dry' }
     return { name: point.name, head: [head + reference] }
   })
@@ -64,11 +67,11 @@ export function headAt(
   inflow: Map<number, number>,
   x: number,
   y: number,
-): number | 'no ground' | 'dry' {
+): number | 'no ground' | 'hidden' | 'dry' {
   const { d } = flow
   const stencil = stencilAt(d.model, d.grid, d.active, x, y)
   const seen = ([0, 1, 2, 3] as const).filter((k) => stencil.visible[k])
-  if (seen.length === 0) return 'no ground'
+  if (seen.length === 0) return stencil.cells.some((cell) => d.active[cell] === 1) ? 'hidden' : 'no ground'
   let near = seen[0] as 0 | 1 | 2 | 3
   for (const k of seen) if (weightOf(stencil, k) > weightOf(stencil, near)) near = k
   const cell = stencil.cells[near]

@@ -814,6 +814,25 @@ describe('hostile models', () => {
     expect(error.message).toMatch(message)
   })
 
+  it('a well and a point cut off from every cell centre say so', () => {
+    const walls: Wall[] = [
+      {
+        name: 'Wall',
+        line: [
+          [0, 10],
+          [10, 0],
+        ],
+        thickness: 1,
+        k: 0,
+      },
+    ]
+    const coarse = { grid: { columns: 2, rows: 2 }, walls }
+    const well = { name: 'W', x: 2, y: 2, kind: 'abstraction' as const, rate: 1 }
+    expect(refusal(site({ ...coarse, wells: [well] })).message).toMatch(/smaller cells/)
+    const { result } = solved({ ...coarse, points: [{ name: 'P', x: 2, y: 2 }] })
+    expect(result.points[0]).toMatchObject({ head: [null], why: expect.stringContaining('no cell centre') })
+  })
+
   it('a contrast of 10^12, one small fixed head, one row, one column, one cell: all get their answer', () => {
     solved({
       ground: [

@@ -39,6 +39,12 @@ export function placeWells(
     }
     const placed = sharesAt(model, grid, active, x, y)
     if (placed === 'on a wall') throw new ModelError(path, `the well "${well.name}" stands on a wall`)
+    if (placed === 'hidden') {
+      throw new ModelError(
+        path,
+        `the well "${well.name}" at (${x}, ${y}) has no cell centre on its side of the walls: it needs smaller cells`,
+      )
+    }
     if (placed === 'outside') {
       throw new ModelError(path, `the well "${well.name}" at (${x}, ${y}) stands where there is no ground`)
     }

@@ -4,6 +4,7 @@ import { describe, expect, it } from 'vitest'
 import { discretise } from '~/solver/discretise'
 import { emptyMatrix, evaluate, flowModelOf } from '~/solver/flow'
 import type { Model } from '~/solver/model'
+import { ModelError } from '~/solver/model-error'
 import { solveModel } from '~/solver/solve'
 import { planModel } from './plan-model'
 
@@ -43,31 +44,32 @@ function directHeads(model: Model): number[] {
 }
 
 const coordinate = fc.double({ min: 5, max: 95, noNaN: true })
-const conductivity = fc.double({ min: -3, max: 3, noNaN: true }).map((power) => 10 ** power)
+// Contrasts stay where rounding, on either side, leaves ten digits of the heads.
+const conductivity = fc.double({ min: -1.5, max: 1.5, noNaN: true }).map((power) => 10 ** power)
 
 const randomModel = fc
   .record({
     columns: fc.integer({ min: 2, max: 14 }),
     rows: fc.integer({ min: 1, max: 14 }),
     kx: conductivity,
-    ky: conductivity,
+    ratio: fc.double({ min: -1.5, max: 1.5, noNaN: true }).map((power) => 10 ** power),
     inner: conductivity,
     corner: fc.tuple(coordinate, coordinate),
     well: fc.tuple(coordinate, coordinate),
     river: fc.tuple(coordinate, coordinate),
     wall: fc.tuple(coordinate, coordinate, coordinate, coordinate),
-    wallK: fc.double({ min: -6, max: 0, noNaN: true }).map((power) => 10 ** power),
+    wallK: fc.double({ min: -3, max: 0, noNaN: true }).map((power) => 10 ** power),
   })
   // A well on the very line of the wall is refused, and a wall without length too: neither is what this is about.
   .filter(({ wall: [ax, ay, bx], well: [x, y] }) => {
     const length = Math.hypot(bx - ax, 100 - ay)
     return Math.abs((bx - ax) * (y - ay) - (100 - ay) * (x - ax)) > 0.01 * length
   })
-  .map(({ columns, rows, kx, ky, inner, corner: [x, y], well, river, wall, wallK }) =>
+  .map(({ columns, rows, kx, ratio, inner, corner: [x, y], well, river, wall, wallK }) =>
     planModel({
       grid: { columns, rows },
       materials: [
-        { name: 'Sand', kx, ky },
+        { name: 'Sand', kx, ky: kx * ratio },
         { name: 'Lens', kx: inner, ky: inner },
       ],
       ground: [
@@ -122,10 +124,22 @@ const randomModel = fc
     }),
   )
 
+/** On very coarse grids a wall may cut a well off from every cell centre; such a model is refused. */
+function seesACentre(model: Model): boolean {
+  try {
+    discretise(model)
+    return true
+  } catch (error) {
+    if (error instanceof ModelError && error.message.includes('smaller cells')) return false
+    throw error
+  }
+}
+
 describe('against a direct solve of the same balance', () => {
   it('relaxation ends at the same heads to 1e-10 of their range', () => {
     fc.assert(
       fc.property(randomModel, (model) => {
+        fc.pre(seesACentre(model))
         const { heads, result } = solveModel(model)
         const direct = directHeads(model)
         expect(result.converged).toBe(true)
