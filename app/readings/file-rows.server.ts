@@ -14,6 +14,8 @@ import {
 export class UnreadableFile extends Error {}
 
 const longestRow = 64 * 1024
+/** A year of one reading a second is 32 million rows; a file that long is read in parts. */
+const mostRows = 10_000_000
 
 function options(delimiter: Delimiter) {
   return {
@@ -35,7 +37,8 @@ export interface FileRow {
 
 /**
  * The rows of a file one by one, with memory for one of them. `onBytes` hears of every chunk.
- * Throws UnreadableFile on a quote that is never closed and on a row beyond 64 KB, with the row's number.
+ * Throws UnreadableFile on a quote that is never closed and on a row beyond 64 KB, with the row's number; and on a file
+ * of more than ten million rows.
  */
 export async function* fileRows(
   body: Readable,
@@ -53,6 +56,9 @@ export async function* fileRows(
   try {
     for await (const cells of parser as AsyncIterable<string[]>) {
       row++
+      if (row > mostRows) {
+        throw new UnreadableFile(`The file has more than ${mostRows} rows: split it.`)
+      }
       yield { row, cells, blank: cells.every((cell) => cell.trim() === '') }
     }
   } catch (error) {

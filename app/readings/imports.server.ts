@@ -3,7 +3,7 @@ import type { RowChange } from '~/book/row'
 import { listRows, recordRowSection, saveRows } from '~/book/rows.server'
 import { environment } from '~/environment.server'
 import { deleteObject, getObjectStream, putObject, recordFile } from '~/files/files.server'
-import { cancelJob, enterJob, launchJob } from '~/jobs/jobs.server'
+import { cancelJob, enterJob, launchJob, openJobs } from '~/jobs/jobs.server'
 import { recordHistory } from '~/projects/history.server'
 import type { Project } from '~/projects/project'
 import type { Database } from '~database/connection.server'
@@ -246,6 +246,7 @@ export async function startPreview(
 ): Promise<number> {
   const { project, userId, record, settings } = request
   const jobId = await db.transaction(async (trx) => {
+    await refuseThird(trx, userId)
     const id = await enterJob(trx, { projectId: project.id, userId, kind: 'import' })
     await take(trx, record, open, {
       state: 'previewing',
@@ -293,6 +294,16 @@ export interface CommitOrder {
   counts: ImportCounts
 }
 
+/** Imports that one person may have under way at a time, so that others get a thread too. */
+const openImportsPerPerson = 2
+
+async function refuseThird(db: Database, userId: number): Promise<void> {
+  if ((await openJobs(db, userId, 'import')) < openImportsPerPerson) return
+  throw new ImportRefused(
+    `You have ${openImportsPerPerson} imports under way already: wait for one, or stop one.`,
+  )
+}
+
 /** Starts the commit on a thread. Throws ImportRefused. */
 export async function startCommit(
   db: Database,
@@ -300,6 +311,7 @@ export async function startCommit(
 ): Promise<number> {
   const { project, userId, record, order } = request
   const jobId = await db.transaction(async (trx) => {
+    await refuseThird(trx, userId)
     const id = await enterJob(trx, { projectId: project.id, userId, kind: 'import' })
     await take(trx, record, ['previewed'], { state: 'committing', job_id: id })
     return id
