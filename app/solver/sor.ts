@@ -259,7 +259,7 @@ function correctZones(system: SorSystem, weight: Float64Array, zones: Zones, wit
   const { nx, ny, b, w, e, s, n, root, x } = system
   const { count: zoneCount, zoneOf } = zones
   const mode = withMode ? zones.mode : null
-  const excess = new Array<number>(zones.matrix.length).fill(0)
+  const excess = Array.from({ length: zones.matrix.length }, () => 0)
   const count = nx * ny
   for (let c = 0; c < count; c++) {
     const zone = zoneOf[c] as number

@@ -92,7 +92,7 @@ export function zonesOf(
   }
   const withMode = left > 1e-12 * whole
   const size = zones + (withMode ? 1 : 0)
-  const rows = Array.from({ length: size }, () => new Array<number>(size).fill(0))
+  const rows = Array.from({ length: size }, () => Array.from({ length: size }, () => 0))
   for (let c = 0; c < count; c++) {
     const own = zoneOf[c] as number
     if (own < 0) continue
