@@ -73,6 +73,12 @@ export async function seedDemo(db: Knex): Promise<void> {
   await moveBack(db, '2026-11-23T10:20:00Z')
   await importReadings(db, project, data, book, { before, during })
   await moveBack(db, '2026-11-24T08:40:00Z')
+  // A receipt carries its own date, for whoever downloads it.
+  await db('imports').update({
+    receipt: db.raw(
+      "json_set(receipt, '$.committedAt', date_format(committed_at, '%Y-%m-%dT%H:%i:%s.000Z'))",
+    ),
+  })
 
   await saveEstimates(db, project, originator, during)
   await recordFit(db, project, during, { date: '2026-11-23' }, originator)

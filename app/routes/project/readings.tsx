@@ -93,13 +93,15 @@ export default function ReadingsPage({ loaderData }: Route.ComponentProps) {
   const [selectedId, onSelect] = useState<string | null>(null)
   const [hoveredId, onHover] = useState<string | null>(null)
   const pointNames = useMemo(() => points.map((row) => ({ id: row.id, name: row.body.name })), [points])
-  const features = useMemo(
-    () => [
-      ...pointFeatures(points).map((feature) => ({ ...feature, muted: true })),
+  const features = useMemo(() => {
+    // A point that an instrument stands for would be drawn and named twice.
+    const taken = new Set(book.rows('instrument').map((row) => row.body.pointId))
+    const free = points.filter((row) => !taken.has(row.id))
+    return [
+      ...pointFeatures(free).map((feature) => ({ ...feature, muted: true })),
       ...instrumentFeatures(book),
-    ],
-    [book, points],
-  )
+    ]
+  }, [book, points])
   const shownPlan = useMemo(
     () =>
       planImage && {
