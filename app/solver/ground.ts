@@ -14,6 +14,8 @@ export interface Profile {
   top: number[]
   kx: number[]
   ky: number[]
+  /** Index into the model's materials, a layer. */
+  material: number[]
 }
 
 export interface GroundOnGrid {
@@ -26,12 +28,12 @@ export interface GroundOnGrid {
 
 /** Which profile lies under each cell. A later entry replaces earlier ones; no entry leaves the cell outside. */
 export function groundOnGrid(model: Model, grid: Grid): GroundOnGrid {
-  const conductivities = new Map<string, { kx: number; ky: number }>()
+  const conductivities = new Map<string, { kx: number; ky: number; index: number }>()
   model.materials.forEach((material, index) => {
     if (conductivities.has(material.name)) {
       throw new ModelError(`materials[${index}].name`, `the name "${material.name}" is used twice`)
     }
-    conductivities.set(material.name, conductivityOf(material, `materials[${index}]`))
+    conductivities.set(material.name, { ...conductivityOf(material, `materials[${index}]`), index })
   })
   const count = grid.columns * grid.rows
   const active = new Uint8Array(count)
@@ -81,7 +83,7 @@ function layersOf(
   model: Model,
   entry: Model['ground'][number],
   path: string,
-  conductivities: Map<string, { kx: number; ky: number }>,
+  conductivities: Map<string, { kx: number; ky: number; index: number }>,
 ): ProfileMaker {
   if (entry.layers && (entry.material !== undefined || entry.base !== undefined || entry.top !== undefined)) {
     throw new ModelError(path, 'give either layers, or material, base and top')
@@ -106,7 +108,7 @@ function layersOf(
     })
     .reverse()
   function at(x: number, y: number): Profile {
-    const profile: Profile = { base: [], top: [], kx: [], ky: [] }
+    const profile: Profile = { base: [], top: [], kx: [], ky: [], material: [] }
     let below = Number.NEGATIVE_INFINITY
     for (const layer of layers) {
       const base = layer.base.at(x, y)
@@ -126,6 +128,7 @@ function layersOf(
       profile.top.push(top)
       profile.kx.push(layer.conductivity.kx)
       profile.ky.push(layer.conductivity.ky)
+      profile.material.push(layer.conductivity.index)
     }
     return profile
   }
