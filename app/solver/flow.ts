@@ -3,6 +3,7 @@ import { columnFaceCount } from './faces'
 import type { Profile } from './ground'
 import { transmissivityAt } from './ground'
 import { levelAtFace, levelOfPotential, type Potential, potentialAt, slopeAt } from './saturated'
+import { type ProfileStorage, storageOf, storageSlopeAt, storedAt } from './storage'
 
 /**
  * The linear system of one Newton step, by cell: diag y - west y_w - east y_e - south y_s - north y_n = imbalance.
@@ -17,7 +18,18 @@ export interface Matrix {
   south: Float64Array
   north: Float64Array
   weight: Float64Array
+  /** The part of the diagonal that ties a cell to what is held or known, without its links to free cells. */
+  own: Float64Array
   symmetric: boolean
+}
+
+/**
+ * Storage over one implicit step: each cell's inflow is (stored(h) - before) / interval. `before` holds a volume a
+ * cell, `interval` a time.
+ */
+export interface StorageTerm {
+  interval: number
+  before: Float64Array
 }
 
 export interface FlowState {
@@ -48,6 +60,8 @@ export interface FlowModel {
   fullX: number[]
   fullY: number[]
   film: number
+  /** What profiles store, in transient models; empty in steady ones. */
+  storage: ProfileStorage[]
   /** Does a change of head change every flow in proportion? Then one step solves it. */
   linear: boolean
 }
@@ -60,11 +74,12 @@ export function flowModelOf(d: Discretised): FlowModel {
   const linear =
     !d.unconfined &&
     d.exchanges.every((exchange) => exchange.kind !== 'drain' && exchange.floor === Number.NEGATIVE_INFINITY)
+  const storage = d.model.time.kind === 'transient' ? storageOf(d) : []
   if (!d.unconfined) {
     const level = (profile: Profile) => profile.top[profile.top.length - 1] as number
     const fullX = d.profiles.map((profile) => transmissivityAt(profile, profile.kx, level(profile)))
     const fullY = d.profiles.map((profile) => transmissivityAt(profile, profile.ky, level(profile)))
-    return { d, flows: [], fullX, fullY, film: 0, linear }
+    return { d, flows: [], fullX, fullY, film: 0, storage, linear }
   }
   let lowest = Number.POSITIVE_INFINITY
   for (const profile of d.profiles) lowest = Math.min(lowest, profile.base[0] as number)
@@ -79,7 +94,7 @@ export function flowModelOf(d: Discretised): FlowModel {
     kx: profile.kx[0] as number,
     ky: profile.ky[0] as number,
   }))
-  return { d, flows, fullX: [], fullY: [], film, linear }
+  return { d, flows, fullX: [], fullY: [], film, storage, linear }
 }
 
 /** A matrix of zeros for the model's cells; symmetric where confined, where opposite faces share their coefficient. */
@@ -88,6 +103,7 @@ export function emptyMatrix(model: FlowModel): Matrix {
   const n = columns * rows
   const diag = new Float64Array(n)
   const weight = new Float64Array(n).fill(1)
+  const own = new Float64Array(n)
   if (model.d.unconfined) {
     const [west, east, south, north] = [0, 1, 2, 3].map(() => new Float64Array(n)) as [
       Float64Array,
@@ -95,7 +111,7 @@ export function emptyMatrix(model: FlowModel): Matrix {
       Float64Array,
       Float64Array,
     ]
-    return { diag, west, east, south, north, weight, symmetric: false }
+    return { diag, west, east, south, north, weight, own, symmetric: false }
   }
   const alongX = new Float64Array(n + 1)
   const alongY = new Float64Array(n + columns)
@@ -106,6 +122,7 @@ export function emptyMatrix(model: FlowModel): Matrix {
     south: alongY.subarray(0, n),
     north: alongY.subarray(columns),
     weight,
+    own,
     symmetric: true,
   }
 }
@@ -299,6 +316,7 @@ export function evaluate(
   rates: ArrayLike<number>,
   state: FlowState,
   matrix: Matrix | null,
+  storage: StorageTerm | null = null,
 ): void {
   const { d } = model
   const { columns, rows, xEdges, yEdges } = d.grid
@@ -310,6 +328,7 @@ export function evaluate(
   forcing.fill(0)
   if (matrix) {
     matrix.diag.fill(0)
+    matrix.own.fill(0)
     matrix.west.fill(0)
     matrix.east.fill(0)
     matrix.south.fill(0)
@@ -370,9 +389,11 @@ export function evaluate(
     if (highFixed) forcing[low] = (forcing[low] as number) + Math.abs(q)
     if (lowFixed) forcing[high] = (forcing[high] as number) + Math.abs(q)
     if (!matrix || !lowToHigh || !highToLow) return
-    const { diag, weight } = matrix
+    const { diag, own, weight } = matrix
     diag[low] = (diag[low] as number) + byLow
     diag[high] = (diag[high] as number) + byHigh
+    if (highFixed) own[low] = (own[low] as number) + byLow
+    if (lowFixed) own[high] = (own[high] as number) + byHigh
     if (lowFixed || highFixed) return
     lowToHigh[low] = byHigh / (weight[high] as number)
     highToLow[high] = byLow / (weight[low] as number)
@@ -382,6 +403,7 @@ export function evaluate(
     exchangeFlow(model, exchange, heads[cell] as number, scratch)
     imbalance[cell] = (imbalance[cell] as number) + scratch.q
     forcing[cell] = (forcing[cell] as number) + Math.abs(scratch.q)
+    if (matrix) matrix.own[cell] = (matrix.own[cell] as number) + scratch.byHigh
     if (matrix) matrix.diag[cell] = (matrix.diag[cell] as number) + scratch.byHigh
   }
   for (let cell = 0; cell < n; cell++) addSource(cell, d.recharge[cell] as number)
@@ -396,11 +418,63 @@ export function evaluate(
     imbalance[cell] = (imbalance[cell] as number) + rate
     forcing[cell] = (forcing[cell] as number) + Math.abs(rate)
   }
+  if (storage) addStorage(model, heads, state, matrix, storage)
   if (!matrix) return
   for (let cell = 0; cell < n; cell++) {
-    if (active[cell] !== 1 || (fixedBy[cell] as number) >= 0) matrix.diag[cell] = 1
-    else matrix.diag[cell] = (matrix.diag[cell] as number) / (matrix.weight[cell] as number)
+    if (active[cell] !== 1 || (fixedBy[cell] as number) >= 0) {
+      matrix.diag[cell] = 1
+      matrix.own[cell] = 0
+      continue
+    }
+    matrix.diag[cell] = (matrix.diag[cell] as number) / (matrix.weight[cell] as number)
+    matrix.own[cell] = (matrix.own[cell] as number) / (matrix.weight[cell] as number)
   }
+}
+
+function addStorage(
+  model: FlowModel,
+  heads: Float64Array,
+  { imbalance, forcing }: FlowState,
+  matrix: Matrix | null,
+  { interval, before }: StorageTerm,
+): void {
+  const { d, storage, film } = model
+  const { columns, rows, xEdges, yEdges } = d.grid
+  for (let j = 0; j < rows; j++) {
+    const height = (yEdges[j + 1] as number) - (yEdges[j] as number)
+    for (let i = 0; i < columns; i++) {
+      const cell = j * columns + i
+      if (d.active[cell] !== 1) continue
+      const area = height * ((xEdges[i + 1] as number) - (xEdges[i] as number))
+      const own = storage[d.profileOf[cell] as number] as ProfileStorage
+      const h = heads[cell] as number
+      const rate = (area * storedAt(own, d.unconfined, film, h) - (before[cell] as number)) / interval
+      imbalance[cell] = (imbalance[cell] as number) - rate
+      forcing[cell] = (forcing[cell] as number) + Math.abs(rate)
+      if (!matrix) continue
+      const slope = (area * storageSlopeAt(own, d.unconfined, film, h)) / interval
+      matrix.diag[cell] = (matrix.diag[cell] as number) + slope
+      matrix.own[cell] = (matrix.own[cell] as number) + slope
+    }
+  }
+}
+
+/** Water stored in every cell at the given heads, from an arbitrary zero; volume, 0 where there is no ground. */
+export function storedVolumes(model: FlowModel, heads: Float64Array): Float64Array {
+  const { d, storage, film } = model
+  const { columns, rows, xEdges, yEdges } = d.grid
+  const volumes = new Float64Array(columns * rows)
+  for (let j = 0; j < rows; j++) {
+    const height = (yEdges[j + 1] as number) - (yEdges[j] as number)
+    for (let i = 0; i < columns; i++) {
+      const cell = j * columns + i
+      if (d.active[cell] !== 1) continue
+      const area = height * ((xEdges[i + 1] as number) - (xEdges[i] as number))
+      const own = storage[d.profileOf[cell] as number] as ProfileStorage
+      volumes[cell] = area * storedAt(own, d.unconfined, film, heads[cell] as number)
+    }
+  }
+  return volumes
 }
 
 /** Head at `h` after the system's unknown changed by `change`: by the thickness potential in unconfined flow. */
