@@ -15,6 +15,7 @@ import { ModelError, requireFinite, requireNotNegative, requirePositive } from '
 import { checkedPolygon, signedArea, visitCellsInside, visitOverlaps } from './polygon'
 import type { Warning } from './result'
 import { refuseWhatIsNotComputed } from './scope'
+import { knownLevels, modelOfStage } from './stages'
 import { type PlacedWell, placeWells } from './wells'
 
 /** Water exchanged with something outside the ground at a known level, in one cell or through one outer face of it. */
@@ -79,9 +80,13 @@ export interface Discretised {
   warnings: Warning[]
 }
 
-/** Lays a model out on its grid. Throws ModelError, with the path in the file, for all that cannot be computed. */
-export function discretise(model: Model): Discretised {
-  refuseWhatIsNotComputed(model)
+/**
+ * Lays a model out on its grid, as it stands in one stage (steady models have one). Every stage measures its heads
+ * from the same reference. Throws ModelError, with the path in the file, for all that cannot be computed.
+ */
+export function discretise(file: Model, stage = 0): Discretised {
+  refuseWhatIsNotComputed(file)
+  const model = modelOfStage(file, stage)
   const grid = gridOf(model)
   const { active, profileOf, profiles } = groundOnGrid(model, grid)
   const count = grid.columns * grid.rows
@@ -113,8 +118,9 @@ export function discretise(model: Model): Discretised {
   placeLeakage(discretised)
   placeRecharge(discretised)
   discretised.wells = placeWells(model, grid, active, discretised.wallShare, warnings)
-  subtractReference(discretised)
-  refuseWithoutReference(discretised)
+  subtractReference(discretised, knownLevels(file))
+  // Storage ties the heads of every cell to those before.
+  if (model.time.kind === 'steady') refuseWithoutReference(discretised)
   if (!discretised.unconfined) discretised.conductance = confinedConductances(discretised)
   return discretised
 }
@@ -227,15 +233,10 @@ function distanceToSegment(a: Position, b: Position, x: number, y: number): numb
   return Math.hypot(a[0] + t * (b[0] - a[0]) - x, a[1] + t * (b[1] - a[1]) - y)
 }
 
-/** One number, or one a vertex; values by stage belong to transient calculations. */
+/** One number, or one a vertex; values by stage have been put in place before. */
 function alongLine(value: Value, line: Position[] | undefined, path: string): number | number[] {
   if (typeof value === 'number') return requireFinite(value, path)
-  if (!Array.isArray(value)) {
-    throw new ModelError(
-      path,
-      'values by stage belong to transient flow, which this version does not compute',
-    )
-  }
+  if (!Array.isArray(value)) throw new ModelError(path, 'must be a number or one number a vertex')
   if (!line) throw new ModelError(path, 'on a polygon there is one value; an array gives values along a line')
   if (value.length !== line.length) {
     throw new ModelError(path, `has ${value.length} values for a line of ${line.length} vertices`)
@@ -244,9 +245,9 @@ function alongLine(value: Value, line: Position[] | undefined, path: string): nu
 }
 
 /** The one value of a row that knows no place along a line. */
-export function singleValue(value: Value, path: string): number {
+function singleValue(value: Value, path: string): number {
   if (typeof value === 'number') return requireFinite(value, path)
-  throw new ModelError(path, 'values by stage belong to transient flow, which this version does not compute')
+  throw new ModelError(path, 'must be one number')
 }
 
 function placeBoundaries(d: Discretised): void {
@@ -568,18 +569,8 @@ function percent(share: number): string {
   return `${(100 * share).toPrecision(3)} %`
 }
 
-/** Measures every head and level from the middle of the known ones. */
-function subtractReference(d: Discretised): void {
-  let lowest = Number.POSITIVE_INFINITY
-  let highest = Number.NEGATIVE_INFINITY
-  for (const exchange of d.exchanges) {
-    lowest = Math.min(lowest, exchange.head)
-    highest = Math.max(highest, exchange.head)
-  }
-  for (const head of d.fixedHead) {
-    if (head < lowest) lowest = head
-    if (head > highest) highest = head
-  }
+/** Measures every head and level from the middle of those known in any stage. */
+function subtractReference(d: Discretised, { lowest, highest }: { lowest: number; highest: number }): void {
   if (highest < lowest) {
     throw new ModelError(
       'boundaries',

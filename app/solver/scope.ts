@@ -10,8 +10,6 @@ export function refuseWhatIsNotComputed(model: Model): void {
       `"${model.flow}" belongs to a vertical section; in plan it is confined or unconfined`,
     )
   }
-  if (model.time.kind !== 'steady') throw notYet('time.kind', 'transient flow')
-  if (model.solver?.method === 'multigrid') throw notYet('solver.method', 'the multigrid method')
   if (model.solver?.tolerance !== undefined) {
     const tolerance = requirePositive(model.solver.tolerance, 'solver.tolerance')
     if (tolerance > 1e-3) throw new ModelError('solver.tolerance', 'above 0.001 the heads would mean little')

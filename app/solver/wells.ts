@@ -75,7 +75,7 @@ export function placeWells(
 
 function singleRate(value: Value, path: string): number {
   if (typeof value === 'number') return requireFinite(value, path)
-  throw new ModelError(path, 'rates by stage belong to transient flow, which this version does not compute')
+  throw new ModelError(path, 'must be one number')
 }
 
 /**
