@@ -170,7 +170,18 @@ const modelFile = z.strictObject({
       verify: z.boolean().optional(),
       sensitivities: list(z.string()).optional(),
       responses: z.boolean().optional(),
-      flowLines: list(z.strictObject({ from: position, direction: z.enum(['forward', 'back']) })).optional(),
+      flowLines: list(
+        z.union([
+          z.strictObject({ from: position, direction: z.enum(['forward', 'back']) }),
+          z.strictObject({
+            well: z.string(),
+            direction: z.enum(['forward', 'back']),
+            lines: z.int().min(1).max(200).optional(),
+          }),
+        ]),
+      ).optional(),
+      captureZones: z.strictObject({ times: list(z.number().positive()).optional() }).optional(),
+      drawdown: z.boolean().optional(),
     })
     .optional(),
 })

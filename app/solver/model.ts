@@ -161,11 +161,21 @@ export interface Ring {
   source?: string
 }
 
+/** A flow line from a place, or `lines` of them (16) that carry equal shares of a well's water, starting round it. */
+export type FlowLineWish =
+  | { from: Position; direction: 'forward' | 'back' }
+  | { well: string; direction: 'forward' | 'back'; lines?: number }
+
 export interface Want {
   verify?: boolean
+  /** Names of results: "points/P1", "wells/W1", "lines/Base of dig", "rings/Site/through". */
   sensitivities?: string[]
   responses?: boolean
-  flowLines?: { from: Position; direction: 'forward' | 'back' }[]
+  flowLines?: FlowLineWish[]
+  /** Which ground drains to which well, within each of the times [time] and without limit. */
+  captureZones?: { times?: number[] }
+  /** Heads compared with those of the same case with all wells off. */
+  drawdown?: boolean
 }
 
 export interface Model {
