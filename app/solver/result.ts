@@ -1,4 +1,4 @@
-/** The result, version 1, as the model file's description gives it. Steady results hold one entry a list. */
+/** The result, version 1, as the model file's description gives it. Lists hold one entry a reported time, one when steady. */
 
 export interface Warning {
   code: string
@@ -32,7 +32,15 @@ export interface NamedFlow {
 }
 
 export interface KindFlow {
-  kind: 'fixed head' | 'specified flux' | 'head-dependent flux' | 'drain' | 'recharge' | 'wells' | 'leakage'
+  kind:
+    | 'fixed head'
+    | 'specified flux'
+    | 'head-dependent flux'
+    | 'drain'
+    | 'seepage face'
+    | 'recharge'
+    | 'wells'
+    | 'leakage'
   inflow: number[]
   outflow: number[]
 }
@@ -55,6 +63,10 @@ export interface Balance {
   storage: number[]
   errorPercent: number[]
   kinds: KindFlow[]
+  /** Cumulative by stage, in transient flow: volumes. */
+  volumes?: { inflow: number[]; outflow: number[]; storage: number[] }
+  /** The cell that balances worst: its centre and what it gains too much, volume/time. */
+  worstCell: { at: [x: number, y: number]; error: number }[]
 }
 
 export interface Result {
@@ -64,12 +76,18 @@ export interface Result {
   /** "sha256:…" of the model file, where the caller gave it. */
   input?: string
   converged: boolean
-  method: 'sor'
-  /** Sweeps over the grid. */
+  /** Successive over-relaxation, or conjugate gradients preconditioned by multigrid. */
+  method: 'sor' | 'multigrid'
+  /** What did the arithmetic: 'typescript', or the name of the compiled kernels. */
+  kernels: string
+  /** Sweeps over the grid (SOR) or iterations of conjugate gradients, over all steps. */
   iterations: number
-  /** True residual relative to the right-hand side. */
+  /** True residual relative to the right-hand side; in transient flow the largest of all steps. */
   residual: number
+  /** Steps in time, in transient flow. */
+  steps?: number
   grid: { columns: number; rows: number; cells: number; active: number }
+  /** End of each stage, or of each step, from time zero; empty in steady flow. */
   times: number[]
   points: PointResult[]
   wells: WellResult[]
@@ -81,8 +99,46 @@ export interface Result {
   balance: Balance
   noFlowEdges: string[]
   warnings: Warning[]
-  /** The relative residual after each number of sweeps, at most a few hundred entries. */
-  history: { sweeps: number; residual: number }[]
+  /** The relative residual after each number of iterations, at most a few hundred entries. */
+  history: { iterations: number; residual: number }[]
   /** Largest error left in any head by stopping here, as the convergence observed lets one estimate it; length. */
   headError: number
+}
+
+/** What a flow line ended at. Against the flow that is where its water came from. */
+export interface FlowLineEnd {
+  /** 'edge': an outer edge that no boundary names. 'time': the time asked for. 'limit': too many cells. */
+  at: 'well' | 'boundary' | 'leakage' | 'recharge' | 'stagnation' | 'dry ground' | 'edge' | 'time' | 'limit'
+  name?: string
+}
+
+export interface FlowLineResult {
+  direction: 'forward' | 'back'
+  /** The well it was started round. */
+  well?: string
+  line: [x: number, y: number][]
+  /** At each vertex, from the start, whatever the direction. */
+  /** End of each stage, or of each step, from time zero; empty in steady flow. */
+  times: number[]
+  /** The last of them. */
+  time: number
+  ended: FlowLineEnd
+  /** Wells whose cells the line passed, because they take less than what flows through. */
+  passed?: string[]
+}
+
+/** The ground from which a well draws within a time; null: ever. */
+export interface CaptureZone {
+  time: number | null
+  area: number
+  outline: [x: number, y: number][]
+}
+
+export interface CaptureResult {
+  /** Where the water of the site goes: the area that drains there, and its share of all ground looked at. */
+  drains: (FlowLineEnd & { area: number; share: number })[]
+  /** Every abstraction well that gives water, with its zone within each time asked for and, last, without limit. */
+  wells: { name: string; zones: CaptureZone[] }[]
+  /** The places looked at: one for `cells` x `cells` cells. */
+  raster: { columns: number; rows: number; cells: number }
 }
