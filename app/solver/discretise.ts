@@ -12,6 +12,7 @@ import {
 } from './line-on-grid'
 import type { Boundary, Model, Position, Value, Wall } from './model'
 import { ModelError, requireFinite, requireNotNegative, requirePositive } from './model-error'
+import { plannedGrid } from './planned-grid'
 import { checkedPolygon, signedArea, visitCellsInside, visitOverlaps } from './polygon'
 import type { Warning } from './result'
 import { refuseWhatIsNotComputed } from './scope'
@@ -20,8 +21,11 @@ import { type PlacedWell, placeWells } from './wells'
 
 /** Water exchanged with something outside the ground at a known level, in one cell or through one outer face of it. */
 export interface Exchange {
-  /** 'fixed': the head stands at the face. 'river': conductance x (head - h). 'drain': the same, outflow only. */
-  kind: 'fixed' | 'river' | 'drain'
+  /**
+   * 'fixed': the head stands at the face. 'river': conductance x (head - h). 'drain': the same, outflow only.
+   * 'seepage': the head stands at the face, which is the elevation of the face, while water flows out.
+   */
+  kind: 'fixed' | 'river' | 'drain' | 'seepage'
   owner: 'boundaries' | 'leakage'
   index: number
   cell: number
@@ -31,7 +35,7 @@ export interface Exchange {
   /** Covered length of the face, and from the cell's centre to it. */
   width: number
   half: number
-  /** Area per time; infinite for 'fixed'. */
+  /** Area per time; infinite for 'fixed' and 'seepage'. */
   conductance: number
   head: number
   /** Inflow stops growing when the level beside it falls below this. */
@@ -82,15 +86,15 @@ export interface Discretised {
 
 /**
  * Lays a model out on its grid, as it stands in one stage (steady models have one). Every stage measures its heads
- * from the same reference. Throws ModelError, with the path in the file, for all that cannot be computed.
+ * from the same reference, amid `levels`. Throws ModelError, with the path in the file, for all that cannot be computed.
  */
-export function discretise(file: Model, stage = 0): Discretised {
+export function discretise(file: Model, stage = 0, levels = knownLevels(file)): Discretised {
   refuseWhatIsNotComputed(file)
   const model = modelOfStage(file, stage)
-  const grid = gridOf(model)
+  const warnings: Warning[] = []
+  const grid = 'cellSize' in model.grid ? plannedGrid(model, model.grid, warnings) : gridOf(model, model.grid)
   const { active, profileOf, profiles } = groundOnGrid(model, grid)
   const count = grid.columns * grid.rows
-  const warnings: Warning[] = []
   const discretised: Discretised = {
     model,
     grid,
@@ -118,7 +122,7 @@ export function discretise(file: Model, stage = 0): Discretised {
   placeLeakage(discretised)
   placeRecharge(discretised)
   discretised.wells = placeWells(model, grid, active, discretised.wallShare, warnings)
-  subtractReference(discretised, knownLevels(file))
+  subtractReference(discretised, levels)
   // Storage ties the heads of every cell to those before.
   if (model.time.kind === 'steady') refuseWithoutReference(discretised)
   if (!discretised.unconfined) discretised.conductance = confinedConductances(discretised)
@@ -180,7 +184,7 @@ function placeWalls(d: Discretised): void {
       text: `The walls ${pair} share cell faces; the more resistant one counts there.`,
     })
   }
-  if (walls.length > 0) {
+  if (walls.length > 0 && model.kind === 'plan') {
     warnings.push({
       code: 'wall-full-depth',
       severity: 'note',
@@ -266,7 +270,7 @@ function placeBoundaries(d: Discretised): void {
     if (!acts) {
       throw new ModelError(
         `${path}.${boundary.line ? 'line' : 'polygon'}`,
-        `the boundary ${called(boundary, index)} touches no cell of the ground`,
+        `the boundary ${called(boundary, index)} touches no ${boundary.kind === 'seepage face' ? 'edge' : 'cell'} of the ground`,
       )
     }
   }
@@ -280,9 +284,14 @@ function placeBoundaries(d: Discretised): void {
   // A face of a cell that is itself held at a head has nothing left to say.
   d.exchanges = d.exchanges.filter((exchange) => {
     const held = (d.fixedBy[exchange.cell] as number) >= 0
-    return !(held && exchange.kind === 'fixed') && exchange.width > 0
+    return !(held && atFaceHead(exchange)) && exchange.width > 0
   })
   d.specifiedFlows = d.specifiedFlows.filter((flow) => flow.width > 0)
+}
+
+/** Does the head stand at the face itself, with no more than half a cell between it and the cell's centre? */
+export function atFaceHead({ kind }: Exchange): boolean {
+  return kind === 'fixed' || kind === 'seepage'
 }
 
 interface BoundaryValues {
@@ -308,6 +317,10 @@ function valuesOf(boundary: Boundary, line: Position[] | undefined, path: string
     }
   }
   if (boundary.kind === 'drain') values.head = alongLine(boundary.level, line, `${path}.level`)
+  if (boundary.kind === 'seepage face') {
+    if (!line) throw new ModelError(`${path}.polygon`, 'a seepage face is a line along the edge of the ground')
+    values.head = line.map(([, y]) => y)
+  }
   if (boundary.kind === 'head-dependent flux' || boundary.kind === 'drain') {
     values.conductance = alongLine(boundary.conductance, line, `${path}.conductance`)
     for (const entry of [values.conductance].flat()) requireNotNegative(entry, `${path}.conductance`)
@@ -335,11 +348,16 @@ function placeBoundaryLine(
   checkLine(line, `${path}.line`)
   const values = valuesOf(boundary, line, path)
   const placement = placeLine(grid, active, line)
+  if (boundary.kind === 'seepage face') {
+    // Water leaves at an edge only; inside the ground there is no face to seep from.
+    for (const { length } of placement.cells) placement.lost += length
+    placement.cells = []
+  }
   if (placement.lost > 1e-6 * lineLength(line)) {
     d.warnings.push({
       code: 'line-outside',
       severity: 'check',
-      text: `${percent(placement.lost / lineLength(line))} of the boundary ${called(boundary, index)} lies outside the ground and has no effect.`,
+      text: `${percent(placement.lost / lineLength(line))} of the boundary ${called(boundary, index)} lies ${boundary.kind === 'seepage face' ? 'off the edge of' : 'outside'} the ground and has no effect.`,
     })
   }
   for (const { face, cell, share, length, at } of placement.faces) {
@@ -377,6 +395,13 @@ function placeBoundaryLine(
   return placement.faces.length + placement.cells.length > 0
 }
 
+const exchangeKinds = {
+  'fixed head': 'fixed',
+  'head-dependent flux': 'river',
+  drain: 'drain',
+  'seepage face': 'seepage',
+} as const
+
 type EntryPlace = Pick<Exchange, 'cell' | 'face' | 'axis' | 'width' | 'half'>
 
 function entryAt(
@@ -392,7 +417,7 @@ function entryAt(
     return { index, cell, face, width, rate: amount * valueAlong(values.flux, at) }
   }
   return {
-    kind: boundary.kind === 'fixed head' ? 'fixed' : boundary.kind === 'drain' ? 'drain' : 'river',
+    kind: exchangeKinds[boundary.kind],
     owner: 'boundaries',
     index,
     ...place,
@@ -428,7 +453,7 @@ function makeRoom(
     const factor = room / taken
     other.width *= factor
     if ('rate' in other) other.rate *= factor
-    else if (other.kind !== 'fixed') other.conductance *= factor
+    else if (!atFaceHead(other)) other.conductance *= factor
     const [a, b] = [other.index, entry.index]
     replaced.add(`${called(boundaries[a] as Boundary, a)} and ${called(boundaries[b] as Boundary, b)}`)
   }
@@ -514,7 +539,8 @@ function placeRecharge(d: Discretised): void {
     const path = `recharge[${index}]`
     const rate = singleValue(recharge.rate, `${path}.rate`)
     let total = 0
-    visitArea(
+    const visitPlace = d.model.kind === 'section' ? visitTops : visitArea
+    visitPlace(
       d,
       recharge.polygon,
       `${path}.polygon`,
@@ -565,6 +591,40 @@ function visitArea(
   }
 }
 
+/**
+ * The highest cell of every column of a vertical section, with the length along x that a polygon covers there, or its
+ * whole width. A polygon counts from its lowest to its highest x, whatever its y.
+ */
+function visitTops(
+  d: Discretised,
+  given: Position[] | undefined,
+  path: string,
+  what: string,
+  visit: (cell: number, length: number) => void,
+): void {
+  const { grid, active } = d
+  const { columns, rows, xEdges } = grid
+  const xs = given ? checkedPolygon(given, path).map(([x]) => x) : [Number.NEGATIVE_INFINITY, Number.POSITIVE_INFINITY]
+  const [west, east] = [Math.min(...xs), Math.max(...xs)]
+  let covered = 0
+  for (let i = 0; i < columns; i++) {
+    const length = Math.min(east, xEdges[i + 1] as number) - Math.max(west, xEdges[i] as number)
+    if (length <= 0) continue
+    let j = rows - 1
+    while (j >= 0 && active[j * columns + i] !== 1) j--
+    if (j < 0) continue
+    covered += length
+    visit(j * columns + i, length)
+  }
+  if (given && covered < (1 - 1e-6) * (east - west)) {
+    d.warnings.push({
+      code: 'area-outside',
+      severity: 'check',
+      text: `${what} acts on ${percent(covered / (east - west))} of its length; the rest lies beside the ground.`,
+    })
+  }
+}
+
 function percent(share: number): string {
   return `${(100 * share).toPrecision(3)} %`
 }
@@ -587,7 +647,8 @@ function subtractReference(d: Discretised, { lowest, highest }: { lowest: number
   for (let cell = 0; cell < d.fixedHead.length; cell++) {
     d.fixedHead[cell] = (d.fixedHead[cell] as number) - d.reference
   }
-  shiftLevels(d.profiles, d.reference)
+  // In a vertical section base and top only say how wide it is.
+  if (d.model.kind === 'plan') shiftLevels(d.profiles, d.reference)
   for (const well of d.wells) well.lowestLevel -= d.reference
 }
 
@@ -635,7 +696,7 @@ function refuseWithoutReference(d: Discretised): void {
   for (const exchange of d.exchanges) {
     const number = part[exchange.cell] as number
     if (exchange.conductance === 0) continue
-    if (exchange.kind === 'drain') drained[number] = true
+    if (exchange.kind === 'drain' || exchange.kind === 'seepage') drained[number] = true
     else tied[number] = true
   }
   for (const flow of d.specifiedFlows) {

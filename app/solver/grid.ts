@@ -1,5 +1,5 @@
-import type { Model } from './model'
-import { ModelError, requireFinite, requirePositive } from './model-error'
+import type { GivenGrid, Model, UniformGrid } from './model'
+import { ModelError, requireFinite } from './model-error'
 
 /**
  * A rectangular grid. Cell (i, j) lies in column i from the lowest x and row j from the lowest y and has index
@@ -50,29 +50,17 @@ function columnAt(edges: Float64Array, value: number): number {
   return i >= 0 && i < last ? i : -1
 }
 
-/** The grid a model file asks for. Refuses empty, unordered or over-large grids and planned refinement. */
-export function gridOf(model: Model): Grid {
+/** The uniform or given grid of a model file. Refuses empty, unordered or over-large grids. */
+export function gridOf(model: Model, given: UniformGrid | GivenGrid): Grid {
   const [west, east] = extentOf(model.extent.x, 'extent.x')
   const [south, north] = extentOf(model.extent.y, 'extent.y')
-  const given = model.grid
   if ('xEdges' in given) {
     const xEdges = givenEdges(given.xEdges, west, east, 'grid.xEdges')
     const yEdges = givenEdges(given.yEdges, south, north, 'grid.yEdges')
     return sized({ columns: xEdges.length - 1, rows: yEdges.length - 1, xEdges, yEdges })
   }
-  let columns: number
-  let rows: number
-  if ('cellSize' in given) {
-    if (given.refine && given.refine.length > 0) {
-      throw new ModelError('grid.refine', 'refinement of a planned grid is not computed by this version')
-    }
-    const size = requirePositive(given.cellSize, 'grid.cellSize')
-    columns = Math.max(1, Math.round((east - west) / size))
-    rows = Math.max(1, Math.round((north - south) / size))
-  } else {
-    columns = wholeCount(given.columns, 'grid.columns')
-    rows = wholeCount(given.rows, 'grid.rows')
-  }
+  const columns = wholeCount(given.columns, 'grid.columns')
+  const rows = wholeCount(given.rows, 'grid.rows')
   if (columns * rows > largestCellCount) {
     throw new ModelError('grid', `${columns} x ${rows} cells are more than the ${largestCellCount} allowed`)
   }
