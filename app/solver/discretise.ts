@@ -318,7 +318,8 @@ function valuesOf(boundary: Boundary, line: Position[] | undefined, path: string
   }
   if (boundary.kind === 'drain') values.head = alongLine(boundary.level, line, `${path}.level`)
   if (boundary.kind === 'seepage face') {
-    if (!line) throw new ModelError(`${path}.polygon`, 'a seepage face is a line along the edge of the ground')
+    if (!line)
+      throw new ModelError(`${path}.polygon`, 'a seepage face is a line along the edge of the ground')
     values.head = line.map(([, y]) => y)
   }
   if (boundary.kind === 'head-dependent flux' || boundary.kind === 'drain') {
@@ -604,7 +605,9 @@ function visitTops(
 ): void {
   const { grid, active } = d
   const { columns, rows, xEdges } = grid
-  const xs = given ? checkedPolygon(given, path).map(([x]) => x) : [Number.NEGATIVE_INFINITY, Number.POSITIVE_INFINITY]
+  const xs = given
+    ? checkedPolygon(given, path).map(([x]) => x)
+    : [Number.NEGATIVE_INFINITY, Number.POSITIVE_INFINITY]
   const [west, east] = [Math.min(...xs), Math.max(...xs)]
   let covered = 0
   for (let i = 0; i < columns; i++) {

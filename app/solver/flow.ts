@@ -1,5 +1,5 @@
 import type { Discretised, Exchange } from './discretise'
-import { columnFaceCount } from './faces'
+import { columnFaceCount, faceOf } from './faces'
 import type { Profile } from './ground'
 import { transmissivityAt } from './ground'
 import { levelAtFace, levelOfPotential, type Potential, potentialAt, slopeAt } from './saturated'
@@ -73,7 +73,9 @@ export interface FlowModel {
 export function flowModelOf(d: Discretised): FlowModel {
   const linear =
     !d.unconfined &&
-    d.exchanges.every((exchange) => exchange.kind !== 'drain' && exchange.floor === Number.NEGATIVE_INFINITY)
+    d.exchanges.every(({ kind, floor }) => {
+      return kind !== 'drain' && kind !== 'seepage' && floor === Number.NEGATIVE_INFINITY
+    })
   const storage = d.model.time.kind === 'transient' ? storageOf(d) : []
   if (!d.unconfined) {
     const level = (profile: Profile) => profile.top[profile.top.length - 1] as number
@@ -235,6 +237,16 @@ function meanConductivity(model: FlowModel, profile: number, axis: 'x' | 'y'): n
   return slopeAt(flow[axis], model.d.highestHead) / slopeAt(flow.thickness, model.d.highestHead)
 }
 
+/** Flow through any face between two active cells, positive from its low to its high cell; 0 elsewhere. */
+export function flowAtFace(flow: FlowModel, heads: Float64Array, face: number): number {
+  const { d } = flow
+  const { axis, low, high, length, lowHalf, highHalf } = faceOf(d.grid, face)
+  if (low < 0 || high < 0 || d.active[low] !== 1 || d.active[high] !== 1) return 0
+  const out: FaceFlow = { q: 0, byLow: 0, byHigh: 0 }
+  flowThrough(flow, heads, face, axis, low, high, lowHalf, highHalf, length, out)
+  return out.q
+}
+
 /** Flow of one exchange into its cell at head `h`; `byHigh` = -dq/dh >= 0. */
 export function exchangeFlow(model: FlowModel, exchange: Exchange, h: number, out: FaceFlow): void {
   out.byLow = 0
@@ -250,6 +262,11 @@ export function exchangeFlow(model: FlowModel, exchange: Exchange, h: number, ou
     if (exchange.kind === 'fixed') {
       out.q = half * (exchange.head - h)
       out.byHigh = half
+      return
+    }
+    if (exchange.kind === 'seepage') {
+      out.q = Math.min(0, half * (exchange.head - h))
+      out.byHigh = h > exchange.head ? half : idleSlope * half
       return
     }
     // The head at the face, with the outer resistance and the half cell in series.

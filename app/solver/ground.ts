@@ -88,6 +88,7 @@ function layersOf(
   if (entry.layers && (entry.material !== undefined || entry.base !== undefined || entry.top !== undefined)) {
     throw new ModelError(path, 'give either layers, or material, base and top')
   }
+  if (model.kind === 'section') return sectionGround(entry, path, conductivities)
   const given = entry.layers ?? [{ material: entry.material ?? '', base: entry.base, top: entry.top }]
   if (given.length === 0) throw new ModelError(`${path}.layers`, 'there is no layer')
   // The file lists layers from the top down; a profile holds them from the bottom up.
@@ -133,6 +134,28 @@ function layersOf(
     return profile
   }
   return { constant: layers.every((layer) => layer.base.constant && layer.top.constant), at }
+}
+
+/** Ground of a vertical section: one unit wide, so that its transmissivity is its conductivity. */
+function sectionGround(
+  entry: Model['ground'][number],
+  path: string,
+  conductivities: Map<string, { kx: number; ky: number; index: number }>,
+): ProfileMaker {
+  for (const field of ['base', 'top', 'layers'] as const) {
+    if (entry[field] === undefined) continue
+    throw new ModelError(
+      `${path}.${field}`,
+      'belongs to a plan; in a vertical section polygons say where a material lies',
+    )
+  }
+  const conductivity = conductivities.get(entry.material ?? '')
+  if (!conductivity) {
+    throw new ModelError(`${path}.material`, `there is no material "${entry.material ?? ''}"`)
+  }
+  const { kx, ky, index } = conductivity
+  const profile: Profile = { base: [0], top: [1], kx: [kx], ky: [ky], material: [index] }
+  return { constant: true, at: () => profile }
 }
 
 interface Level {

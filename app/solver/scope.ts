@@ -3,11 +3,17 @@ import { ModelError, requirePositive } from './model-error'
 
 /** Refuses by name, with its path, everything a model file may hold that this version does not compute. */
 export function refuseWhatIsNotComputed(model: Model): void {
-  if (model.kind !== 'plan') throw notYet('kind', 'a vertical section')
-  if (model.flow !== 'confined' && model.flow !== 'unconfined') {
+  const inSection = model.flow === 'saturated' || model.flow === 'free surface'
+  if (model.kind === 'plan' && inSection) {
     throw new ModelError(
       'flow',
       `"${model.flow}" belongs to a vertical section; in plan it is confined or unconfined`,
+    )
+  }
+  if (model.kind === 'section' && !inSection) {
+    throw new ModelError(
+      'flow',
+      `"${model.flow}" belongs to a plan; in a vertical section it is saturated or free surface`,
     )
   }
   if (model.solver?.tolerance !== undefined) {
@@ -15,13 +21,19 @@ export function refuseWhatIsNotComputed(model: Model): void {
     if (tolerance > 1e-3) throw new ModelError('solver.tolerance', 'above 0.001 the heads would mean little')
   }
   model.boundaries?.forEach((boundary, index) => {
-    if (boundary.kind === 'seepage face') {
-      throw notYet(
+    if (model.kind === 'plan' && boundary.kind === 'seepage face') {
+      throw new ModelError(
         `boundaries[${index}].kind`,
-        `"${boundary.name}": a seepage face (it belongs to a vertical section)`,
+        `"${boundary.name}": a seepage face belongs to a vertical section`,
       )
     }
   })
+  if (model.kind === 'section' && model.leakage && model.leakage.length > 0) {
+    throw new ModelError(
+      'leakage[0]',
+      'leakage belongs to a plan; a vertical section shows the aquitard itself',
+    )
+  }
   const want = model.want
   if (want?.verify) throw notYet('want.verify', 'the verification of a run')
   if (want?.sensitivities && want.sensitivities.length > 0)

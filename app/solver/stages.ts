@@ -112,6 +112,7 @@ export function knownLevels(model: Model): { lowest: number; highest: number } {
   for (const boundary of model.boundaries ?? []) {
     if (boundary.kind === 'fixed head' || boundary.kind === 'head-dependent flux') includeAll(boundary.head)
     if (boundary.kind === 'drain') includeAll(boundary.level)
+    if (boundary.kind === 'seepage face') for (const [, elevation] of boundary.line ?? []) include(elevation)
   }
   for (const leakage of model.leakage ?? []) includeAll(leakage.head)
   if (model.time.kind === 'transient') {
