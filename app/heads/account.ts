@@ -15,11 +15,13 @@ export function byGravity(warnings: readonly Warning[]): Warning[] {
   return [...warnings].sort((a, b) => order.indexOf(a.severity) - order.indexOf(b.severity))
 }
 
-const methodNames: Record<Result['method'], string> = {
+/** The methods in words, for a run's record and the package. */
+export const methodWords: Record<Result['method'], string> = {
   sor: 'red-black successive over-relaxation',
+  multigrid: 'conjugate gradients with multigrid',
 }
 
-/** "36 000 cells, red-black successive over-relaxation, 412 sweeps, residual 3·10⁻¹¹, water-balance error 2·10⁻⁹ %". */
+/** "36 000 cells, conjugate gradients with multigrid, 12 iterations, residual 3·10⁻¹¹, water-balance error 2·10⁻⁹ %". */
 export function recordInWords(result: Result): string {
   const { active, cells } = result.grid
   const error = result.balance.errorPercent[0]
@@ -27,8 +29,8 @@ export function recordInWords(result: Result): string {
     active === cells
       ? `${formatNumber(cells, 0)} cells`
       : `${formatNumber(active, 0)} of ${formatNumber(cells, 0)} cells`,
-    methodNames[result.method],
-    `${formatNumber(result.iterations, 0)} sweeps`,
+    methodWords[result.method],
+    `${formatNumber(result.iterations, 0)} ${result.method === 'sor' ? 'sweeps' : 'iterations'}`,
     `residual ${shortly(result.residual)}`,
     ...(error === undefined ? [] : [`water-balance error ${errorInWords(error)}`]),
   ].join(', ')

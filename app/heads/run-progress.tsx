@@ -9,13 +9,13 @@ const pollMilliseconds = 700
 const patiencePolls = 5
 
 interface Residual {
-  sweeps: number
+  iterations: number
   residual: number
 }
 
 export interface FollowedRun {
   status: RunStatus
-  /** Residuals seen so far, in the order of sweeps. */
+  /** Residuals seen so far, in the order of iterations. */
   residuals: readonly Residual[]
   /** True while the server does not answer. */
   silent: boolean
@@ -71,15 +71,15 @@ function useRun(projectId: number, initial: RunStatus): FollowedRun {
 }
 
 function withResidual(before: readonly Residual[], { progress }: RunStatus): readonly Residual[] {
-  const { sweeps, residual } = progress ?? {}
-  if (sweeps === undefined || typeof residual !== 'number' || residual <= 0) return before
+  const { iterations, residual } = progress ?? {}
+  if (iterations === undefined || typeof residual !== 'number' || residual <= 0) return before
   const last = before.at(-1)
-  if (last && sweeps <= last.sweeps) return before
-  return [...before, { sweeps, residual }]
+  if (last && iterations <= last.iterations) return before
+  return [...before, { iterations, residual }]
 }
 
 /**
- * How a run stands: percent, sweeps, the residual against sweeps, cancel; after a restart of the server the offer to
+ * How a run stands: percent, iterations, the residual against iterations, cancel; after a restart of the server the offer to
  * run it again. Give it a `key` of the run's id.
  */
 export function RunProgress({
@@ -160,10 +160,10 @@ export function RunProgress({
 
 function progressWords({ state, progress }: RunStatus, percent: number): string {
   if (state === 'queued') return 'It starts as soon as a thread is free; go on working meanwhile.'
-  if (!progress?.sweeps) return 'setting up the equations'
+  if (!progress?.iterations) return 'setting up the equations'
   const parts = [
     `${formatNumber(percent, 0)} %`,
-    `${formatNumber(progress.sweeps, 0)} sweeps`,
+    `${formatNumber(progress.iterations, 0)} iterations`,
     `residual ${formatNumber(progress.residual)}`,
   ]
   return [...parts, progress.phase ?? ''].filter(Boolean).join(' · ')
@@ -194,21 +194,22 @@ function stateColour(run: RunStatus): string {
 
 const chart = { width: 240, height: 84, left: 34, right: 6, top: 6, bottom: 18 }
 
-/** Residual against sweeps, the residual on a logarithmic scale. */
+/** Residual against iterations, the residual on a logarithmic scale. */
 function ResidualChart({ residuals, tolerance }: { residuals: readonly Residual[]; tolerance?: number }) {
   if (residuals.length < 2) return <div className="hidden sm:block" />
   const values = residuals.map((one) => Math.log10(one.residual))
   const goal = tolerance ? Math.log10(tolerance) : Math.min(...values)
   const high = Math.ceil(Math.max(...values, goal + 1))
   const low = Math.floor(Math.min(...values, goal))
-  const most = residuals.at(-1)?.sweeps ?? 1
-  const x = (sweeps: number) => chart.left + (sweeps / most) * (chart.width - chart.left - chart.right)
+  const most = residuals.at(-1)?.iterations ?? 1
+  const x = (iterations: number) =>
+    chart.left + (iterations / most) * (chart.width - chart.left - chart.right)
   const y = (log: number) =>
     chart.top + ((high - log) / (high - low)) * (chart.height - chart.top - chart.bottom)
   const path = residuals
     .map(
       (one, i) =>
-        `${i === 0 ? 'M' : 'L'}${x(one.sweeps).toFixed(1)} ${y(Math.log10(one.residual)).toFixed(1)}`,
+        `${i === 0 ? 'M' : 'L'}${x(one.iterations).toFixed(1)} ${y(Math.log10(one.residual)).toFixed(1)}`,
     )
     .join('')
   const bottom = chart.height - chart.bottom
@@ -217,7 +218,7 @@ function ResidualChart({ residuals, tolerance }: { residuals: readonly Residual[
       viewBox={`0 0 ${chart.width} ${chart.height}`}
       className="w-full max-w-60 text-flint-2"
       role="img"
-      aria-label={`Residual against sweeps: ${formatNumber(residuals.at(-1)?.residual)} after ${formatNumber(most, 0)} sweeps`}
+      aria-label={`Residual against iterations: ${formatNumber(residuals.at(-1)?.residual)} after ${formatNumber(most, 0)} iterations`}
     >
       <path
         d={`M${chart.left} ${chart.top}V${bottom}H${chart.width - chart.right}`}
@@ -245,7 +246,7 @@ function ResidualChart({ residuals, tolerance }: { residuals: readonly Residual[
           residual
         </text>
         <text x={chart.width - chart.right} y={chart.height - 5} textAnchor="end">
-          {formatNumber(most, 0)} sweeps
+          {formatNumber(most, 0)} iterations
         </text>
       </g>
     </svg>

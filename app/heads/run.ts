@@ -7,7 +7,7 @@ export interface SolveProgress {
   /** 0 to 100. */
   percent?: number
   /** Sweeps over the grid so far. */
-  sweeps?: number
+  iterations?: number
   /** True residual relative to the right-hand side. */
   residual?: number | null
 }

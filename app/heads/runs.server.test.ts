@@ -274,7 +274,7 @@ describe('A long run', () => {
     expect(await listRuns(fresh.database, project)).toHaveLength(1)
 
     let seen = await runStatus(fresh.database, project.id, first.runId)
-    while (!seen?.progress?.sweeps) {
+    while (!seen?.progress?.iterations) {
       await new Promise((resolve) => setTimeout(resolve, 100))
       seen = await runStatus(fresh.database, project.id, first.runId)
     }

@@ -6,6 +6,7 @@ import { mostBalanceError } from '~/heads/account'
 import type { HeadField } from '~/heads/field'
 import { levelUnit } from '~/projects/project'
 import { decodeHeads } from '~/solver/heads-buffer'
+import type { Result } from '~/solver/result'
 import {
   convert,
   type Dimension,
@@ -445,9 +446,9 @@ function casesSection(content: GatheredContent): Content[] {
           `${run.number}, by ${run.by}, ${localTime(content, run.startedAt)} to ${localTime(content, run.endedAt)}`,
         ],
         ['Engine', `Lavant engine ${result.engine}`],
-        ['Method', methodWords(result.method)],
+        ['Method', methodInWords(result.method)],
         ['Outcome', result.converged ? 'converged' : 'DID NOT CONVERGE: not to be used'],
-        ['Sweeps', formatNumber(result.iterations, 0)],
+        [result.method === 'sor' ? 'Sweeps' : 'Iterations', formatNumber(result.iterations, 0)],
         ['Residual', `${formatNumber(result.residual)} of the right-hand side`],
         ['Model file (SHA-256)', run.inputSha256],
         ['Head field (SHA-256)', run.headsSha256],
@@ -467,8 +468,10 @@ function casesSection(content: GatheredContent): Content[] {
   )
 }
 
-function methodWords(method: string): string {
-  return method === 'sor' ? 'successive over-relaxation, red-black order (the method of record)' : method
+function methodInWords(method: Result['method']): string {
+  return method === 'sor'
+    ? 'successive over-relaxation, red-black order (the method of record)'
+    : 'conjugate gradients preconditioned by multigrid; the method of record, successive over-relaxation, agrees with it'
 }
 
 // ---- 5 Heads --------------------------------------------------------------------------------------------------

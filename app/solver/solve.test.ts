@@ -772,10 +772,9 @@ describe('hostile models', () => {
     [
       'transient flow',
       { time: { kind: 'transient', initialHead: 1, stages: [{ duration: 1 }] } },
-      'time.kind',
-      /not computed/,
+      'materials[0].specificStorage',
+      /needs a specific storage/,
     ],
-    ['a vertical section', { kind: 'section', flow: 'saturated' }, 'kind', /not computed/],
     [
       'a seepage face',
       {
@@ -791,20 +790,13 @@ describe('hostile models', () => {
         ],
       },
       'boundaries[0].kind',
-      /not computed/,
+      /belongs to a vertical section/,
     ],
-    ['multigrid', { solver: { method: 'multigrid' } }, 'solver.method', /not computed/],
     ['verification', { want: { verify: true } }, 'want.verify', /not computed/],
     [
       'flow lines',
       { want: { flowLines: [{ from: [1, 1], direction: 'back' }] } },
       'want.flowLines',
-      /not computed/,
-    ],
-    [
-      'refinement',
-      { grid: { cellSize: 5, refine: [{ x: 1, y: 1, cellSize: 1 }] } },
-      'grid.refine',
       /not computed/,
     ],
     ['values by stage', { recharge: [{ name: 'R', rate: [1, 2] }] }, 'recharge[0].rate', /stage/],

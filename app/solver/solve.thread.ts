@@ -14,7 +14,7 @@ export interface SolveRequest {
 
 /** What the thread posts: progress at most five times a second, then one of the others, once. */
 export type SolveMessage =
-  | { kind: 'progress'; sweeps: number; residual: number; percent: number; phase: string }
+  | { kind: 'progress'; iterations: number; residual: number; percent: number; phase: string }
   | { kind: 'done'; result: Result; buffer: ArrayBuffer }
   | { kind: 'refused'; path: string; message: string }
   | { kind: 'cancelled' }

@@ -1,0 +1,219 @@
+import type { Discretised } from './discretise'
+import {
+  emptyMatrix,
+  evaluate,
+  type FlowModel,
+  type FlowState,
+  headAfter,
+  type Matrix,
+  normOfFree,
+  type StorageTerm,
+} from './flow'
+import type { LinearStep } from './linear-step'
+
+export interface Progress {
+  /** Sweeps of relaxation or cycles of multigrid so far. */
+  iterations: number
+  residual: number
+  percent: number
+  phase: string
+}
+
+export interface Watch {
+  onProgress?: (progress: Progress) => void
+  isCancelled?: () => boolean
+}
+
+/** The balance of every cell of one model on its way to being met, and the memory for it. */
+export interface Balancing {
+  d: Discretised
+  flow: FlowModel
+  step: LinearStep
+  matrix: Matrix
+  state: FlowState
+  trial: FlowState
+  /** Above the reference; what is solved for. */
+  heads: Float64Array
+  trialHeads: Float64Array
+  /** Flow of each well into the ground. */
+  rates: number[]
+  /** Storage over the step in time; null: steady. */
+  storage: StorageTerm | null
+  tolerance: number
+  /** What the residual is relative to: volume/time. */
+  rightHandSide: number
+  iterations: number
+  mostIterations: number
+  history: { iterations: number; residual: number }[]
+  first: number
+  cancelled: boolean
+  /** Stopped where rounding lets the residual fall no further. */
+  atRoundingFloor: boolean
+  headError: number
+  residual: number
+  watch: Watch
+  phase: string
+}
+
+const mostSteps = 60
+
+/** A fresh balance with the given heads to start from, held cells set to their heads. */
+export function balancingOf(
+  flow: FlowModel,
+  step: LinearStep,
+  heads: Float64Array,
+  tolerance: number,
+  mostIterations: number,
+  watch: Watch,
+): Balancing {
+  const { d } = flow
+  const count = d.active.length
+  const emptyState = (): FlowState => ({
+    imbalance: new Float64Array(count),
+    forcing: new Float64Array(count),
+  })
+  for (let cell = 0; cell < count; cell++) {
+    if ((d.fixedBy[cell] as number) >= 0) heads[cell] = d.fixedHead[cell] as number
+  }
+  return {
+    d,
+    flow,
+    step,
+    matrix: emptyMatrix(flow),
+    state: emptyState(),
+    trial: emptyState(),
+    heads,
+    trialHeads: new Float64Array(count),
+    rates: d.wells.map((well) => well.requested),
+    storage: null,
+    tolerance,
+    rightHandSide: 0,
+    iterations: 0,
+    mostIterations,
+    history: [],
+    first: 0,
+    cancelled: false,
+    atRoundingFloor: false,
+    headError: 0,
+    residual: 0,
+    watch,
+    phase: 'heads',
+  }
+}
+
+/**
+ * Newton's steps on the balance of every cell, each solved by the method at hand, until the true residual of the whole
+ * system is within the tolerance: relative to what does not balance at the start in linear flow, to all that enters
+ * and leaves cells otherwise. Linear models need one step; a flat unconfined base is linear in the unknown that is
+ * used and needs few. False when it did not get there. A residual that rounding keeps above the tolerance counts as
+ * there if the estimated head error is below 1e-6 of the range of heads.
+ */
+export function balanceCells(run: Balancing): boolean {
+  const { d, flow, state, step } = run
+  let before = Number.POSITIVE_INFINITY
+  let idleSteps = 0
+  for (let newton = 0; newton < mostSteps; newton++) {
+    const renew = step.stale || !flow.linear
+    if (renew) step.stale = true
+    evaluate(flow, run.heads, run.rates, state, renew ? run.matrix : null, run.storage)
+    const norm = normOfFree(d, state.imbalance)
+    if (!flow.linear) run.rightHandSide = normOfFree(d, state.forcing)
+    else if (run.rightHandSide === 0) run.rightHandSide = Math.max(norm, normOfFree(d, state.forcing))
+    run.residual = run.rightHandSide > 0 ? norm / run.rightHandSide : 0
+    if (newton === 0 && run.first === 0) run.first = run.residual
+    if (norm === 0 || (newton > 0 && run.residual <= run.tolerance)) {
+      note(run, run.residual)
+      return true
+    }
+    // Below the tolerance's reach a step no longer helps: what is left is rounding.
+    idleSteps = run.residual > 0.5 * before ? idleSteps + 1 : 0
+    if (idleSteps >= (flow.linear ? 2 : 8)) {
+      run.atRoundingFloor = run.residual < 1e-6
+      if (step.method === 'sor') run.headError = largestChange(run) / step.lambda
+      return run.atRoundingFloor && run.headError <= 1e-6 * headSpread(run)
+    }
+    before = Math.min(before, run.residual)
+    const full = 0.3 * run.tolerance * run.rightHandSide
+    clearHeld(d, state.imbalance)
+    const start = run.iterations
+    const outcome = step.solve(run.matrix, state.imbalance, {
+      target: flow.linear ? full : Math.max(full, 1e-5 * norm),
+      headTolerance: flow.linear ? 1e-8 : 1e-4,
+      mostIterations: run.mostIterations - start,
+      watch: (iterations, residual) => {
+        run.iterations = start + iterations
+        note(run, residual / run.rightHandSide)
+        run.cancelled = run.watch.isCancelled?.() ?? false
+        return run.cancelled
+      },
+    })
+    run.iterations = start + outcome.iterations
+    run.headError = outcome.headError
+    takeStep(run, norm)
+    if (outcome.ended === 'cancelled' || run.iterations >= run.mostIterations) break
+  }
+  evaluate(flow, run.heads, run.rates, state, null, run.storage)
+  run.residual = run.rightHandSide > 0 ? normOfFree(d, state.imbalance) / run.rightHandSide : 0
+  return !run.cancelled && run.residual <= run.tolerance
+}
+
+/** Largest change of head that would balance a cell by itself. */
+function largestChange(run: Balancing): number {
+  const { d, matrix, state } = run
+  let largest = 0
+  for (let c = 0; c < d.active.length; c++) {
+    if (d.active[c] !== 1 || (d.fixedBy[c] as number) >= 0) continue
+    const change =
+      (state.imbalance[c] as number) / ((matrix.diag[c] as number) * (matrix.weight[c] as number))
+    largest = Math.max(largest, Math.abs(change))
+  }
+  return largest
+}
+
+function clearHeld(d: Discretised, imbalance: Float64Array): void {
+  for (let cell = 0; cell < imbalance.length; cell++) {
+    if (d.active[cell] !== 1 || (d.fixedBy[cell] as number) >= 0) imbalance[cell] = 0
+  }
+}
+
+/** Applies the step, halved while it makes the balance worse (never in linear flow, where it cannot). */
+function takeStep(run: Balancing, norm: number): void {
+  const { d, flow, heads, trialHeads, step } = run
+  let share = 1
+  for (let attempt = 0; attempt < 8; attempt++) {
+    for (let cell = 0; cell < heads.length; cell++) {
+      const h = heads[cell] as number
+      const free = d.active[cell] === 1 && (d.fixedBy[cell] as number) < 0
+      trialHeads[cell] = free ? headAfter(flow, cell, h, share * (step.y[cell] as number)) : h
+    }
+    if (flow.linear) break
+    evaluate(flow, trialHeads, run.rates, run.trial, null, run.storage)
+    if (normOfFree(d, run.trial.imbalance) < (1 - 0.1 * share) * norm) break
+    share /= 2
+  }
+  heads.set(trialHeads)
+}
+
+function headSpread({ d, heads }: Balancing): number {
+  let lowest = Number.POSITIVE_INFINITY
+  let highest = Number.NEGATIVE_INFINITY
+  for (let cell = 0; cell < heads.length; cell++) {
+    if (d.active[cell] !== 1) continue
+    lowest = Math.min(lowest, heads[cell] as number)
+    highest = Math.max(highest, heads[cell] as number)
+  }
+  return highest - lowest
+}
+
+function note(run: Balancing, residual: number): void {
+  run.history.push({ iterations: run.iterations, residual })
+  if (!run.watch.onProgress) return
+  const whole = Math.log(Math.max(run.first, run.tolerance * 10) / run.tolerance)
+  const done = Math.log(Math.max(run.first, run.tolerance * 10) / Math.max(residual, run.tolerance))
+  run.watch.onProgress({
+    iterations: run.iterations,
+    residual,
+    percent: Math.round(100 * Math.min(1, Math.max(0, done / whole))),
+    phase: run.phase,
+  })
+}

@@ -1,0 +1,66 @@
+import type { Outcome } from './balancer'
+import type { Discretised } from './discretise'
+import type { Method } from './linear-step'
+import type { Moment } from './moment'
+
+/** The ground at the end of a reported step, with the flows over that step; in steady flow, the steady state. */
+export interface Report {
+  /** From time zero to the end of the step; 0 in steady flow. */
+  time: number
+  d: Discretised
+  outcome: Outcome
+  moment: Moment
+}
+
+/** Volumes over one stage. */
+export interface Volumes {
+  inflow: number
+  outflow: number
+  storage: number
+}
+
+/** What one run of a model computed and how well, steady or through its stages. */
+export interface RunRecord {
+  /** The ground before the first step; null in steady flow. */
+  initial: Outcome | null
+  /** At least one. */
+  reports: Report[]
+  /** By stage; empty in steady flow. */
+  volumes: Volumes[]
+  /** Steps in time. */
+  steps: number
+  converged: boolean
+  cancelled: boolean
+  atRoundingFloor: boolean
+  method: Method
+  kernels: string
+  iterations: number
+  /** The largest of all steps. */
+  residual: number
+  /** Estimate of the largest error of any head left by stopping iterations here; the sum over all steps. */
+  headError: number
+  unresolvedFlow: number
+  history: { iterations: number; residual: number }[]
+}
+
+/** The record of one outcome, without reports. */
+export function recordOf(outcome: Outcome): RunRecord {
+  const { converged, cancelled, atRoundingFloor, method, kernels } = outcome
+  const { iterations, residual, headError, unresolvedFlow, history } = outcome
+  return {
+    initial: null,
+    reports: [],
+    volumes: [],
+    steps: 0,
+    converged,
+    cancelled,
+    atRoundingFloor,
+    method,
+    kernels,
+    iterations,
+    residual,
+    headError,
+    unresolvedFlow,
+    history: [...history],
+  }
+}
