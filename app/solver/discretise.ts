@@ -1,8 +1,9 @@
 import { columnFaceCount, faceCount, faceOf } from './faces'
-import { type Grid, gridOf } from './grid'
+import { cellAt, type Grid, gridOf } from './grid'
 import { groundOnGrid, type Profile, shiftLevels, thicknessAt, transmissivityAt } from './ground'
 import {
   type Along,
+  type CrossedFace,
   checkLine,
   crossedFaces,
   lineLength,
@@ -17,6 +18,7 @@ import { checkedPolygon, signedArea, visitCellsInside, visitOverlaps } from './p
 import type { Warning } from './result'
 import { refuseWhatIsNotComputed } from './scope'
 import { knownLevels, modelOfStage } from './stages'
+import { closedShare, type Tip, type TipGround, tipsOf } from './wall-tips'
 import { type PlacedWell, placeWells } from './wells'
 
 /** Water exchanged with something outside the ground at a known level, in one cell or through one outer face of it. */
@@ -40,6 +42,8 @@ export interface Exchange {
   head: number
   /** Inflow stops growing when the level beside it falls below this. */
   floor: number
+  /** At a face: y of the middle of what the line covers. */
+  elevation?: number
 }
 
 /** Specified flow into a cell (volume/time) by one boundary, through `face` or, -1, into the cell itself. */
@@ -139,16 +143,20 @@ function placeWalls(d: Discretised): void {
   const walls = model.walls ?? []
   const by = new Int32Array(wallShare.length).fill(-1)
   const overlaps = new Set<string>()
+  const ground = tipGroundOf(d)
   for (const [index, wall] of walls.entries()) {
     const path = `walls[${index}]`
     checkLine(wall.line, `${path}.line`)
     const thickness = requirePositive(wall.thickness, `${path}.thickness`)
     const k = requireNotNegative(wall.k, `${path}.k`)
-    const inGround = lengthInGround(grid, active, wall.line)
-    const faces = crossedFaces(grid, wall.line, freeEnds(d, walls, index)).filter(({ face }) => {
+    const free = freeEnds(d, walls, index)
+    const tips = tipsOf(wall, free, ground)
+    const inGround = lengthInGround(grid, active, tips.line)
+    const faces = crossedFaces(grid, tips.line, free).filter(({ face }) => {
       const { low, high } = faceOf(grid, face)
       return low >= 0 && high >= 0 && active[low] === 1 && active[high] === 1
     })
+    closeTips(grid, ground, tips, faces)
     if (faces.length === 0) {
       warnings.push({
         code: 'wall-not-represented',
@@ -190,6 +198,38 @@ function placeWalls(d: Discretised): void {
       severity: 'note',
       text: 'In plan a wall acts over the whole saturated thickness. One that ends above the base needs a vertical section.',
     })
+  }
+}
+
+function tipGroundOf({ grid, active, profileOf, profiles }: Discretised): TipGround {
+  return {
+    grid,
+    isGround: (x, y) => {
+      const cell = cellAt(grid, x, y)
+      return cell >= 0 && active[cell] === 1
+    },
+    conductivity: (x, y) => {
+      const profile = profiles[profileOf[cellAt(grid, x, y)] as number] as Profile
+      const thick = (layer: number) => {
+        const thickness = (profile.top[layer] as number) - (profile.base[layer] as number)
+        return Number.isFinite(thickness) ? thickness : 1
+      }
+      const sum = (k: number[]) => k.reduce((total, value, layer) => total + value * thick(layer), 0)
+      return { x: sum(profile.kx), y: sum(profile.ky) }
+    },
+  }
+}
+
+/** Replaces the covered share of a wall's last faces by what must be closed there for the wall to be as long as it is. */
+function closeTips(grid: Grid, ground: TipGround, tips: Tip, faces: CrossedFace[]): void {
+  const last = tips.line.length - 2
+  for (const entry of faces) {
+    const { segment, t } = entry.at
+    if (!((tips.start && segment === 0 && t === 0) || (tips.end && segment === last && t === 1))) continue
+    const { axis, middle, length, lowHalf, highHalf } = faceOf(grid, entry.face)
+    const k = ground.conductivity(middle[0], middle[1])
+    const [across, along] = axis === 'x' ? [k.x, k.y] : [k.y, k.x]
+    entry.share = closedShare(entry.share, across, along, lowHalf + highHalf, length)
   }
 }
 
@@ -369,6 +409,10 @@ function placeBoundaryLine(
       axis,
       width: share * faceLength,
       half: cell === low ? lowHalf : highHalf,
+      elevation: valueAlong(
+        line.map(([, y]) => y),
+        at,
+      ),
     })
     makeRoom(d, atFace.get(face) ?? [], entry, faceLength, replaced)
     atFace.set(face, [...(atFace.get(face) ?? []), entry])
@@ -403,7 +447,7 @@ const exchangeKinds = {
   'seepage face': 'seepage',
 } as const
 
-type EntryPlace = Pick<Exchange, 'cell' | 'face' | 'axis' | 'width' | 'half'>
+type EntryPlace = Pick<Exchange, 'cell' | 'face' | 'axis' | 'width' | 'half' | 'elevation'>
 
 function entryAt(
   boundary: Boundary,
