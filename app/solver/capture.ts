@@ -1,12 +1,12 @@
 import {
   type Direction,
   endOf,
-  type FlowField,
   type RingStart,
   ringRound,
   type Track,
   thinned,
   track,
+  type Velocities,
 } from './flow-lines'
 import { cellAt } from './grid'
 import type { Position } from './model'
@@ -41,7 +41,7 @@ export interface CaptureOptions {
  * against the flow from the ring round the well, ever closer where they part. Null when cancelled.
  */
 export function captureOf(
-  field: FlowField,
+  field: Velocities,
   times: number[],
   { mostPlaces = 40_000, isCancelled }: CaptureOptions = {},
 ): Capture | null {
@@ -110,7 +110,7 @@ interface Spoke {
 
 /** The zone from which a well draws within `time` (null: ever). */
 function zoneWithin(
-  field: FlowField,
+  field: Velocities,
   well: PlacedWell,
   ring: (share: number) => RingStart,
   time: number | null,
@@ -160,7 +160,7 @@ function apart(a: Position, b: Position): number {
   return Math.hypot(a[0] - b[0], a[1] - b[1])
 }
 
-function alongBoth(field: FlowField, a: Spoke, b: Spoke, near: number): Position[] {
+function alongBoth(field: Velocities, a: Spoke, b: Spoke, near: number): Position[] {
   const down = placesOf(a.path)
   const up = placesOf(b.path)
   let from = 0

@@ -1,20 +1,21 @@
+import type { Outcome } from './balancer'
 import type { Discretised } from './discretise'
 import { columnFaceCount, faceCount, faceOf } from './faces'
 import { exchangeFlow, type FaceFlow, type FlowModel } from './flow'
+import type { FlowField } from './flow-field'
 import { cellAt, type Grid } from './grid'
 import { thicknessAt } from './ground'
 import type { FlowLineWish, Model, Position } from './model'
 import { ModelError, requireFinite } from './model-error'
 import { isInside } from './polygon'
 import type { FlowLineEnd, FlowLineResult } from './result'
-import { flowAtFace } from './rings'
 import type { PlacedWell } from './wells'
 
 /**
  * The velocity field of one moment, ready for tracking. In transient flow it is that of the moment as if it stood
  * still. Flows are volume/time, times in the model's unit.
  */
-export interface FlowField {
+export interface Velocities {
   flow: FlowModel
   grid: Grid
   /** By face, positive towards high x or y, outer faces included. */
@@ -99,17 +100,22 @@ function startsOf(d: Discretised, wish: FlowLineWish, path: string): { well: Pla
   return { cell }
 }
 
-/** The velocity field at these heads (above the reference) and well rates (into the ground). */
-export function flowFieldOf(flow: FlowModel, heads: Float64Array, rates: ArrayLike<number>): FlowField {
+/** The velocities of an outcome with these flows. */
+export function velocitiesOf(flows: FlowField, { flow, heads, rates, saturation }: Outcome): Velocities {
   const { d } = flow
   const { grid } = d
   const through = new Float64Array(faceCount(grid))
-  for (let face = 0; face < through.length; face++) through[face] = flowAtFace(flow, heads, face)
-  const field: FlowField = {
+  for (let face = 0; face < through.length; face++) through[face] = flows.atFace(face)
+  for (const [face, q] of flows.atOuterFaces) {
+    const { low } = faceOf(grid, face)
+    const towardsHigh = low < 0 || d.active[low] !== 1
+    through[face] = (through[face] as number) + (towardsHigh ? q : -q)
+  }
+  const field: Velocities = {
     flow,
     grid,
     through,
-    pore: poreWater(d, heads),
+    pore: poreWater(d, heads, saturation),
     heads,
     rates,
     exchangesAt: new Map(),
@@ -129,28 +135,19 @@ export function flowFieldOf(flow: FlowModel, heads: Float64Array, rates: ArrayLi
     field.nextInside[kind][index] = field.firstInside[kind][cell] as number
     field.firstInside[kind][cell] = index
   }
-  function intoGround(face: number, q: number): void {
-    const { low } = faceOf(grid, face)
-    const towardsHigh = low < 0 || d.active[low] !== 1
-    through[face] = (through[face] as number) + (towardsHigh ? q : -q)
-  }
-  const out: FaceFlow = { q: 0, byLow: 0, byHigh: 0 }
   d.exchanges.forEach((exchange, index) => {
     if (exchange.face < 0) {
       inside('exchanges', exchange.cell, index)
       return
     }
     listed(field.exchangesAt, exchange.face).push(index)
-    exchangeFlow(flow, exchange, heads[exchange.cell] as number, out)
-    intoGround(exchange.face, out.q)
   })
-  d.specifiedFlows.forEach(({ face, cell, rate }, index) => {
+  d.specifiedFlows.forEach(({ face, cell }, index) => {
     if (face < 0) {
       inside('flows', cell, index)
       return
     }
     listed(field.flowsAt, face).push(index)
-    intoGround(face, rate)
   })
   d.wells.forEach((well, index) => {
     for (const { cell } of well.shares) listed(field.wellsIn, cell).push(index)
@@ -188,11 +185,11 @@ const widestMargin = 3
  * on every side is treated as radial flow with an even drift, where nothing else acts in it and all its outline flows
  * to the well.
  */
-function markRadial(field: FlowField, index: number): void {
+function markRadial(field: Velocities, index: number): void {
   for (let margin = widestMargin; margin >= 1; margin--) if (markBlock(field, index, margin)) return
 }
 
-function markBlock(field: FlowField, index: number, margin: number): boolean {
+function markBlock(field: Velocities, index: number, margin: number): boolean {
   const { grid, through, pore, flow } = field
   const { d } = flow
   const { columns, xEdges, yEdges } = grid
@@ -246,7 +243,7 @@ function listed(map: Map<number, number[]>, key: number): number[] {
   return list
 }
 
-function poreWater(d: Discretised, heads: Float64Array): Float64Array {
+function poreWater(d: Discretised, heads: Float64Array, saturation: Float64Array | null): Float64Array {
   const pore = new Float64Array(heads.length)
   const porosities = d.model.materials.map((material) => material.porosity ?? 0)
   for (let cell = 0; cell < pore.length; cell++) {
@@ -261,7 +258,7 @@ function poreWater(d: Discretised, heads: Float64Array): Float64Array {
       const wet = Math.min(level, profile.top[layer] as number) - base
       if (wet > 0) sum += (porosities[profile.material[layer] as number] as number) * wet
     }
-    pore[cell] = sum
+    pore[cell] = sum * (saturation ? (saturation[cell] as number) : 1)
   }
   return pore
 }
@@ -285,7 +282,7 @@ export interface TrackOptions {
  * there; a well that lets water pass is listed and passed.
  */
 export function track(
-  field: FlowField,
+  field: Velocities,
   x: number,
   y: number,
   direction: Direction,
@@ -418,7 +415,7 @@ export function track(
  * flow is radial (ellipses of equal time, the area kept).
  */
 function radialTime(
-  field: FlowField,
+  field: Velocities,
   well: PlacedWell,
   rate: number,
   sign: number,
@@ -465,7 +462,7 @@ function between(value: number, low: number, high: number): number {
 }
 
 /** Does anything add water to the cell or take it, other than its faces and wells? */
-function hasInside(field: FlowField, cell: number): boolean {
+function hasInside(field: Velocities, cell: number): boolean {
   const { d } = field.flow
   return (
     (d.fixedBy[cell] as number) >= 0 ||
@@ -476,7 +473,7 @@ function hasInside(field: FlowField, cell: number): boolean {
 }
 
 /** The name of what ended a tracked line. */
-export function endOf(field: FlowField, found: Track, direction: Direction): FlowLineEnd {
+export function endOf(field: Velocities, found: Track, direction: Direction): FlowLineEnd {
   const { d } = field.flow
   const { model } = d
   switch (found.end) {
@@ -510,7 +507,7 @@ interface Acting {
   flows: number[]
 }
 
-function listOf(field: FlowField, where: 'face' | 'cell', at: number): Acting {
+function listOf(field: Velocities, where: 'face' | 'cell', at: number): Acting {
   if (where === 'face') {
     return { exchanges: field.exchangesAt.get(at) ?? [], flows: field.flowsAt.get(at) ?? [] }
   }
@@ -524,7 +521,7 @@ function listOf(field: FlowField, where: 'face' | 'cell', at: number): Acting {
 }
 
 /** Of all that acts what takes most water, or backwards gives most. */
-function strongest(field: FlowField, acting: Acting, direction: Direction): FlowLineEnd | null {
+function strongest(field: Velocities, acting: Acting, direction: Direction): FlowLineEnd | null {
   const { d } = field.flow
   const sign = direction === 'forward' ? -1 : 1
   let most = 0
@@ -566,7 +563,7 @@ export interface RingStart {
  * 0 at the lowest corner, anticlockwise to 1, so that equal steps carry equal flow. Null where nothing crosses it.
  */
 export function ringRound(
-  field: FlowField,
+  field: Velocities,
   well: PlacedWell,
   direction: Direction,
 ): ((share: number) => RingStart) | null {
@@ -633,7 +630,7 @@ const usualLines = 16
  * The flow lines the model asks for. Times count from the start, against the flow too. A wish for lines round a well
  * gives that many results, each carrying the same share of its water.
  */
-export function flowLineResults(field: FlowField): FlowLineResult[] {
+export function flowLineResults(field: Velocities): FlowLineResult[] {
   const { d } = field.flow
   return (d.model.want?.flowLines ?? []).flatMap((wish, index) => {
     const start = startsOf(d, wish, `want.flowLines[${index}]`)
@@ -654,7 +651,7 @@ export function flowLineResults(field: FlowField): FlowLineResult[] {
   })
 }
 
-function lineResult(field: FlowField, found: Track, direction: Direction, before: number): FlowLineResult {
+function lineResult(field: Velocities, found: Track, direction: Direction, before: number): FlowLineResult {
   const { d } = field.flow
   const { line, times } = thinned(field.grid, found.path)
   const end = endOf(field, found, direction)

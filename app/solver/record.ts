@@ -1,5 +1,6 @@
 import type { Outcome } from './balancer'
 import type { Discretised } from './discretise'
+import type { FlowField } from './flow-field'
 import type { Method } from './linear-step'
 import type { Moment } from './moment'
 
@@ -41,6 +42,8 @@ export interface RunRecord {
   headError: number
   unresolvedFlow: number
   history: { iterations: number; residual: number }[]
+  /** Every flow of the last report; null before there is one. */
+  lastField: (() => FlowField) | null
 }
 
 /** The record of one outcome, without reports. */
@@ -62,5 +65,6 @@ export function recordOf(outcome: Outcome): RunRecord {
     headError,
     unresolvedFlow,
     history: [...history],
+    lastField: null,
   }
 }

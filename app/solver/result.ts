@@ -5,6 +5,8 @@ export interface Warning {
   /** 'note': for information. 'check': look before using the result. 'serious': the result is not to be used as it is. */
   severity: 'note' | 'check' | 'serious'
   text: string
+  /** The result may be issued only once somebody has accepted this, with a reason. */
+  accept?: true
 }
 
 export interface PointResult {
@@ -103,6 +105,9 @@ export interface Result {
   history: { iterations: number; residual: number }[]
   /** Largest error left in any head by stopping here, as the convergence observed lets one estimate it; length. */
   headError: number
+  /** What `want` asked for. Of transient flow, flow lines and capture zones are those of the last reported moment. */
+  flowLines?: FlowLineResult[]
+  captureZones?: CaptureResult
 }
 
 /** What a flow line ended at. Against the flow that is where its water came from. */
@@ -118,7 +123,6 @@ export interface FlowLineResult {
   well?: string
   line: [x: number, y: number][]
   /** At each vertex, from the start, whatever the direction. */
-  /** End of each stage, or of each step, from time zero; empty in steady flow. */
   times: number[]
   /** The last of them. */
   time: number
@@ -141,4 +145,14 @@ export interface CaptureResult {
   wells: { name: string; zones: CaptureZone[] }[]
   /** The places looked at: one for `cells` x `cells` cells. */
   raster: { columns: number; rows: number; cells: number }
+}
+
+/** A formula that holds for the whole model, beside the results. */
+export interface FormulaComparison {
+  name: string
+  source: string
+  /** The most that the model's finite extent may change a head by. */
+  extentEffect: number
+  /** By named result, one value a time; difference = computed - formula. */
+  results: { name: string; formula: (number | null)[]; difference: (number | null)[] }[]
 }

@@ -39,7 +39,6 @@ export function refuseWhatIsNotComputed(model: Model): void {
   if (want?.sensitivities && want.sensitivities.length > 0)
     throw notYet('want.sensitivities', 'sensitivities')
   if (want?.responses) throw notYet('want.responses', 'response coefficients')
-  if (want?.flowLines && want.flowLines.length > 0) throw notYet('want.flowLines', 'flow lines')
 }
 
 function notYet(path: string, what: string): ModelError {

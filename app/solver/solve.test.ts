@@ -794,10 +794,10 @@ describe('hostile models', () => {
     ],
     ['verification', { want: { verify: true } }, 'want.verify', /not computed/],
     [
-      'flow lines',
+      'travel times without porosity',
       { want: { flowLines: [{ from: [1, 1], direction: 'back' }] } },
-      'want.flowLines',
-      /not computed/,
+      'materials[0].porosity',
+      /needed for travel times/,
     ],
     ['values by stage', { recharge: [{ name: 'R', rate: [1, 2] }] }, 'recharge[0].rate', /stage/],
   ])('%s is refused with its place', (_, changes, path, message) => {

@@ -10,6 +10,7 @@ import { type Report, type RunRecord, recordOf } from './record'
 import type { Result } from './result'
 import { checkLinesAndRings } from './rings'
 import { solveTransient } from './transient'
+import { addWanted, checkWanted, type Pictures } from './wanted'
 
 export type { Progress }
 
@@ -34,6 +35,8 @@ export interface Solution {
   /** Transient flow: the heads before the first step and at the end of every stage or reported step. Else empty. */
   fields: HeadField[]
   grid: Grid
+  /** Fields for pictures that `want` asked for. */
+  pictures: Pictures
   /** Stopped because `isCancelled` said so; the result is then as far as it came, and not converged. */
   cancelled: boolean
 }
@@ -55,12 +58,15 @@ export function solveModel(model: Model, options: SolveOptions = {}): Solution {
   const first = discretise(model)
   checkPoints(first)
   checkLinesAndRings(first)
+  checkWanted(first)
   const run = runByMethod(model, first, options)
   const last = run.reports[run.reports.length - 1] as Report
   const result = resultOf(model, run)
   if (options.input !== undefined) result.input = options.input
+  const pictures = run.cancelled ? {} : addWanted(model, run, result, options)
   return {
     result,
+    pictures,
     heads: headsOut(last.d, last.outcome),
     fields: fieldsOf(run),
     grid: last.d.grid,
@@ -82,8 +88,9 @@ function runOf(model: Model, d: Discretised, method: Method, options: SolverOpti
   if (model.time.kind === 'transient') return solveTransient(model, d, method, tolerance, options)
   const balancer = balancerOf(d, method, tolerance, options)
   const outcome = balancer.solve(null, null)
-  const moment = momentOf(balancer.field(outcome, null))
-  return { ...recordOf(outcome), reports: [{ time: 0, d, outcome, moment }] }
+  const field = balancer.field(outcome, null)
+  const reports = [{ time: 0, d, outcome, moment: momentOf(field) }]
+  return { ...recordOf(outcome), reports, lastField: () => field }
 }
 
 function fieldsOf(run: RunRecord): HeadField[] {

@@ -90,6 +90,7 @@ export function solveTransient(
       earlier = [{ heads: state.heads, dt }, ...earlier].slice(0, 2)
       state = taken.second
       last = { time: before + done, d: balancer.d, outcome: state, moment }
+      all.lastField = () => balancer.field(taken.second, taken.secondTerm)
       if (time.report === 'steps' && done < stage.duration) all.reports.push(last)
       if (all.steps >= mostSteps) all.converged = false
     }
@@ -98,8 +99,9 @@ export function solveTransient(
     before += stage.duration
   }
   if (all.reports.length === 0) {
-    const moment = momentOf(balancerOf(firstStage, method, tolerance, watch).field(state, null))
-    all.reports.push({ time: 0, d: firstStage, outcome: state, moment })
+    const field = balancerOf(firstStage, method, tolerance, watch).field(state, null)
+    all.reports.push({ time: 0, d: firstStage, outcome: state, moment: momentOf(field) })
+    all.lastField = () => field
   }
   all.history = thinned(all.history)
   return all
@@ -118,6 +120,7 @@ function note(all: RunRecord, taken: Taken): void {
 
 interface Taken {
   second: Outcome
+  secondTerm: StorageTerm
   moment: Moment
   iterations: number
   residual: number
@@ -144,6 +147,7 @@ function oneStep(balancer: Balancer, state: Outcome, dt: number): Taken {
   )
   return {
     second,
+    secondTerm,
     moment,
     iterations: first.iterations + (second === first ? 0 : second.iterations),
     residual: Math.max(first.residual, second.residual),

@@ -1,0 +1,39 @@
+import type { Model } from '../model'
+import type { FormulaComparison, Result } from '../result'
+import { circleFormula } from './circle'
+import { endlessFormula } from './endless'
+import type { Formula } from './formula'
+import { rectangleFormula } from './rectangle'
+
+/** The formula that holds for a model as it stands, or null. Strict: nothing of the model may be left out of it. */
+export function formulaOf(model: Model): Formula | null {
+  return rectangleFormula(model) ?? circleFormula(model) ?? endlessFormula(model)
+}
+
+/** Heads at points and well faces beside those of the formula that holds for the model; null where none does. */
+export function comparisonOf(model: Model, result: Result): FormulaComparison | null {
+  const formula = formulaOf(model)
+  if (!formula) return null
+  const times = result.times.length === 0 ? [0] : result.times
+  const results: FormulaComparison['results'] = []
+  function compare(name: string, heads: (number | null)[], x: number, y: number): void {
+    const values = times.map((time) => (formula as Formula).headAt(x, y, time))
+    if (values.every((value) => value === null)) return
+    const differences = values.map((value, k) => {
+      const head = heads[k] ?? null
+      return value === null || head === null ? null : head - value
+    })
+    results.push({ name, formula: values, difference: differences })
+  }
+  for (const [index, { name, head }] of result.points.entries()) {
+    const point = model.points?.[index]
+    if (point) compare(`points/${name}`, head, point.x, point.y)
+  }
+  for (const [index, { name, wellHead, achieved, requested }] of result.wells.entries()) {
+    const well = model.wells?.[index]
+    if (!well?.radius || achieved.some((rate, k) => rate < 0.999999 * (requested[k] as number))) continue
+    compare(`wells/${name}`, wellHead, well.x + well.radius, well.y)
+  }
+  const { name, source, extentEffect } = formula
+  return { name, source, extentEffect, results }
+}
