@@ -1,3 +1,4 @@
+import { addCornerFlows, cornerFlowAtFace } from './corner-flow'
 import type { Discretised, Exchange } from './discretise'
 import { columnFaceCount, faceOf } from './faces'
 import type { Profile } from './ground'
@@ -20,7 +21,17 @@ export interface Matrix {
   weight: Float64Array
   /** The part of the diagonal that ties a cell to what is held or known, without its links to free cells. */
   own: Float64Array
+  /** Links to the four cells at the corners, where directions of conductivity are oblique; may be negative. */
+  corners: CornerMatrix | null
   symmetric: boolean
+}
+
+/** Links of the matrix to corner cells; where symmetric, opposite ones look into the same memory. */
+export interface CornerMatrix {
+  southWest: Float64Array
+  southEast: Float64Array
+  northWest: Float64Array
+  northEast: Float64Array
 }
 
 /**
@@ -113,12 +124,20 @@ export function emptyMatrix(model: FlowModel): Matrix {
       Float64Array,
       Float64Array,
     ]
-    return { diag, west, east, south, north, weight, own, symmetric: false }
+    const [southWest, southEast, northWest, northEast] = [0, 1, 2, 3].map(() => new Float64Array(n)) as [
+      Float64Array,
+      Float64Array,
+      Float64Array,
+      Float64Array,
+    ]
+    const corners = model.d.corners ? { southWest, southEast, northWest, northEast } : null
+    return { diag, west, east, south, north, weight, own, corners, symmetric: false }
   }
   const alongX = new Float64Array(n + 1)
   const alongY = new Float64Array(n + columns)
   return {
     diag,
+    corners: model.d.corners ? sharedCorners(n, columns) : null,
     west: alongX.subarray(0, n),
     east: alongX.subarray(1),
     south: alongY.subarray(0, n),
@@ -126,6 +145,17 @@ export function emptyMatrix(model: FlowModel): Matrix {
     weight,
     own,
     symmetric: true,
+  }
+}
+
+function sharedCorners(n: number, columns: number): CornerMatrix {
+  const rising = new Float64Array(n + columns + 1)
+  const falling = new Float64Array(n + columns - 1)
+  return {
+    southWest: rising.subarray(0, n),
+    northEast: rising.subarray(columns + 1),
+    southEast: falling.subarray(0, n),
+    northWest: falling.subarray(columns - 1),
   }
 }
 
@@ -244,7 +274,7 @@ export function flowAtFace(flow: FlowModel, heads: Float64Array, face: number): 
   if (low < 0 || high < 0 || d.active[low] !== 1 || d.active[high] !== 1) return 0
   const out: FaceFlow = { q: 0, byLow: 0, byHigh: 0 }
   flowThrough(flow, heads, face, axis, low, high, lowHalf, highHalf, length, out)
-  return out.q
+  return out.q + (d.corners ? cornerFlowAtFace(flow, d.corners, heads, face) : 0)
 }
 
 /** Flow of one exchange into its cell at head `h`; `byHigh` = -dq/dh >= 0. */
@@ -336,11 +366,9 @@ export function evaluate(
   storage: StorageTerm | null = null,
 ): void {
   const { d } = model
-  const { columns, rows, xEdges, yEdges } = d.grid
   const { active, fixedBy } = d
   const { imbalance, forcing } = state
-  const n = columns * rows
-  const split = columnFaceCount(d.grid)
+  const n = active.length
   imbalance.fill(0)
   forcing.fill(0)
   if (matrix) {
@@ -350,6 +378,7 @@ export function evaluate(
     matrix.east.fill(0)
     matrix.south.fill(0)
     matrix.north.fill(0)
+    if (matrix.corners) for (const link of Object.values(matrix.corners) as Float64Array[]) link.fill(0)
     if (d.unconfined) {
       for (let cell = 0; cell < n; cell++) {
         const profile = d.profileOf[cell] as number
@@ -362,6 +391,95 @@ export function evaluate(
       }
     }
   }
+  if (d.unconfined) unconfinedFaces(model, heads, state, matrix)
+  else confinedFaces(d, heads, state, matrix)
+  if (d.corners) addCornerFlows(model, d.corners, heads, state, matrix)
+  for (const exchange of d.exchanges) {
+    const { cell } = exchange
+    exchangeFlow(model, exchange, heads[cell] as number, scratch)
+    imbalance[cell] = (imbalance[cell] as number) + scratch.q
+    forcing[cell] = (forcing[cell] as number) + Math.abs(scratch.q)
+    if (matrix) matrix.own[cell] = (matrix.own[cell] as number) + scratch.byHigh
+    if (matrix) matrix.diag[cell] = (matrix.diag[cell] as number) + scratch.byHigh
+  }
+  for (let cell = 0; cell < n; cell++) addSource(cell, d.recharge[cell] as number)
+  for (const flow of d.specifiedFlows) addSource(flow.cell, flow.rate)
+  for (let w = 0; w < d.wells.length; w++) {
+    for (const { cell, weight } of (d.wells[w] as (typeof d.wells)[number]).shares) {
+      addSource(cell, weight * (rates[w] as number))
+    }
+  }
+  function addSource(cell: number, rate: number): void {
+    if (active[cell] !== 1) return
+    imbalance[cell] = (imbalance[cell] as number) + rate
+    forcing[cell] = (forcing[cell] as number) + Math.abs(rate)
+  }
+  if (storage) addStorage(model, heads, state, matrix, storage)
+  if (!matrix) return
+  for (let cell = 0; cell < n; cell++) {
+    if (active[cell] !== 1 || (fixedBy[cell] as number) >= 0) {
+      matrix.diag[cell] = 1
+      matrix.own[cell] = 0
+      continue
+    }
+    matrix.diag[cell] = (matrix.diag[cell] as number) / (matrix.weight[cell] as number)
+    matrix.own[cell] = (matrix.own[cell] as number) / (matrix.weight[cell] as number)
+  }
+}
+
+/** Flows through the faces between cells at constant conductances, into the balances and the matrix. */
+function confinedFaces(
+  d: Discretised,
+  heads: Float64Array,
+  { imbalance, forcing }: FlowState,
+  matrix: Matrix | null,
+): void {
+  const { conductance, fixedBy } = d
+  const { columns, rows } = d.grid
+  const split = columnFaceCount(d.grid)
+  for (let j = 0; j < rows; j++) {
+    for (let i = 0; i < columns; i++) {
+      const cell = j * columns + i
+      if (i < columns - 1)
+        link(cell, cell + 1, conductance[j * (columns + 1) + i + 1] as number, matrix?.east)
+      if (j < rows - 1) {
+        const face = split + cell + columns
+        link(cell, cell + columns, conductance[face] as number, matrix?.north)
+      }
+    }
+  }
+  /** In confined flow a link of the matrix is one number for both its cells. */
+  function link(low: number, high: number, c: number, links: Float64Array | undefined): void {
+    if (c === 0) return
+    const q = c * ((heads[low] as number) - (heads[high] as number))
+    imbalance[low] = (imbalance[low] as number) - q
+    imbalance[high] = (imbalance[high] as number) + q
+    const lowFixed = (fixedBy[low] as number) >= 0
+    const highFixed = (fixedBy[high] as number) >= 0
+    if (highFixed) forcing[low] = (forcing[low] as number) + Math.abs(q)
+    if (lowFixed) forcing[high] = (forcing[high] as number) + Math.abs(q)
+    if (!matrix || !links) return
+    const { diag, own } = matrix
+    diag[low] = (diag[low] as number) + c
+    diag[high] = (diag[high] as number) + c
+    if (highFixed) own[low] = (own[low] as number) + c
+    if (lowFixed) own[high] = (own[high] as number) + c
+    if (!lowFixed && !highFixed) links[low] = c
+  }
+}
+
+/** Flows through the faces between cells of unconfined ground, into the balances and the matrix. */
+function unconfinedFaces(
+  model: FlowModel,
+  heads: Float64Array,
+  state: FlowState,
+  matrix: Matrix | null,
+): void {
+  const { d } = model
+  const { columns, rows, xEdges, yEdges } = d.grid
+  const { active, fixedBy } = d
+  const { imbalance, forcing } = state
+  const split = columnFaceCount(d.grid)
   for (let j = 0; j < rows; j++) {
     const height = (yEdges[j + 1] as number) - (yEdges[j] as number)
     for (let i = 0; i < columns; i++) {
@@ -414,37 +532,6 @@ export function evaluate(
     if (lowFixed || highFixed) return
     lowToHigh[low] = byHigh / (weight[high] as number)
     highToLow[high] = byLow / (weight[low] as number)
-  }
-  for (const exchange of d.exchanges) {
-    const { cell } = exchange
-    exchangeFlow(model, exchange, heads[cell] as number, scratch)
-    imbalance[cell] = (imbalance[cell] as number) + scratch.q
-    forcing[cell] = (forcing[cell] as number) + Math.abs(scratch.q)
-    if (matrix) matrix.own[cell] = (matrix.own[cell] as number) + scratch.byHigh
-    if (matrix) matrix.diag[cell] = (matrix.diag[cell] as number) + scratch.byHigh
-  }
-  for (let cell = 0; cell < n; cell++) addSource(cell, d.recharge[cell] as number)
-  for (const flow of d.specifiedFlows) addSource(flow.cell, flow.rate)
-  for (let w = 0; w < d.wells.length; w++) {
-    for (const { cell, weight } of (d.wells[w] as (typeof d.wells)[number]).shares) {
-      addSource(cell, weight * (rates[w] as number))
-    }
-  }
-  function addSource(cell: number, rate: number): void {
-    if (active[cell] !== 1) return
-    imbalance[cell] = (imbalance[cell] as number) + rate
-    forcing[cell] = (forcing[cell] as number) + Math.abs(rate)
-  }
-  if (storage) addStorage(model, heads, state, matrix, storage)
-  if (!matrix) return
-  for (let cell = 0; cell < n; cell++) {
-    if (active[cell] !== 1 || (fixedBy[cell] as number) >= 0) {
-      matrix.diag[cell] = 1
-      matrix.own[cell] = 0
-      continue
-    }
-    matrix.diag[cell] = (matrix.diag[cell] as number) / (matrix.weight[cell] as number)
-    matrix.own[cell] = (matrix.own[cell] as number) / (matrix.weight[cell] as number)
   }
 }
 
