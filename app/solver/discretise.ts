@@ -1,3 +1,4 @@
+import { type Corners, cornersOf } from './corners'
 import { columnFaceCount, faceCount, faceOf } from './faces'
 import { cellAt, type Grid, gridOf } from './grid'
 import { groundOnGrid, type Profile, shiftLevels, thicknessAt, transmissivityAt } from './ground'
@@ -79,6 +80,8 @@ export interface Discretised {
   wallResistance: Float64Array
   /** Confined: conductance of each face between two active cells, 0 elsewhere. Unconfined: empty. */
   conductance: Float64Array
+  /** What directions of conductivity oblique to the grid add; null: none are. */
+  corners: Corners | null
   exchanges: Exchange[]
   specifiedFlows: SpecifiedFlow[]
   /** Recharge into each cell, and into the whole model by entry. */
@@ -114,6 +117,7 @@ export function discretise(file: Model, stage = 0, levels = knownLevels(file)): 
     wallShare: new Float64Array(faceCount(grid)),
     wallResistance: new Float64Array(faceCount(grid)),
     conductance: new Float64Array(0),
+    corners: null,
     exchanges: [],
     specifiedFlows: [],
     recharge: new Float64Array(count),
@@ -130,6 +134,7 @@ export function discretise(file: Model, stage = 0, levels = knownLevels(file)): 
   // Storage ties the heads of every cell to those before.
   if (model.time.kind === 'steady') refuseWithoutReference(discretised)
   if (!discretised.unconfined) discretised.conductance = confinedConductances(discretised)
+  discretised.corners = cornersOf(discretised)
   return discretised
 }
 
@@ -192,7 +197,7 @@ function placeWalls(d: Discretised): void {
       text: `The walls ${pair} share cell faces; the more resistant one counts there.`,
     })
   }
-  if (walls.length > 0 && model.kind === 'plan') {
+  if (model.kind === 'plan' && walls.some(({ toe }) => toe === undefined)) {
     warnings.push({
       code: 'wall-full-depth',
       severity: 'note',

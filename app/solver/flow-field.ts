@@ -1,3 +1,4 @@
+import { cornerFlowOfExchanges } from './corner-flow'
 import type { Discretised } from './discretise'
 import {
   evaluate,
@@ -86,8 +87,10 @@ export function planField(
     }
   }
   const out: FaceFlow = { q: 0, byLow: 0, byHigh: 0 }
-  for (const exchange of d.exchanges) {
+  const oblique = d.corners ? cornerFlowOfExchanges(flow, d.corners, heads) : null
+  for (const [index, exchange] of d.exchanges.entries()) {
     exchangeFlow(flow, exchange, heads[exchange.cell] as number, out)
+    if (oblique) out.q += oblique[index] as number
     const tallies = exchange.owner === 'boundaries' ? field.byBoundary : field.byLeakage
     addTo(tallies[exchange.index] as Tally, out.q)
     into(field[exchange.owner], exchange.cell, out.q)

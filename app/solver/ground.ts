@@ -14,6 +14,8 @@ export interface Profile {
   top: number[]
   kx: number[]
   ky: number[]
+  /** The tensor's cross term; 0 where the principal directions run along the axes. */
+  kxy: number[]
   /** Index into the model's materials, a layer. */
   material: number[]
 }
@@ -28,12 +30,15 @@ export interface GroundOnGrid {
 
 /** Which profile lies under each cell. A later entry replaces earlier ones; no entry leaves the cell outside. */
 export function groundOnGrid(model: Model, grid: Grid): GroundOnGrid {
-  const conductivities = new Map<string, { kx: number; ky: number; index: number }>()
+  const conductivities = new Map<string, AxisConductivity & { index: number }>()
   model.materials.forEach((material, index) => {
     if (conductivities.has(material.name)) {
       throw new ModelError(`materials[${index}].name`, `the name "${material.name}" is used twice`)
     }
-    conductivities.set(material.name, { ...conductivityOf(material, `materials[${index}]`), index })
+    conductivities.set(material.name, {
+      ...conductivityOf(material, `materials[${index}]`, model.flow),
+      index,
+    })
   })
   const count = grid.columns * grid.rows
   const active = new Uint8Array(count)
@@ -62,17 +67,43 @@ export function groundOnGrid(model: Model, grid: Grid): GroundOnGrid {
   return { active, profileOf, profiles }
 }
 
-function conductivityOf(material: Material, path: string): { kx: number; ky: number } {
-  const kx = requirePositive(material.kx, `${path}.kx`)
-  const ky = requirePositive(material.ky, `${path}.ky`)
-  const angle = requireFinite(material.angle ?? 0, `${path}.angle`)
-  if (kx === ky || angle % 180 === 0) return { kx, ky }
-  if (angle % 90 === 0) return { kx: ky, ky: kx }
-  throw new ModelError(
-    `${path}.angle`,
-    `principal directions at ${angle} degrees to the grid are not computed by this version; 0 and 90 are`,
-  )
+/** Conductivity as the grid's axes see it. */
+interface AxisConductivity {
+  kx: number
+  ky: number
+  kxy: number
 }
+
+function conductivityOf(material: Material, path: string, flow: Model['flow']): AxisConductivity {
+  const k1 = requirePositive(material.kx, `${path}.kx`)
+  const k2 = requirePositive(material.ky, `${path}.ky`)
+  const angle = requireFinite(material.angle ?? 0, `${path}.angle`)
+  if (k1 === k2 || angle % 180 === 0) return { kx: k1, ky: k2, kxy: 0 }
+  if (angle % 90 === 0) return { kx: k2, ky: k1, kxy: 0 }
+  if (flow === 'free surface') {
+    throw new ModelError(
+      `${path}.angle`,
+      `with a free surface, principal directions at ${angle} degrees to the grid are not computed; 0 and 90 are`,
+    )
+  }
+  if (Math.max(k1, k2) > mostAnisotropy * Math.min(k1, k2)) {
+    throw new ModelError(
+      `${path}.angle`,
+      `conductivities at ${angle} degrees to the grid may differ by a factor of ${mostAnisotropy} at most`,
+    )
+  }
+  const radians = (angle * Math.PI) / 180
+  const cosine = Math.cos(radians)
+  const sine = Math.sin(radians)
+  return {
+    kx: k1 * cosine * cosine + k2 * sine * sine,
+    ky: k1 * sine * sine + k2 * cosine * cosine,
+    kxy: (k1 - k2) * sine * cosine,
+  }
+}
+
+/** Beyond this the grid resolves nothing of flow askew to it. */
+const mostAnisotropy = 1000
 
 interface ProfileMaker {
   constant: boolean
@@ -83,7 +114,7 @@ function layersOf(
   model: Model,
   entry: Model['ground'][number],
   path: string,
-  conductivities: Map<string, { kx: number; ky: number; index: number }>,
+  conductivities: Map<string, AxisConductivity & { index: number }>,
 ): ProfileMaker {
   if (entry.layers && (entry.material !== undefined || entry.base !== undefined || entry.top !== undefined)) {
     throw new ModelError(path, 'give either layers, or material, base and top')
@@ -109,7 +140,7 @@ function layersOf(
     })
     .reverse()
   function at(x: number, y: number): Profile {
-    const profile: Profile = { base: [], top: [], kx: [], ky: [], material: [] }
+    const profile: Profile = { base: [], top: [], kx: [], ky: [], kxy: [], material: [] }
     let below = Number.NEGATIVE_INFINITY
     for (const layer of layers) {
       const base = layer.base.at(x, y)
@@ -129,6 +160,7 @@ function layersOf(
       profile.top.push(top)
       profile.kx.push(layer.conductivity.kx)
       profile.ky.push(layer.conductivity.ky)
+      profile.kxy.push(layer.conductivity.kxy)
       profile.material.push(layer.conductivity.index)
     }
     return profile
@@ -140,7 +172,7 @@ function layersOf(
 function sectionGround(
   entry: Model['ground'][number],
   path: string,
-  conductivities: Map<string, { kx: number; ky: number; index: number }>,
+  conductivities: Map<string, AxisConductivity & { index: number }>,
 ): ProfileMaker {
   for (const field of ['base', 'top', 'layers'] as const) {
     if (entry[field] === undefined) continue
@@ -153,8 +185,8 @@ function sectionGround(
   if (!conductivity) {
     throw new ModelError(`${path}.material`, `there is no material "${entry.material ?? ''}"`)
   }
-  const { kx, ky, index } = conductivity
-  const profile: Profile = { base: [0], top: [1], kx: [kx], ky: [ky], material: [index] }
+  const { kx, ky, kxy, index } = conductivity
+  const profile: Profile = { base: [0], top: [1], kx: [kx], ky: [ky], kxy: [kxy], material: [index] }
   return { constant: true, at: () => profile }
 }
 

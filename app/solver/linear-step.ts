@@ -1,5 +1,5 @@
 import type { Discretised } from './discretise'
-import type { Matrix } from './flow'
+import type { CornerMatrix, Matrix } from './flow'
 import type { Kernels } from './linear/kernels'
 import { prepareMultigrid } from './linear/multigrid'
 import type { LinearSystem, Prepared } from './linear/system'
@@ -186,26 +186,30 @@ function headChanges(
 
 /** The matrix as a symmetric system: itself, or its symmetric part where it is not symmetric. */
 function systemOf(matrix: Matrix, columns: number, rows: number): LinearSystem {
-  const { west, east, south, north, own, symmetric } = matrix
+  const { west, east, south, north, corners, own, symmetric } = matrix
   const count = columns * rows
-  const alongX = new Float64Array(count)
-  const alongY = new Float64Array(count)
-  for (let j = 0; j < rows; j++) {
-    for (let i = 0; i < columns; i++) {
-      const cell = j * columns + i
-      if (i < columns - 1) {
-        alongX[cell] = symmetric
-          ? (east[cell] as number)
-          : 0.5 * ((east[cell] as number) + (west[cell + 1] as number))
-      }
-      if (j < rows - 1) {
-        alongY[cell] = symmetric
-          ? (north[cell] as number)
-          : 0.5 * ((north[cell] as number) + (south[cell + columns] as number))
+  function linksTo(forth: Float64Array, back: Float64Array, column: -1 | 0 | 1, row: 0 | 1): Float64Array {
+    const links = new Float64Array(count)
+    for (let j = 0; j < rows - row; j++) {
+      for (let i = Math.max(0, -column); i < columns - Math.max(0, column); i++) {
+        const cell = j * columns + i
+        const other = cell + row * columns + column
+        links[cell] = symmetric
+          ? (forth[cell] as number)
+          : 0.5 * ((forth[cell] as number) + (back[other] as number))
       }
     }
+    return links
   }
-  return { columns, rows, east: alongX, north: alongY, northEast: null, northWest: null, own: own.slice() }
+  return {
+    columns,
+    rows,
+    east: linksTo(east, west, 1, 0),
+    north: linksTo(north, south, 0, 1),
+    northEast: corners && linksTo(corners.northEast, corners.southWest, 1, 1),
+    northWest: corners && linksTo(corners.northWest, corners.southEast, -1, 1),
+    own: own.slice(),
+  }
 }
 
 /** out = matrix x. Cells held or without ground have no links; there out = 0. */
@@ -216,7 +220,7 @@ function applyMatrix(
   x: Float64Array,
   out: Float64Array,
 ): void {
-  const { diag, west, east, south, north, own, symmetric } = matrix
+  const { diag, west, east, south, north, corners, own, symmetric } = matrix
   for (let j = 0; j < rows; j++) {
     for (let i = 0; i < columns; i++) {
       const c = j * columns + i
@@ -225,25 +229,42 @@ function applyMatrix(
       const s = j > 0 ? (south[c] as number) : 0
       const n = j < rows - 1 ? (north[c] as number) : 0
       const mid = x[c] as number
-      if (w + e + s + n + (own[c] as number) === 0) {
+      if (w + e + s + n + (own[c] as number) === 0 && !(corners && hasCornerLink(corners, c))) {
         out[c] = 0
         continue
       }
-      if (symmetric) {
-        let sum = (own[c] as number) * mid
-        if (w !== 0) sum += w * (mid - (x[c - 1] as number))
-        if (e !== 0) sum += e * (mid - (x[c + 1] as number))
-        if (s !== 0) sum += s * (mid - (x[c - columns] as number))
-        if (n !== 0) sum += n * (mid - (x[c + columns] as number))
-        out[c] = sum
-      } else {
-        let sum = (diag[c] as number) * mid
-        if (w !== 0) sum -= w * (x[c - 1] as number)
-        if (e !== 0) sum -= e * (x[c + 1] as number)
-        if (s !== 0) sum -= s * (x[c - columns] as number)
-        if (n !== 0) sum -= n * (x[c + columns] as number)
-        out[c] = sum
-      }
+      // In symmetric systems the diagonal is the sum of all links: differences keep the digits that matter.
+      const from = symmetric ? mid : 0
+      let sum = symmetric ? (own[c] as number) * mid : (diag[c] as number) * mid
+      if (w !== 0) sum += w * (from - (x[c - 1] as number))
+      if (e !== 0) sum += e * (from - (x[c + 1] as number))
+      if (s !== 0) sum += s * (from - (x[c - columns] as number))
+      if (n !== 0) sum += n * (from - (x[c + columns] as number))
+      out[c] = corners ? sum + cornersApplied(corners, columns, rows, i, j, x, from) : sum
     }
   }
+}
+
+function hasCornerLink(corners: CornerMatrix, c: number): boolean {
+  const { southWest, southEast, northWest, northEast } = corners
+  return southWest[c] !== 0 || southEast[c] !== 0 || northWest[c] !== 0 || northEast[c] !== 0
+}
+
+function cornersApplied(
+  { southWest, southEast, northWest, northEast }: CornerMatrix,
+  columns: number,
+  rows: number,
+  i: number,
+  j: number,
+  x: Float64Array,
+  from: number,
+): number {
+  const c = j * columns + i
+  let sum = 0
+  if (j > 0 && i > 0) sum += (southWest[c] as number) * (from - (x[c - columns - 1] as number))
+  if (j > 0 && i < columns - 1) sum += (southEast[c] as number) * (from - (x[c - columns + 1] as number))
+  if (j < rows - 1 && i > 0) sum += (northWest[c] as number) * (from - (x[c + columns - 1] as number))
+  if (j < rows - 1 && i < columns - 1)
+    sum += (northEast[c] as number) * (from - (x[c + columns + 1] as number))
+  return sum
 }

@@ -1,5 +1,5 @@
 import { solveDense } from './dense'
-import type { Matrix } from './flow'
+import type { CornerMatrix, Matrix } from './flow'
 import type { Zones } from './zones'
 
 /**
@@ -42,6 +42,59 @@ export function sweep(
   }
 }
 
+/**
+ * The same for a system with links to corner cells too: one sweep over its nine points, in four colours (column and row
+ * even or odd), so that no two cells of a colour are linked. Gauss-Seidel sweeps with any factor between 0 and 2
+ * converge for symmetric positive definite systems (Ostrowski 1954), links of either sign included. `x` has nx zeros
+ * before the first and nx + 1 after the last cell.
+ */
+export function sweepNine(
+  x: Float64Array,
+  b: Float64Array,
+  w: Float64Array,
+  e: Float64Array,
+  s: Float64Array,
+  n: Float64Array,
+  corners: CornerMatrix,
+  nx: number,
+  ny: number,
+  omega: number,
+): void {
+  const { southWest: sw, southEast: se, northWest: nw, northEast: ne } = corners
+  for (let colour = 0; colour < 4; colour++) {
+    for (let j = colour >> 1; j < ny; j += 2) {
+      const end = (j + 1) * nx
+      for (let c = j * nx + (colour & 1); c < end; c += 2) {
+        const p = c + nx
+        const old = x[p] as number
+        x[p] =
+          old +
+          omega *
+            ((b[c] as number) +
+              (w[c] as number) * (x[p - 1] as number) +
+              (e[c] as number) * (x[p + 1] as number) +
+              (s[c] as number) * (x[p - nx] as number) +
+              (n[c] as number) * (x[p + nx] as number) +
+              (c > 0 ? (sw[c] as number) * (x[p - nx - 1] as number) : 0) +
+              (se[c] as number) * (x[p - nx + 1] as number) +
+              (nw[c] as number) * (x[p + nx - 1] as number) +
+              (ne[c] as number) * (x[p + nx + 1] as number) -
+              old)
+      }
+    }
+  }
+}
+
+function cornerSum(corners: CornerMatrix, x: Float64Array, c: number, nx: number): number {
+  const p = c + nx
+  return (
+    (c > 0 ? (corners.southWest[c] as number) * (x[p - nx - 1] as number) : 0) +
+    (corners.southEast[c] as number) * (x[p - nx + 1] as number) +
+    (corners.northWest[c] as number) * (x[p + nx - 1] as number) +
+    (corners.northEast[c] as number) * (x[p + nx + 1] as number)
+  )
+}
+
 export interface SorSystem {
   nx: number
   ny: number
@@ -51,9 +104,11 @@ export interface SorSystem {
   e: Float64Array
   s: Float64Array
   n: Float64Array
+  /** Coefficients to corner cells; null: five points. */
+  corners: CornerMatrix | null
   /** Root of the diagonal. */
   root: Float64Array
-  /** The unknown times `root`, with a row of zeros on either side. */
+  /** The unknown times `root`, with a row of zeros on either side (and one more at the end). */
   x: Float64Array
   symmetric: boolean
 }
@@ -88,7 +143,7 @@ export interface SorOptions {
 /** Scales the matrix in place to a unit diagonal and sets the system up for `rightHandSide`. */
 export function scaledSystem(matrix: Matrix, rightHandSide: Float64Array, nx: number, ny: number): SorSystem {
   const count = nx * ny
-  const { diag, west: w, east: e, south: s, north: n, symmetric } = matrix
+  const { diag, west: w, east: e, south: s, north: n, corners, symmetric } = matrix
   const root = new Float64Array(count)
   const b = new Float64Array(count)
   for (let c = 0; c < count; c++) {
@@ -101,13 +156,33 @@ export function scaledSystem(matrix: Matrix, rightHandSide: Float64Array, nx: nu
       const own = root[c] as number
       if (i > 0) w[c] = (w[c] as number) / (own * (root[c - 1] as number))
       if (j > 0) s[c] = (s[c] as number) / (own * (root[c - nx] as number))
+      if (corners) scaleCorners(corners, root, c, i, nx, symmetric)
       // With a symmetric matrix east and north are the neighbours' west and south, the same memory.
       if (symmetric) continue
       if (i < nx - 1) e[c] = (e[c] as number) / (own * (root[c + 1] as number))
       if (j < ny - 1) n[c] = (n[c] as number) / (own * (root[c + nx] as number))
     }
   }
-  return { nx, ny, b, w, e, s, n, root, x: new Float64Array(count + 2 * nx), symmetric }
+  return { nx, ny, b, w, e, s, n, corners, root, x: new Float64Array(count + 2 * nx + 1), symmetric }
+}
+
+function scaleCorners(
+  { southWest, southEast, northWest, northEast }: CornerMatrix,
+  root: Float64Array,
+  c: number,
+  i: number,
+  nx: number,
+  symmetric: boolean,
+): void {
+  function scale(link: Float64Array, other: number): void {
+    if (other < 0 || other >= root.length) return
+    link[c] = (link[c] as number) / ((root[c] as number) * (root[other] as number))
+  }
+  if (i > 0) scale(southWest, c - nx - 1)
+  if (i < nx - 1) scale(southEast, c - nx + 1)
+  if (symmetric) return
+  if (i > 0) scale(northWest, c + nx - 1)
+  if (i < nx - 1) scale(northEast, c + nx + 1)
 }
 
 interface Measure {
@@ -122,7 +197,7 @@ interface Measure {
 
 /** The true residual of the scaled system, recomputed from its definition. */
 export function measure(system: SorSystem, weight: Float64Array, out: Measure): void {
-  const { nx, ny, b, w, e, s, n, root, x } = system
+  const { nx, ny, b, w, e, s, n, corners, root, x } = system
   let sum = 0
   let largest = 0
   let lowest = 0
@@ -136,7 +211,8 @@ export function measure(system: SorSystem, weight: Float64Array, out: Measure): 
       (w[c] as number) * (x[p - 1] as number) +
       (e[c] as number) * (x[p + 1] as number) +
       (s[c] as number) * (x[p - nx] as number) +
-      (n[c] as number) * (x[p + nx] as number) -
+      (n[c] as number) * (x[p + nx] as number) +
+      (corners ? cornerSum(corners, x, c, nx) : 0) -
       (x[p] as number)
     const scale = root[c] as number
     const unit = 1 / (scale * (weight[c] as number))
@@ -165,7 +241,7 @@ export function measure(system: SorSystem, weight: Float64Array, out: Measure): 
  * still changes, summed over all the sweeps to come.
  */
 export function relax(system: SorSystem, options: SorOptions): SorOutcome {
-  const { nx, ny, b, w, e, s, n, x } = system
+  const { nx, ny, b, w, e, s, n, corners, x } = system
   const { target, headTolerance, weight } = options
   const now: Measure = { norm: 0, largest: 0, range: 0, floor: 0 }
   const { zones } = options
@@ -192,7 +268,10 @@ export function relax(system: SorSystem, options: SorOptions): SorOutcome {
     const affordable = secondsPerSweep > 0 ? Math.max(1, Math.floor(0.1 / secondsPerSweep)) : 4
     const block = Math.min(Math.max(6, Math.ceil(window / 6)), affordable, options.mostSweeps - sweeps)
     const started = performance.now()
-    for (let k = 0; k < block; k++) sweep(x, b, w, e, s, n, nx, ny, omega)
+    for (let k = 0; k < block; k++) {
+      if (corners) sweepNine(x, b, w, e, s, n, corners, nx, ny, omega)
+      else sweep(x, b, w, e, s, n, nx, ny, omega)
+    }
     sweeps += block
     windowSweeps += block
     measure(system, weight, now)
@@ -256,7 +335,7 @@ export function relax(system: SorSystem, options: SorOptions): SorOutcome {
 
 /** Raises or lowers each zone as a whole until it balances with the others. */
 function correctZones(system: SorSystem, weight: Float64Array, zones: Zones, withMode: boolean): void {
-  const { nx, ny, b, w, e, s, n, root, x } = system
+  const { nx, ny, b, w, e, s, n, corners, root, x } = system
   const { count: zoneCount, zoneOf } = zones
   const mode = withMode ? zones.mode : null
   const excess = Array.from({ length: zones.matrix.length }, () => 0)
@@ -270,7 +349,8 @@ function correctZones(system: SorSystem, weight: Float64Array, zones: Zones, wit
       (w[c] as number) * (x[p - 1] as number) +
       (e[c] as number) * (x[p + 1] as number) +
       (s[c] as number) * (x[p - nx] as number) +
-      (n[c] as number) * (x[p + nx] as number) -
+      (n[c] as number) * (x[p + nx] as number) +
+      (corners ? cornerSum(corners, x, c, nx) : 0) -
       (x[p] as number)
     const flow = r * (root[c] as number)
     excess[zone] = (excess[zone] as number) + flow
@@ -330,23 +410,25 @@ export function slowestMode(matrix: Matrix, nx: number, ny: number): { lambda: n
 
 function finest(matrix: Matrix, nx: number, ny: number): Level {
   const count = nx * ny
-  const { diag, west, east, south, north, symmetric } = matrix
-  const alongX = symmetric ? west : new Float64Array(count)
-  const alongY = symmetric ? south : new Float64Array(count)
+  const { diag, west, east, south, north, corners, symmetric } = matrix
+  const alongX = symmetric && !corners ? west : new Float64Array(count)
+  const alongY = symmetric && !corners ? south : new Float64Array(count)
   const gain = new Float64Array(count)
   const mass = new Float64Array(count)
   for (let j = 0; j < ny; j++) {
     for (let i = 0; i < nx; i++) {
       const c = j * nx + i
-      if (!symmetric) {
-        if (i > 0) alongX[c] = Math.sqrt((west[c] as number) * (east[c - 1] as number))
-        if (j > 0) alongY[c] = Math.sqrt((south[c] as number) * (north[c - nx] as number))
+      if (alongX !== west) {
+        // Links that oblique directions make negative count as none: the estimate stays one from above.
+        if (i > 0) alongX[c] = meanLink(west[c] as number, east[c - 1] as number)
+        if (j > 0) alongY[c] = meanLink(south[c] as number, north[c - nx] as number)
       }
       const others =
         (west[c] as number) +
         (i < nx - 1 ? (east[c] as number) : 0) +
         (south[c] as number) +
-        (j < ny - 1 ? (north[c] as number) : 0)
+        (j < ny - 1 ? (north[c] as number) : 0) +
+        (corners ? cornerLinks(corners, c, i, j, nx, ny) : 0)
       // Cells without ground and held cells are tied to none and take no part in any mode.
       if (others === 0) continue
       gain[c] = Math.max(0, (diag[c] as number) - others)
@@ -354,6 +436,21 @@ function finest(matrix: Matrix, nx: number, ny: number): Level {
     }
   }
   return { nx, ny, alongX, alongY, gain, mass }
+}
+
+function meanLink(a: number, b: number): number {
+  return a > 0 && b > 0 ? Math.sqrt(a * b) : 0
+}
+
+/** Sum of a cell's links to its corner cells. */
+function cornerLinks(corners: CornerMatrix, c: number, i: number, j: number, nx: number, ny: number): number {
+  const [west, east, south, north] = [i > 0, i < nx - 1, j > 0, j < ny - 1]
+  return (
+    (south && west ? (corners.southWest[c] as number) : 0) +
+    (south && east ? (corners.southEast[c] as number) : 0) +
+    (north && west ? (corners.northWest[c] as number) : 0) +
+    (north && east ? (corners.northEast[c] as number) : 0)
+  )
 }
 
 function coarsened(fine: Level): Level {

@@ -1,13 +1,18 @@
 import type { FlowModel, ProfileFlow } from './flow'
+import { type Profile, transmissivityAt } from './ground'
 import { levelOfPotential, potentialAt, slopeAt } from './saturated'
 import { logEquivalentRadius, type PlacedWell } from './wells'
 
-/** Geometric mean of the transmissivities along x and y at a cell; what a well in it meets. */
+/** Geometric mean of the principal transmissivities at a cell; what a well in it meets. */
 export function wellTransmissivity(flow: FlowModel, cell: number, h: number): number {
   const profile = flow.d.profileOf[cell] as number
-  if (!flow.d.unconfined) return Math.sqrt((flow.fullX[profile] as number) * (flow.fullY[profile] as number))
+  const { kxy } = flow.d.profiles[profile] as Profile
+  if (!flow.d.unconfined) {
+    const cross = transmissivityAt(flow.d.profiles[profile] as Profile, kxy, Number.POSITIVE_INFINITY)
+    return Math.sqrt((flow.fullX[profile] as number) * (flow.fullY[profile] as number) - cross * cross)
+  }
   const { x, y } = flow.flows[profile] as ProfileFlow
-  return Math.sqrt(slopeAt(x, h) * slopeAt(y, h))
+  return Math.sqrt(slopeAt(x, h) * slopeAt(y, h) - slopeAt({ ...x, k: kxy }, h) ** 2)
 }
 
 /** The conductivities' geometric mean a layer, as a discharge potential: unconfined flow to a well. */
@@ -16,7 +21,9 @@ function wellPotential(flow: FlowModel, cell: number) {
   return {
     profile: x.profile,
     film: x.film,
-    k: x.k.map((kx, layer) => Math.sqrt(kx * (y.k[layer] as number))),
+    k: x.k.map((kx, layer) => {
+      return Math.sqrt(kx * (y.k[layer] as number) - (x.profile.kxy[layer] as number) ** 2)
+    }),
   }
 }
 

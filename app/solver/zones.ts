@@ -1,5 +1,5 @@
 import { solveDense } from './dense'
-import type { Matrix } from './flow'
+import type { CornerMatrix, Matrix } from './flow'
 
 /**
  * Zones of cells that hang together by strong links but only weakly with the rest: inside a wall, in a channel, over
@@ -35,7 +35,7 @@ export function zonesOf(
   slowestMode: Float64Array | null,
   always: boolean,
 ): Zones | null {
-  const { diag, west, east, south, north, weight } = matrix
+  const { diag, west, east, south, north, corners, weight } = matrix
   const count = nx * ny
   const zoneOf = new Int32Array(count).fill(-1)
   const queue = new Int32Array(count)
@@ -62,6 +62,9 @@ export function zonesOf(
       if (i < nx - 1) visit(c + 1, (east[c] as number) * (weight[c + 1] as number))
       if (c >= nx) visit(c - nx, (south[c] as number) * (weight[c - nx] as number))
       if (c < count - nx) visit(c + nx, (north[c] as number) * (weight[c + nx] as number))
+      if (corners) {
+        eachCorner(corners, c, i, nx, count, (next, link) => visit(next, link * (weight[next] as number)))
+      }
     }
     zones++
     if (zones > mostZones) return null
@@ -112,6 +115,7 @@ export function zonesOf(
     if (i < nx - 1) add(c + 1, -(east[c] as number))
     if (c >= nx) add(c - nx, -(south[c] as number))
     if (c < count - nx) add(c + nx, -(north[c] as number))
+    if (corners) eachCorner(corners, c, i, nx, count, (next, link) => add(next, -link))
   }
   let slowest = Number.POSITIVE_INFINITY
   for (let k = 0; k < zones; k++) {
@@ -140,6 +144,20 @@ export function zonesOf(
   }
   last[zones] = energy
   return { zoneOf, count: zones, mode, matrix: rows, slowest }
+}
+
+function eachCorner(
+  { southWest, southEast, northWest, northEast }: CornerMatrix,
+  c: number,
+  i: number,
+  nx: number,
+  count: number,
+  visit: (next: number, link: number) => void,
+): void {
+  if (i > 0 && c >= nx) visit(c - nx - 1, southWest[c] as number)
+  if (i < nx - 1 && c >= nx) visit(c - nx + 1, southEast[c] as number)
+  if (i > 0 && c < count - nx) visit(c + nx - 1, northWest[c] as number)
+  if (i < nx - 1 && c < count - nx) visit(c + nx + 1, northEast[c] as number)
 }
 
 function raise(row: number[], k: number, by: number): void {
