@@ -2,12 +2,16 @@ import { addTo, type FlowField, type Tally } from './flow-field'
 import { centresOf } from './grid'
 import { lineDischarges, type RingFlows, ringFlows } from './rings'
 
-/** The flows of one moment, or their mean over one step in time, as a result reports them: volume/time. */
-export interface Moment {
+/** What enters, leaves and is stored in the whole model: volume/time. */
+export interface Totals {
   inflow: number
   outflow: number
   /** Into storage. */
   storage: number
+}
+
+/** The flows of one moment, or their mean over one step in time, as a result reports them: volume/time. */
+export interface Moment extends Totals {
   boundaries: Tally[]
   leakage: Tally[]
   recharge: Tally[]
@@ -21,52 +25,63 @@ export interface Moment {
   atOuterFaces: Map<number, number>
 }
 
+/** Adds up a flow field for the whole model. */
+export function totalsOf(field: FlowField): Totals {
+  const whole: Tally = { inflow: 0, outflow: 0 }
+  for (const { inflow, outflow } of [...field.byBoundary, ...field.byLeakage]) {
+    whole.inflow += inflow
+    whole.outflow += outflow
+  }
+  for (const q of [...field.byRecharge, ...field.byWell]) addTo(whole, q)
+  let storage = 0
+  for (const rate of field.storage) storage += rate
+  return { ...whole, storage }
+}
+
 /** Adds up a flow field by name, line and ring. */
 export function momentOf(field: FlowField): Moment {
-  const { d } = field
-  const whole: Tally = { inflow: 0, outflow: 0 }
-  const recharge = field.byRecharge.map((q) => tallyOf(q))
-  for (const tally of [...field.byBoundary, ...field.byLeakage, ...recharge]) {
-    whole.inflow += tally.inflow
-    whole.outflow += tally.outflow
-  }
-  for (const q of field.byWell) addTo(whole, q)
-  let storage = 0
-  let worst = -1
-  let most = -1
-  for (let cell = 0; cell < field.error.length; cell++) {
-    storage += field.storage[cell] as number
-    const error = Math.abs(field.error[cell] as number)
-    if (d.active[cell] === 1 && error > most) {
-      most = error
-      worst = cell
-    }
-  }
-  const j = Math.floor(worst / d.grid.columns)
   return {
-    ...whole,
-    storage,
+    ...totalsOf(field),
     boundaries: field.byBoundary,
     leakage: field.byLeakage,
-    recharge,
+    recharge: field.byRecharge.map(tallyOf),
     wells: field.byWell,
     lines: lineDischarges(field),
     rings: ringFlows(field),
-    worst: {
-      at: [
-        centresOf(d.grid.xEdges)[worst - j * d.grid.columns] as number,
-        centresOf(d.grid.yEdges)[j] as number,
-      ],
-      error: field.error[worst] as number,
-    },
+    worst: worstCell(field),
     atOuterFaces: field.atOuterFaces,
   }
+}
+
+function worstCell({ d, error }: FlowField): Moment['worst'] {
+  let worst = 0
+  let most = -1
+  for (let cell = 0; cell < error.length; cell++) {
+    if (d.active[cell] !== 1 || Math.abs(error[cell] as number) <= most) continue
+    most = Math.abs(error[cell] as number)
+    worst = cell
+  }
+  const j = Math.floor(worst / d.grid.columns)
+  const at: [number, number] = [
+    centresOf(d.grid.xEdges)[worst - j * d.grid.columns] as number,
+    centresOf(d.grid.yEdges)[j] as number,
+  ]
+  return { at, error: error[worst] as number }
 }
 
 function tallyOf(q: number): Tally {
   const tally: Tally = { inflow: 0, outflow: 0 }
   addTo(tally, q)
   return tally
+}
+
+/** a x one + b x other. */
+export function weightedTotals(a: number, one: Totals, b: number, other: Totals): Totals {
+  return {
+    inflow: a * one.inflow + b * other.inflow,
+    outflow: a * one.outflow + b * other.outflow,
+    storage: a * one.storage + b * other.storage,
+  }
 }
 
 /** a x one + b x other, entry by entry; the worst cell is the second's, where heads are reported. */
@@ -79,9 +94,7 @@ export function weighted(a: number, one: Moment, b: number, other: Moment): Mome
     }))
   const mixNumbers = (p: number[], q: number[]) => p.map((value, k) => mix(value, q[k] as number))
   return {
-    inflow: mix(one.inflow, other.inflow),
-    outflow: mix(one.outflow, other.outflow),
-    storage: mix(one.storage, other.storage),
+    ...weightedTotals(a, one, b, other),
     boundaries: mixTallies(one.boundaries, other.boundaries),
     leakage: mixTallies(one.leakage, other.leakage),
     recharge: mixTallies(one.recharge, other.recharge),

@@ -2,7 +2,7 @@ import type { Outcome } from './balancer'
 import type { Discretised } from './discretise'
 import type { FlowField } from './flow-field'
 import type { Method } from './linear-step'
-import type { Moment } from './moment'
+import type { Moment, Totals } from './moment'
 
 /** The ground at the end of a reported step, with the flows over that step; in steady flow, the steady state. */
 export interface Report {
@@ -13,21 +13,14 @@ export interface Report {
   moment: Moment
 }
 
-/** Volumes over one stage. */
-export interface Volumes {
-  inflow: number
-  outflow: number
-  storage: number
-}
-
 /** What one run of a model computed and how well, steady or through its stages. */
 export interface RunRecord {
   /** The ground before the first step; null in steady flow. */
   initial: Outcome | null
   /** At least one. */
   reports: Report[]
-  /** By stage; empty in steady flow. */
-  volumes: Volumes[]
+  /** Volumes by stage; empty in steady flow. */
+  volumes: Totals[]
   /** Steps in time. */
   steps: number
   converged: boolean

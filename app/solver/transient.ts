@@ -4,9 +4,8 @@ import type { StorageTerm } from './flow'
 import { firstHeadsGiven } from './initial-heads'
 import type { Method } from './linear-step'
 import type { Model, Stage, TransientTime } from './model'
-import { type Moment, momentOf, weighted } from './moment'
-import type { Report, RunRecord, Volumes } from './record'
-import { recordOf } from './record'
+import { type Moment, momentOf, type Totals, totalsOf, weighted, weightedTotals } from './moment'
+import { type RunRecord, recordOf } from './record'
 import { checkStages } from './stages'
 
 /**
@@ -65,14 +64,14 @@ export function solveTransient(
   for (const [number, stage] of time.stages.entries()) {
     if (!all.converged) break
     const balancer = balancerOf(stages[number] as Discretised, method, tolerance, watch)
-    const volumes: Volumes = { inflow: 0, outflow: 0, storage: 0 }
+    const volumes: Totals = { inflow: 0, outflow: 0, storage: 0 }
     const control = stepControl(stage)
     let done = 0
-    let last: Report | null = null
     let earlier: { heads: Float64Array; dt: number }[] = []
     while (done < stage.duration && all.converged) {
       const dt = control.next(stage.duration - done)
-      const taken = oneStep(balancer, state, dt)
+      const end = stage.duration - done - dt <= 1e-12 * stage.duration
+      const taken = oneStep(balancer, state, dt, end || time.report === 'steps')
       progress.iterations = all.iterations + taken.iterations
       const error = control.automatic ? thirdDifference(taken.second.heads, state.heads, earlier, dt) : 0
       if (taken.converged && control.automatic && !control.accept(error, dt, spreadOf(taken.second))) {
@@ -81,20 +80,19 @@ export function solveTransient(
       }
       note(all, taken)
       if (!taken.converged) break
-      done = stage.duration - done - dt <= 1e-12 * stage.duration ? stage.duration : done + dt
+      done = end ? stage.duration : done + dt
       progress.done = before + done
-      const { moment } = taken
-      volumes.inflow += dt * moment.inflow
-      volumes.outflow += dt * moment.outflow
-      volumes.storage += dt * moment.storage
+      volumes.inflow += dt * taken.totals.inflow
+      volumes.outflow += dt * taken.totals.outflow
+      volumes.storage += dt * taken.totals.storage
       earlier = [{ heads: state.heads, dt }, ...earlier].slice(0, 2)
       state = taken.second
-      last = { time: before + done, d: balancer.d, outcome: state, moment }
+      if (taken.moment) {
+        all.reports.push({ time: before + done, d: balancer.d, outcome: state, moment: taken.moment })
+      }
       all.lastField = () => balancer.field(taken.second, taken.secondTerm)
-      if (time.report === 'steps' && done < stage.duration) all.reports.push(last)
       if (all.steps >= mostSteps) all.converged = false
     }
-    if (last) all.reports.push(last)
     all.volumes.push(volumes)
     before += stage.duration
   }
@@ -121,7 +119,8 @@ function note(all: RunRecord, taken: Taken): void {
 interface Taken {
   second: Outcome
   secondTerm: StorageTerm
-  moment: Moment
+  totals: Totals
+  moment: Moment | null
   iterations: number
   residual: number
   headError: number
@@ -130,7 +129,8 @@ interface Taken {
   cancelled: boolean
 }
 
-function oneStep(balancer: Balancer, state: Outcome, dt: number): Taken {
+/** One step; `reported`: are its flows wanted by name? */
+function oneStep(balancer: Balancer, state: Outcome, dt: number, reported: boolean): Taken {
   const stored = balancer.stored(state)
   const firstTerm: StorageTerm = { interval: gamma * dt, before: stored }
   const first = balancer.solve(state, firstTerm)
@@ -139,22 +139,32 @@ function oneStep(balancer: Balancer, state: Outcome, dt: number): Taken {
   const from = stored.map((volume, cell) => volume + share * ((afterFirst[cell] as number) - volume))
   const secondTerm: StorageTerm = { interval: gamma * dt, before: from }
   const second = first.converged ? balancer.solve(first, secondTerm) : first
-  const moment = weighted(
-    1 - gamma,
-    momentOf(balancer.field(first, firstTerm)),
-    gamma,
-    momentOf(balancer.field(second, secondTerm)),
-  )
+  const fields = [balancer.field(first, firstTerm), balancer.field(second, secondTerm)] as const
   return {
     second,
     secondTerm,
-    moment,
+    totals: weightedTotals(1 - gamma, totalsOf(fields[0]), gamma, totalsOf(fields[1])),
+    moment: reported ? weighted(1 - gamma, momentOf(fields[0]), gamma, momentOf(fields[1])) : null,
     iterations: first.iterations + (second === first ? 0 : second.iterations),
     residual: Math.max(first.residual, second.residual),
     headError: Math.max(first.headError, second.headError),
     unresolvedFlow: Math.max(first.unresolvedFlow, second.unresolvedFlow),
     converged: first.converged && second.converged,
     cancelled: first.cancelled || second.cancelled,
+  }
+}
+
+function twoSteps(balancer: Balancer, state: Outcome, dt: number): Taken {
+  const one = oneStep(balancer, state, dt / 2)
+  if (!one.converged) return one
+  const other = oneStep(balancer, one.second, dt / 2)
+  return {
+    ...other,
+    moment: weighted(0.5, one.moment, 0.5, other.moment),
+    iterations: one.iterations + other.iterations,
+    residual: Math.max(one.residual, other.residual),
+    headError: one.headError + other.headError,
+    unresolvedFlow: Math.max(one.unresolvedFlow, other.unresolvedFlow),
   }
 }
 
