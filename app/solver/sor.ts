@@ -263,6 +263,8 @@ export function relax(system: SorSystem, options: SorOptions): SorOutcome {
   let ended: SorOutcome['ended'] = now.norm <= target && target > 0 ? 'converged' : 'sweeps'
   if (now.norm === 0) return { sweeps, residual: 0, headError: 0, ended: 'converged', factor: omega }
   let secondsPerSweep = 0
+  // With links to corners Young's relation only guesses: a factor that made it slower is taken back for good.
+  let trial: { omega: number; rate: number; windows: number } | null = null
   while (sweeps < options.mostSweeps) {
     const window = Math.max(12, Math.ceil(3 / (2 - omega)))
     const affordable = secondsPerSweep > 0 ? Math.max(1, Math.floor(0.1 / secondsPerSweep)) : 4
@@ -305,13 +307,21 @@ export function relax(system: SorSystem, options: SorOptions): SorOutcome {
     idleWindows = now.norm < 0.7 * bestNorm ? 0 : idleWindows + 1
     bestNorm = Math.min(bestNorm, now.norm)
     observed = Math.min(lambda, 0.999999)
-    if (lambda < 1 && now.norm > 30 * now.floor && Math.log(lambda) > 0.6 * Math.log(omega - 1)) {
+    if (trial && ++trial.windows >= 2) {
+      if (lambda > trial.rate) {
+        omega = trial.omega
+        highestOmega = omega
+      }
+      trial = null
+    }
+    if (!trial && lambda < 1 && now.norm > 30 * now.floor && Math.log(lambda) > 0.6 * Math.log(omega - 1)) {
       const mu = (lambda + omega - 1) / (omega * Math.sqrt(lambda))
       if (mu < 1) {
         const better = 2 / (1 + Math.sqrt(1 - mu * mu))
         // The slowest mode is corrected apart only when convergence shows that it is there.
         if (zones?.mode && !withMode) withMode = true
         else if (better > omega + 1e-3 * (2 - omega) && omega < highestOmega) {
+          if (corners) trial = { omega, rate: lambda, windows: 0 }
           omega = Math.min(better, highestOmega)
           idleWindows = 0
         }
