@@ -706,10 +706,10 @@ describe('hostile models', () => {
       /Chalk/,
     ],
     [
-      'principal directions askew',
-      { materials: [{ name: 'Sand', kx: 2, ky: 1, angle: 30 }] },
+      'principal directions askew in ground of extreme anisotropy',
+      { materials: [{ name: 'Sand', kx: 2000, ky: 1, angle: 30 }] },
       'materials[0].angle',
-      /30/,
+      /factor of 1000/,
     ],
     ['an empty grid', { grid: { columns: 0, rows: 5 } }, 'grid.columns', /whole number/],
     ['a grid beyond all bounds', { grid: { columns: 1e5, rows: 1e5 } }, 'grid', /cells/],
@@ -792,7 +792,6 @@ describe('hostile models', () => {
       'boundaries[0].kind',
       /belongs to a vertical section/,
     ],
-    ['verification', { want: { verify: true } }, 'want.verify', /not computed/],
     [
       'travel times without porosity',
       { want: { flowLines: [{ from: [1, 1], direction: 'back' }] } },
