@@ -1,6 +1,7 @@
 import type { Discretised } from './discretise'
 import { type FlowModel, flowModelOf, type ProfileFlow, type StorageTerm, storedVolumes } from './flow'
 import { type FlowField, planField } from './flow-field'
+import { freeSurfaceBalancer } from './free-surface'
 import type { Kernels } from './linear/kernels'
 import { type LinearStep, linearStepOf, type Method, mostIterations } from './linear-step'
 import { type Balancing, balanceCells, balancingOf, type Progress, type Watch } from './newton'
@@ -11,6 +12,8 @@ export type { Progress }
 export interface SolverOptions extends Watch {
   /** Compiled kernels of the fast method; without them their TypeScript twins serve. */
   kernels?: Kernels
+  /** Takes every step in time as two of half its length. */
+  halveSteps?: boolean
 }
 
 /** Heads that balance, and how far they do. */
@@ -49,7 +52,7 @@ export interface Balancer {
 }
 
 /**
- * The balancer of plan flow and saturated sections: Newton's steps by one method. Wells that a cell cannot supply, or
+ * The balancer of a model: that of sections with a free surface, or Newton's steps by one method. Wells that a cell cannot supply, or
  * that would fall below their lowest level, are reduced. Always returns, with `converged` said.
  */
 export function balancerOf(
@@ -58,6 +61,7 @@ export function balancerOf(
   tolerance: number,
   options: SolverOptions,
 ): Balancer {
+  if (d.model.flow === 'free surface') return freeSurfaceBalancer(d, method, tolerance, options)
   const flow = flowModelOf(d)
   const step = linearStepOf(method, d, options.kernels)
   const most = mostIterations(method, d.active.length)

@@ -14,6 +14,7 @@ export interface PointResult {
   /** null: no head here; `why` says so. */
   head: (number | null)[]
   why?: string
+  band?: Band[]
 }
 
 export interface WellResult {
@@ -24,6 +25,8 @@ export interface WellResult {
   cellHead: number[]
   /** null without a radius, or where the well would be dry. */
   wellHead: (number | null)[]
+  /** Of the head at the well face, or of the cell's without a radius. */
+  band?: Band[]
 }
 
 /** Flow into and out of the model, both positive. */
@@ -57,6 +60,8 @@ export interface RingResult {
   boundaries: number[]
   storage: number[]
   error: number[]
+  /** Of the flow through it. */
+  band?: Band[]
 }
 
 export interface Balance {
@@ -93,13 +98,19 @@ export interface Result {
   times: number[]
   points: PointResult[]
   wells: WellResult[]
-  lines: { name: string; discharge: number[] }[]
+  lines: { name: string; discharge: number[]; band?: Band[] }[]
   rings: RingResult[]
   boundaries: NamedFlow[]
   recharge: NamedFlow[]
   leakage: NamedFlow[]
   balance: Balance
   noFlowEdges: string[]
+  /** Vertical sections with a free surface: its elevation in the columns that have one, at the end. */
+  freeSurface?: FreeSurfacePoint[]
+  /** Vertical sections: how high water leaves at every seepage face, at the end. */
+  seepageFaces?: SeepageFaceResult[]
+  /** Vertical sections: gradients along every boundary where water leaves, at the end. */
+  gradients?: GradientResult[]
   warnings: Warning[]
   /** The relative residual after each number of iterations, at most a few hundred entries. */
   history: { iterations: number; residual: number }[]
@@ -108,6 +119,7 @@ export interface Result {
   /** What `want` asked for. Of transient flow, flow lines and capture zones are those of the last reported moment. */
   flowLines?: FlowLineResult[]
   captureZones?: CaptureResult
+  verification?: Verification
 }
 
 /** What a flow line ended at. Against the flow that is where its water came from. */
@@ -155,4 +167,68 @@ export interface FormulaComparison {
   extentEffect: number
   /** By named result, one value a time; difference = computed - formula. */
   results: { name: string; formula: (number | null)[]; difference: (number | null)[] }[]
+}
+
+/** The interval that a value lies in by the verification of its run; null where there is nothing to judge it by. */
+export type Band = [low: number, high: number] | null
+
+/** One try at other outer boundaries; `done`: computed. */
+export interface SwapResult {
+  text: string
+  done: boolean
+}
+
+/** What the verification found about one named result; lists have one entry a reported time. */
+export interface VerifiedResult {
+  name: string
+  band: Band[]
+  /** Observed order of convergence with the cell size. */
+  order: (number | null)[]
+  /** Richardson's extrapolation to cells of no size. */
+  extrapolated: (number | null)[]
+  /** How the grid's error was estimated: see convergence.ts. */
+  how: ('observed order' | 'limited order' | 'first order assumed' | 'none')[]
+  /** Estimated errors, safety factor included. */
+  gridError: (number | null)[]
+  timeError?: (number | null)[]
+  /** The value with other outer boundaries. */
+  swapped: { text: string; values: (number | null)[] }[]
+}
+
+export interface Verification {
+  /** Finest first; `times`: cell size against the model's own. */
+  grid: { grids: { columns: number; rows: number; cells: number; times: number }[]; why: string }
+  /** Null in steady flow. */
+  time: { halved: boolean; why?: string } | null
+  outerBoundary: SwapResult[]
+  formula: FormulaComparison | null
+  results: VerifiedResult[]
+}
+
+export interface FreeSurfacePoint {
+  /** The middle of a column. */
+  x: number
+  elevation: number
+}
+
+export interface SeepageFaceResult {
+  name: string
+  /** null: no water leaves. */
+  exitElevation: number | null
+}
+
+/** The gradient at which water leaves the ground through one boundary of a vertical section. */
+export interface GradientResult {
+  /** Of the boundary. */
+  name: string
+  /** Head lost over `overDepth` below the boundary, a length of it: the mean over the place that is worst, or stated. */
+  mean: number
+  overDepth: number
+  /** The steepest between a face and the centre of its cell, and where. */
+  localMaximum: number
+  at: [x: number, y: number]
+  /** From that face to that centre twice: what the local maximum depends on. */
+  cellSize: number
+  /** The maximum stands beside a corner or a wall's end where it grows without limit as cells shrink. */
+  singular: boolean
 }

@@ -1,5 +1,6 @@
 import type { Model } from './model'
 import { ModelError, requirePositive } from './model-error'
+import { checkVerticalExtents } from './vertical-flow'
 
 /** Refuses by name, with its path, everything a model file may hold that this version does not compute. */
 export function refuseWhatIsNotComputed(model: Model): void {
@@ -20,6 +21,7 @@ export function refuseWhatIsNotComputed(model: Model): void {
     const tolerance = requirePositive(model.solver.tolerance, 'solver.tolerance')
     if (tolerance > 1e-3) throw new ModelError('solver.tolerance', 'above 0.001 the heads would mean little')
   }
+  checkVerticalExtents(model)
   model.boundaries?.forEach((boundary, index) => {
     if (model.kind === 'plan' && boundary.kind === 'seepage face') {
       throw new ModelError(
@@ -35,7 +37,6 @@ export function refuseWhatIsNotComputed(model: Model): void {
     )
   }
   const want = model.want
-  if (want?.verify) throw notYet('want.verify', 'the verification of a run')
   if (want?.sensitivities && want.sensitivities.length > 0)
     throw notYet('want.sensitivities', 'sensitivities')
   if (want?.responses) throw notYet('want.responses', 'response coefficients')

@@ -63,15 +63,16 @@ export function solveModel(model: Model, options: SolveOptions = {}): Solution {
   const last = run.reports[run.reports.length - 1] as Report
   const result = resultOf(model, run)
   if (options.input !== undefined) result.input = options.input
-  const pictures = run.cancelled ? {} : addWanted(model, run, result, options)
-  return {
+  const solution: Solution = {
     result,
-    pictures,
     heads: headsOut(last.d, last.outcome),
     fields: fieldsOf(run),
     grid: last.d.grid,
+    pictures: {},
     cancelled: run.cancelled,
   }
+  if (!run.cancelled) addWanted(model, run, solution, options, solveModel)
+  return solution
 }
 
 /** 'automatic' takes multigrid, and falls back to relaxation where that does not get there. */

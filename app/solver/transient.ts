@@ -71,7 +71,8 @@ export function solveTransient(
     while (done < stage.duration && all.converged) {
       const dt = control.next(stage.duration - done)
       const end = stage.duration - done - dt <= 1e-12 * stage.duration
-      const taken = oneStep(balancer, state, dt, end || time.report === 'steps')
+      const step = options.halveSteps ? twoSteps : oneStep
+      const taken = step(balancer, state, dt, end || time.report === 'steps')
       progress.iterations = all.iterations + taken.iterations
       const error = control.automatic ? thirdDifference(taken.second.heads, state.heads, earlier, dt) : 0
       if (taken.converged && control.automatic && !control.accept(error, dt, spreadOf(taken.second))) {
@@ -154,13 +155,15 @@ function oneStep(balancer: Balancer, state: Outcome, dt: number, reported: boole
   }
 }
 
-function twoSteps(balancer: Balancer, state: Outcome, dt: number): Taken {
-  const one = oneStep(balancer, state, dt / 2)
+/** Two steps of half the length, as one. */
+function twoSteps(balancer: Balancer, state: Outcome, dt: number, reported: boolean): Taken {
+  const one = oneStep(balancer, state, dt / 2, reported)
   if (!one.converged) return one
-  const other = oneStep(balancer, one.second, dt / 2)
+  const other = oneStep(balancer, one.second, dt / 2, reported)
   return {
     ...other,
-    moment: weighted(0.5, one.moment, 0.5, other.moment),
+    totals: weightedTotals(0.5, one.totals, 0.5, other.totals),
+    moment: one.moment && other.moment && weighted(0.5, one.moment, 0.5, other.moment),
     iterations: one.iterations + other.iterations,
     residual: Math.max(one.residual, other.residual),
     headError: one.headError + other.headError,

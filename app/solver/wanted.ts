@@ -1,10 +1,11 @@
+import type { SolverOptions } from './balancer'
 import { type CaptureRaster, captureOf } from './capture'
 import type { Discretised } from './discretise'
 import { checkFlowLines, flowLineResults, velocitiesOf } from './flow-lines'
 import type { Model } from './model'
-import type { Watch } from './newton'
 import type { Report, RunRecord } from './record'
 import type { Result } from './result'
+import { applyVerification, type Solved, verificationOf } from './verify'
 
 /** Fields that belong to what a run adds, too large for its result. */
 export interface Pictures {
@@ -16,11 +17,25 @@ export function checkWanted(d: Discretised): void {
   checkFlowLines(d)
 }
 
-/** Adds what the model wants besides heads to the result of its run; what is too large for it comes back. */
-export function addWanted(model: Model, run: RunRecord, result: Result, options: Watch): Pictures {
-  const pictures: Pictures = {}
+interface Wanting extends Solved {
+  result: Result
+  pictures: Pictures
+}
+
+/**
+ * Adds what the model wants besides heads to the solution of its run. `solve` computes other models: the same on
+ * another grid, for example.
+ */
+export function addWanted(
+  model: Model,
+  run: RunRecord,
+  solution: Wanting,
+  options: SolverOptions,
+  solve: (model: Model, options: SolverOptions) => Solved,
+): void {
   const { want } = model
-  if (!want || !run.lastField) return pictures
+  if (!want || !run.lastField) return
+  const { result, pictures } = solution
   const { outcome } = run.reports[run.reports.length - 1] as Report
   if ((want.flowLines?.length ?? 0) > 0 || want.captureZones) {
     const velocities = velocitiesOf(run.lastField(), outcome)
@@ -32,5 +47,18 @@ export function addWanted(model: Model, run: RunRecord, result: Result, options:
       pictures.capture = capture.raster
     }
   }
-  return pictures
+  const solveOther = (other: Model, phase: string, halveSteps = false) =>
+    solve(other, {
+      ...options,
+      halveSteps,
+      onProgress: options.onProgress && ((progress) => options.onProgress?.({ ...progress, phase })),
+    })
+  if (want.verify && result.converged) {
+    const first = (run.reports[0] as Report).d
+    const verification = verificationOf(model, first, solution, (other, variant) =>
+      solveOther(other, `verification: ${variant.phase}`, variant.halveSteps),
+    )
+    if (verification) applyVerification(result, verification)
+    else solution.cancelled = true
+  }
 }
