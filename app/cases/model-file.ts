@@ -85,6 +85,7 @@ const well = z.strictObject({
   rate: value,
   radius: z.number().positive().optional(),
   lowestLevel: z.number().optional(),
+  screen: z.strictObject({ top: z.number(), bottom: z.number() }).optional(),
   source,
 })
 
@@ -137,7 +138,14 @@ const modelFile = z.strictObject({
   recharge: list(recharge).optional(),
   boundaries: list(boundary).optional(),
   walls: list(
-    z.strictObject({ name, line, thickness: z.number().positive(), k: z.number().nonnegative(), source }),
+    z.strictObject({
+      name,
+      line,
+      thickness: z.number().positive(),
+      k: z.number().nonnegative(),
+      toe: z.number().optional(),
+      source,
+    }),
   ).optional(),
   leakage: list(
     z.strictObject({

@@ -84,6 +84,8 @@ export interface Well {
   rate: Value
   radius?: number
   lowestLevel?: number
+  /** Levels between which the well is open; plan. Not given: over the whole saturated thickness. */
+  screen?: { top: number; bottom: number }
   source?: string
 }
 
@@ -130,6 +132,8 @@ export interface Wall {
   line: Position[]
   thickness: number
   k: number
+  /** Level of its lower end; plan. Not given: at the base of the ground or below. */
+  toe?: number
   source?: string
 }
 

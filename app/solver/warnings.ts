@@ -2,6 +2,7 @@ import type { Discretised } from './discretise'
 import type { FlowModel, ProfileFlow } from './flow'
 import type { Report, RunRecord } from './record'
 import type { Warning } from './result'
+import { verticalFlowWarnings } from './vertical-flow'
 import { lowestLevelOf } from './well-heads'
 
 /**
@@ -28,6 +29,7 @@ export function warningsOf(run: RunRecord, throughflow: number): Warning[] {
     }
   }
   warnings.push(...levelWarnings(outcome.flow, outcome.heads))
+  if (run.converged) warnings.push(...verticalFlowWarnings(run.reports))
   return warnings
 }
 
