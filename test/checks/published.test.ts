@@ -1,76 +1,20 @@
 import { describe, expect, it } from 'vitest'
-import type { Boundary, Model, Position } from '~/solver/model'
-import { type Solution, solveModel } from '~/solver/solve'
-import published from './published.json'
-
-type Check = (typeof published)[number]
-
-function check<Inputs, Expected>(
-  id: string,
-): { title: string; source: string; inputs: Inputs; expected: Expected } {
-  const found = published.find((entry: Check) => entry.id === id)
-  if (!found) throw new Error(`no published check ${id}`)
-  return found as unknown as { title: string; source: string; inputs: Inputs; expected: Expected }
-}
-
-type Rest = Partial<Model> & Pick<Model, 'extent' | 'grid' | 'materials' | 'ground'>
-
-function plan(rest: Rest): Model {
-  return {
-    format: 'lavant-model',
-    version: 1,
-    units: { length: 'm', time: 's' },
-    kind: 'plan',
-    flow: 'confined',
-    time: { kind: 'steady' },
-    ...rest,
-  }
-}
-
-function solved(rest: Rest): Solution {
-  const solution = solveModel(plan(rest))
-  expect(solution.result.converged).toBe(true)
-  expect(Math.abs(solution.result.balance.errorPercent[0] as number)).toBeLessThan(1e-4)
-  return solution
-}
-
-function head({ result }: Solution, name: string): number {
-  const found = result.points.find((point) => point.name === name)?.head[0]
-  if (typeof found !== 'number') throw new Error(`no head at ${name}`)
-  return found
-}
-
-function intoModel({ result }: Solution, name: string): number {
-  const found = result.boundaries.find((boundary) => boundary.name === name)
-  return (found?.inflow[0] ?? Number.NaN) - (found?.outflow[0] ?? Number.NaN)
-}
-
-/** Ground of transmissivity T: one metre of conductivity T, far below the heads. */
-function sheet(transmissivity: number) {
-  return {
-    materials: [{ name: 'Ground', kx: transmissivity, ky: transmissivity }],
-    ground: [{ material: 'Ground', base: -1001, top: -1000 }],
-  }
-}
-
-function fixed(name: string, line: Position[], level: number | number[]): Boundary {
-  return { name, kind: 'fixed head', line, head: level }
-}
-
-function circle(radius: number, corners = 720): Position[] {
-  return Array.from({ length: corners }, (_, k): Position => {
-    const angle = ((k + 0.5) * 2 * Math.PI) / corners
-    return [radius * Math.cos(angle), radius * Math.sin(angle)]
-  })
-}
-
-function closed(polygon: Position[]): Position[] {
-  return [...polygon, polygon[0] as Position]
-}
-
-function relative(value: number, reference: number): number {
-  return Math.abs(value - reference) / Math.abs(reference)
-}
+import type { Position } from '~/solver/model'
+import type { Solution } from '~/solver/solve'
+import {
+  abstraction,
+  between,
+  check,
+  circle,
+  closed,
+  faceHead,
+  fixed,
+  head,
+  intoModel,
+  relative,
+  sheet,
+  solvedByBoth,
+} from './plan'
 
 describe('PS-01', () => {
   const { title, source, inputs, expected } = check<
@@ -79,28 +23,14 @@ describe('PS-01', () => {
   >('PS-01')
   const width = 30
   const strip = (columns: number, rate: number) =>
-    solved({
+    solvedByBoth({
       ...sheet(inputs.T_m2_s),
       extent: { x: [0, inputs.L_m], y: [0, width] },
       grid: { columns, rows: 3 },
       recharge: rate === 0 ? [] : [{ name: 'Rain', rate }],
       boundaries: [
-        fixed(
-          'West',
-          [
-            [0, 0],
-            [0, width],
-          ],
-          inputs.h_west_m,
-        ),
-        fixed(
-          'East',
-          [
-            [inputs.L_m, 0],
-            [inputs.L_m, width],
-          ],
-          inputs.h_east_m,
-        ),
+        fixed('West', between([0, 0], [0, width]), inputs.h_west_m),
+        fixed('East', between([inputs.L_m, 0], [inputs.L_m, width]), inputs.h_east_m),
       ],
       points: Object.keys(expected.head_at_x).map((x) => ({ name: x, x: Number(x), y: 15 })),
     })
@@ -139,7 +69,7 @@ describe.each(['PS-02', 'PS-02b'])('%s', (id) => {
   >(id)
 
   it(`${title} (${source})`, () => {
-    const solution = solved({
+    const solution = solvedByBoth({
       flow: 'unconfined',
       materials: [{ name: 'Ground', kx: inputs.K_m_s, ky: inputs.K_m_s }],
       ground: [{ material: 'Ground', base: inputs.base_m }],
@@ -147,22 +77,8 @@ describe.each(['PS-02', 'PS-02b'])('%s', (id) => {
       grid: { columns: 100, rows: 1 },
       recharge: [{ name: 'Rain', rate: inputs.recharge_m_s }],
       boundaries: [
-        fixed(
-          'River',
-          [
-            [0, 0],
-            [0, 10],
-          ],
-          inputs.h_x0_m,
-        ),
-        fixed(
-          'Canal',
-          [
-            [inputs.L_m, 0],
-            [inputs.L_m, 10],
-          ],
-          inputs.h_xL_m,
-        ),
+        fixed('River', between([0, 0], [0, 10]), inputs.h_x0_m),
+        fixed('Canal', between([inputs.L_m, 0], [inputs.L_m, 10]), inputs.h_xL_m),
       ],
       points: [
         ...Object.keys(expected.head_at_x).map((x) => ({ name: x, x: Number(x), y: 5 })),
@@ -197,7 +113,7 @@ function island(inputs: CircleInputs, cell: number, unconfined: boolean): Soluti
   const half = (cells * cell) / 2
   const rim = circle(inputs.R_m)
   const k = unconfined ? inputs.K_m_s : inputs.T_m2_s
-  return solved({
+  return solvedByBoth({
     flow: unconfined ? 'unconfined' : 'confined',
     materials: [{ name: 'Ground', kx: k, ky: k }],
     ground: [
@@ -205,9 +121,7 @@ function island(inputs: CircleInputs, cell: number, unconfined: boolean): Soluti
     ],
     extent: { x: [-half, half], y: [-half, half] },
     grid: { columns: cells, rows: cells },
-    wells: [
-      { name: 'Well', x: 0, y: 0, kind: 'abstraction', rate: inputs.Q_m3_s, radius: inputs.r_m[0] as number },
-    ],
+    wells: [abstraction(0, 0, inputs.Q_m3_s, inputs.r_m[0] as number)],
     recharge: inputs.recharge_m_s ? [{ name: 'Rain', rate: inputs.recharge_m_s }] : [],
     boundaries: [fixed('Rim', closed(rim), inputs.H_m ?? inputs.H_rim_m)],
     points: inputs.r_m.slice(1).flatMap((r) => [
@@ -235,7 +149,7 @@ describe.each([
         expect(error / (inputs.H_m - level)).toBeLessThan(0.01)
       }
     }
-    const face = solution.result.wells[0]?.wellHead[0] as number
+    const face = faceHead(solution)
     const level = expected.head[0] as number
     expect(Math.abs(face - level) / (inputs.H_m - level)).toBeLessThan(0.01)
     if (unconfined) return
@@ -283,45 +197,17 @@ describe('PS-08', () => {
 
   it(`${title} (${source})`, () => {
     const a = inputs.x_extent_m / 2
-    const solution = solved({
+    const solution = solvedByBoth({
       ...sheet(inputs.T_m2_s),
       extent: { x: [-a, a], y: [-a, a] },
       grid: { columns: 100, rows: 100 },
       recharge: [{ name: 'Rain', rate: inputs.recharge_m_s }],
       solver: { tolerance: 3e-14 },
       boundaries: [
-        fixed(
-          'West',
-          [
-            [-a, -a],
-            [-a, a],
-          ],
-          inputs.H_m,
-        ),
-        fixed(
-          'East',
-          [
-            [a, -a],
-            [a, a],
-          ],
-          inputs.H_m,
-        ),
-        fixed(
-          'South',
-          [
-            [-a, -a],
-            [a, -a],
-          ],
-          inputs.H_m,
-        ),
-        fixed(
-          'North',
-          [
-            [-a, a],
-            [a, a],
-          ],
-          inputs.H_m,
-        ),
+        fixed('West', between([-a, -a], [-a, a]), inputs.H_m),
+        fixed('East', between([a, -a], [a, a]), inputs.H_m),
+        fixed('South', between([-a, -a], [a, -a]), inputs.H_m),
+        fixed('North', between([-a, a], [a, a]), inputs.H_m),
       ],
       points: inputs.points_from_centre_m.map(([x, y], index) => ({ name: String(index), x, y })),
     })
@@ -348,48 +234,19 @@ describe('PS-09', () => {
     const { Q_m3_s: rate, T_m2_s: t, distance_m: a } = inputs
     const level = ([x, y]: Position) =>
       (-rate / (4 * Math.PI * t)) * Math.log(((x + a) ** 2 + y * y) / ((x - a) ** 2 + y * y))
-    const along = (from: Position, to: Position): Position[] =>
-      Array.from(
-        { length: 201 },
-        (_, k): Position => [
-          from[0] + ((to[0] - from[0]) * k) / 200,
-          from[1] + ((to[1] - from[1]) * k) / 200,
-        ],
-      )
     const far = (name: string, from: Position, to: Position) => {
-      const line = along(from, to)
+      const line = between(from, to, 200)
       return fixed(name, line, line.map(level))
     }
-    const solution = solved({
+    const solution = solvedByBoth({
       ...sheet(t),
       extent: { x: [0, 1000], y: [-1000, 1000] },
       grid: { columns: 100, rows: 200 },
-      wells: [{ name: 'Well', x: a, y: 0, kind: 'abstraction', rate, radius: 0.2 }],
+      wells: [abstraction(a, 0, rate, 0.2)],
       boundaries: [
-        fixed(
-          'River south',
-          [
-            [0, -1000],
-            [0, -60],
-          ],
-          0,
-        ),
-        fixed(
-          'River',
-          [
-            [0, -60],
-            [0, 60],
-          ],
-          0,
-        ),
-        fixed(
-          'River north',
-          [
-            [0, 60],
-            [0, 1000],
-          ],
-          0,
-        ),
+        fixed('River south', between([0, -1000], [0, -60]), 0),
+        fixed('River', between([0, -60], [0, 60]), 0),
+        fixed('River north', between([0, 60], [0, 1000]), 0),
         far('South', [0, -1000], [1000, -1000]),
         far('East', [1000, -1000], [1000, 1000]),
         far('North', [0, 1000], [1000, 1000]),
@@ -401,7 +258,7 @@ describe('PS-09', () => {
       const drawdown = expected.drawdown[index] as number
       expect(Math.abs(-head(solution, String(index)) - drawdown)).toBeLessThanOrEqual(0.01 * drawdown + 1e-9)
     })
-    const face = -(solution.result.wells[0]?.wellHead[0] as number)
+    const face = -faceHead(solution)
     expect(relative(face, expected.drawdown[0] as number)).toBeLessThan(0.01)
     const river = intoModel(solution, 'River')
     expect(relative(river, expected.river_inflow_between_minus60_and_60_m3_s)).toBeLessThan(0.01)
@@ -416,28 +273,14 @@ describe('PS-10', () => {
 
   it(`${title} (${source})`, () => {
     const [x, y] = inputs.well_xy_m
-    const solution = solved({
+    const solution = solvedByBoth({
       ...sheet(inputs.T_m2_s),
       extent: { x: [0, inputs.width_m], y: [-800, 800] },
       grid: { columns: 40, rows: 160 },
-      wells: [{ name: 'Well', x, y, kind: 'abstraction', rate: inputs.Q_m3_s, radius: 0.25 }],
+      wells: [abstraction(x, y, inputs.Q_m3_s, 0.25)],
       boundaries: [
-        fixed(
-          'West',
-          [
-            [0, -800],
-            [0, 800],
-          ],
-          0,
-        ),
-        fixed(
-          'East',
-          [
-            [inputs.width_m, -800],
-            [inputs.width_m, 800],
-          ],
-          0,
-        ),
+        fixed('West', between([0, -800], [0, 800]), 0),
+        fixed('East', between([inputs.width_m, -800], [inputs.width_m, 800]), 0),
       ],
       points: inputs.points_xy_m.map(([px, py], index) => ({ name: String(index), x: px, y: py })),
     })
@@ -447,7 +290,7 @@ describe('PS-10', () => {
       const drawdown = expected.drawdown[index] as number
       expect(relative(-head(solution, String(index)), drawdown)).toBeLessThan(0.005)
     })
-    const face = -(solution.result.wells[0]?.wellHead[0] as number)
+    const face = -faceHead(solution)
     expect(relative(face, expected.drawdown[0] as number)).toBeLessThan(0.005)
     expect(relative(intoModel(solution, 'West'), expected.inflow_from_x0_side)).toBeLessThan(1e-6)
     expect(relative(intoModel(solution, 'East'), expected.inflow_from_xL_side)).toBeLessThan(1e-6)
@@ -464,22 +307,8 @@ describe('PS-13', () => {
   )
   const materials = inputs.series.map((zone, k) => ({ name: `Zone ${k}`, kx: zone.T_m2_s, ky: zone.T_m2_s }))
   const boundaries = [
-    fixed(
-      'Left',
-      [
-        [0, 0],
-        [0, 400],
-      ],
-      inputs.h_left,
-    ),
-    fixed(
-      'Right',
-      [
-        [400, 0],
-        [400, 400],
-      ],
-      inputs.h_right,
-    ),
+    fixed('Left', between([0, 0], [0, 400]), inputs.h_left),
+    fixed('Right', between([400, 0], [400, 400]), inputs.h_right),
   ]
   const box = { extent: { x: [0, 400] as Position, y: [0, 400] as Position }, materials, boundaries }
   const zones = (along: 'x' | 'y') =>
@@ -504,7 +333,7 @@ describe('PS-13', () => {
     })
 
   it(`${title}: in series (${source})`, () => {
-    const solution = solved({
+    const solution = solvedByBoth({
       ...box,
       grid: { columns: 40, rows: 2 },
       ground: zones('x'),
@@ -525,7 +354,7 @@ describe('PS-13', () => {
   })
 
   it(`${title}: in parallel (${source})`, () => {
-    const solution = solved({
+    const solution = solvedByBoth({
       ...box,
       grid: { columns: 2, rows: 40 },
       ground: zones('y'),
@@ -550,27 +379,13 @@ describe('PS-15', () => {
   >('PS-15')
   const { width_m: width, length_each_side_m: length } = inputs
   const strip = (walled: boolean) =>
-    solved({
+    solvedByBoth({
       ...sheet(inputs.T_m2_s),
       extent: { x: [-length, length], y: [0, width] },
       grid: { columns: 240, rows: 40 },
       boundaries: [
-        fixed(
-          'Up',
-          [
-            [-length, 0],
-            [-length, width],
-          ],
-          inputs.head_difference_m,
-        ),
-        fixed(
-          'Down',
-          [
-            [length, 0],
-            [length, width],
-          ],
-          0,
-        ),
+        fixed('Up', between([-length, 0], [-length, width]), inputs.head_difference_m),
+        fixed('Down', between([length, 0], [length, width]), 0),
       ],
       walls: walled
         ? [
