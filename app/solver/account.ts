@@ -9,6 +9,7 @@ import type { Balance, KindFlow, NamedFlow, PointResult, Result, RingResult, Wel
 import { ringAreas } from './rings'
 import { engineVersion } from './version'
 import { warningsOf } from './warnings'
+import { freeSurfaceOf, sectionPoints, seepageFacesOf } from './water-table'
 import { cellHeadOf, wellHeadOf } from './well-heads'
 
 /** The result of a run: heads, flows and balance by name at every reported time, and how the run went. */
@@ -48,19 +49,31 @@ export function resultOf(model: Model, run: RunRecord): Result {
     leakage: namedFlows(model.leakage, reports, (report) => report.moment.leakage),
     balance,
     noFlowEdges: noFlowEdgesOf(first.d),
+    ...sectionResults(reports[end] as Report),
     warnings: [...layoutWarnings(reports), ...warningsOf(run, throughflow)],
     history: run.history,
     headError: run.headError,
   }
 }
 
-/** Heads of an outcome in the model's datum, NaN where there is no ground. */
-export function headsOut(d: Discretised, { heads }: Outcome): Float64Array {
+/** Heads of an outcome in the model's datum, NaN where there is no ground and above a free surface. */
+export function headsOut(d: Discretised, { heads, saturation }: Outcome): Float64Array {
   const out = new Float64Array(heads.length).fill(Number.NaN)
   for (let cell = 0; cell < heads.length; cell++) {
-    if (d.active[cell] === 1) out[cell] = (heads[cell] as number) + d.reference
+    if (d.active[cell] === 1 && (saturation?.[cell] ?? 1) >= 1)
+      out[cell] = (heads[cell] as number) + d.reference
   }
   return out
+}
+
+/** What only vertical sections have, at the end. */
+function sectionResults({ d, outcome, moment }: Report): Partial<Result> {
+  if (d.model.kind !== 'section') return {}
+  const { saturation } = outcome
+  return {
+    ...(saturation ? { freeSurface: freeSurfaceOf(d, outcome, saturation) } : {}),
+    seepageFaces: seepageFacesOf(d, outcome, saturation, moment.atOuterFaces),
+  }
 }
 
 /** What laying the stages out had to say, each thing once. */
@@ -71,7 +84,9 @@ function layoutWarnings(reports: Report[]): Result['warnings'] {
 
 function pointsOf(reports: Report[]): PointResult[] {
   const byReport = reports.map(({ d, outcome, moment }) =>
-    pointResults(outcome.flow, outcome.heads, moment.atOuterFaces, d.reference),
+    outcome.saturation
+      ? sectionPoints(d, outcome, outcome.saturation, moment.atOuterFaces)
+      : pointResults(outcome.flow, outcome.heads, moment.atOuterFaces, d.reference),
   )
   return (byReport[0] as PointResult[]).map(({ name }, index) => {
     const all = byReport.map((points) => points[index] as PointResult)

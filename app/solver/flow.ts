@@ -87,7 +87,9 @@ export function flowModelOf(d: Discretised): FlowModel {
     d.exchanges.every(({ kind, floor }) => {
       return kind !== 'drain' && kind !== 'seepage' && floor === Number.NEGATIVE_INFINITY
     })
-  const storage = d.model.time.kind === 'transient' ? storageOf(d) : []
+  // With a free surface storage is a matter of saturation: section-balance.ts.
+  const stores = d.model.time.kind === 'transient' && d.model.flow !== 'free surface'
+  const storage = stores ? storageOf(d) : []
   if (!d.unconfined) {
     const level = (profile: Profile) => profile.top[profile.top.length - 1] as number
     const fullX = d.profiles.map((profile) => transmissivityAt(profile, profile.kx, level(profile)))

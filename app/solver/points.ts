@@ -10,10 +10,11 @@ import { levelOfPotential, potentialAt } from './saturated'
 
 /** Refuses points outside the extent and points on a wall that do not say on which side of it they stand. */
 export function checkPoints(d: Discretised): void {
-  for (const [index, point] of (d.model.points ?? []).entries()) placeOf(d, point, `points[${index}]`)
+  for (const [index, point] of (d.model.points ?? []).entries()) placeOfPoint(d, point, `points[${index}]`)
 }
 
-function placeOf(d: Discretised, point: Point, path: string): [x: number, y: number] {
+/** Where a point's head is read: beside a wall, a hair to the side it says. */
+export function placeOfPoint(d: Discretised, point: Point, path: string): [x: number, y: number] {
   const x = requireFinite(point.x, `${path}.x`)
   const y = requireFinite(point.y, `${path}.y`)
   if (cellAt(d.grid, x, y) < 0) {
@@ -46,7 +47,7 @@ export function pointResults(
 ): PointResult[] {
   const { d } = flow
   return (d.model.points ?? []).map((point, index) => {
-    const [x, y] = placeOf(d, point, `points[${index}]`)
+    const [x, y] = placeOfPoint(d, point, `points[${index}]`)
     const head = headAt(flow, heads, inflow, x, y)
     if (head === 'no ground') return { name: point.name, head: [null], why: 'there is no ground here' }
     if (head === 'hidden') {

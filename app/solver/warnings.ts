@@ -3,6 +3,7 @@ import type { FlowModel, ProfileFlow } from './flow'
 import type { Report, RunRecord } from './record'
 import type { Warning } from './result'
 import { verticalFlowWarnings } from './vertical-flow'
+import { freeSurfaceWarnings, suctionWarnings } from './water-table'
 import { lowestLevelOf } from './well-heads'
 
 /**
@@ -29,6 +30,8 @@ export function warningsOf(run: RunRecord, throughflow: number): Warning[] {
     }
   }
   warnings.push(...levelWarnings(outcome.flow, outcome.heads))
+  if (outcome.saturation) warnings.push(...freeSurfaceWarnings(d, outcome, outcome.saturation))
+  else if (d.model.kind === 'section') warnings.push(...suctionWarnings(d, outcome))
   if (run.converged) warnings.push(...verticalFlowWarnings(run.reports))
   return warnings
 }
@@ -73,7 +76,7 @@ function reducedWells(reports: Report[]): Warning[] {
       const asked = Math.abs(well.requested)
       const lack = asked - rate
       if (lack <= 1e-6 * asked || lack <= (most.get(well.name)?.lack ?? 0)) return
-      const own = lowestLevelOf(outcome.flow, well) <= well.lowestLevel
+      const own = Number.isFinite(well.lowestLevel) && lowestLevelOf(outcome.flow, well) <= well.lowestLevel
       const when = d.model.time.kind === 'transient' ? ` at time ${time}` : ''
       most.set(well.name, {
         lack,
@@ -119,7 +122,7 @@ function levelWarnings(flow: FlowModel, heads: Float64Array): Warning[] {
     const number = d.profileOf[cell] as number
     if (d.unconfined) {
       if (isDry(flow, heads, cell)) dry++
-    } else {
+    } else if (d.model.kind === 'plan') {
       const { top } = d.profiles[number] as Discretised['profiles'][number]
       if (h < (top[top.length - 1] as number)) belowTop++
     }
