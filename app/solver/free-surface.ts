@@ -59,7 +59,7 @@ interface Search {
   balance: SectionBalance
   step: LinearStep
   matrix: Matrix
-  /** Has the matrix to be set up for the wet set, or since a solve that scaled it? */
+  /** Has the linear solver to be set up anew for the wet set? */
   stale: boolean
   storage: StorageTerm | null
   tolerance: number
@@ -320,12 +320,10 @@ function hairOf({ balance }: Search): number {
 /** About the solution of the wet cells' symmetric equations, water that leaves the wet set taken as lost. */
 function nearly(run: Search, r: Float64Array, out: Float64Array): boolean {
   const { step } = run
-  if (run.stale) {
-    setMatrix(run)
-    step.stale = true
-  }
+  step.stale = run.stale
   // Relaxation scales the matrix in place.
-  run.stale = step.method === 'sor'
+  if (run.stale || step.method === 'sor') setMatrix(run)
+  run.stale = false
   const start = run.iterations
   const outcome = step.solve(run.matrix, r, {
     target: 1e-2 * norm2(r),

@@ -56,6 +56,7 @@ export function linearStepOf(method: Method, d: Discretised, kernels: Kernels | 
 /** Successive over-relaxation (sor.ts), zones that hang together corrected as a whole where that is worth it. */
 function relaxation(d: Discretised): LinearStep {
   const { columns, rows } = d.grid
+  let known: ReturnType<typeof relaxationOf> | null = null
   const step: LinearStep = {
     method: 'sor',
     stale: true,
@@ -63,7 +64,8 @@ function relaxation(d: Discretised): LinearStep {
     lambda: 1,
     kernels: 'typescript',
     solve(matrix, rightHandSide, options) {
-      const { lambda, zones } = relaxationOf(step, d, matrix)
+      if (step.stale || !known) known = relaxationOf(step, d, matrix)
+      const { lambda, zones } = known
       const system = scaledSystem(matrix, rightHandSide, columns, rows)
       const outcome = relax(system, {
         target: options.target,
