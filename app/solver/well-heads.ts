@@ -1,18 +1,14 @@
 import type { FlowModel, ProfileFlow } from './flow'
 import { type Profile, transmissivityAt } from './ground'
+import { obliqueLogRadii, type PlaneTensor } from './oblique-wells'
 import { levelOfPotential, potentialAt, slopeAt } from './saturated'
 import { logEquivalentRadius, type PlacedWell } from './wells'
 
 /** Geometric mean of the principal transmissivities at a cell; what a well in it meets. */
 export function wellTransmissivity(flow: FlowModel, cell: number, h: number): number {
   const profile = flow.d.profileOf[cell] as number
-  const { kxy } = flow.d.profiles[profile] as Profile
-  if (!flow.d.unconfined) {
-    const cross = transmissivityAt(flow.d.profiles[profile] as Profile, kxy, Number.POSITIVE_INFINITY)
-    return Math.sqrt((flow.fullX[profile] as number) * (flow.fullY[profile] as number) - cross * cross)
-  }
-  const { x, y } = flow.flows[profile] as ProfileFlow
-  return Math.sqrt(slopeAt(x, h) * slopeAt(y, h) - slopeAt({ ...x, k: kxy }, h) ** 2)
+  const { xx, xy, yy } = tensorAt(flow, profile, h)
+  return Math.sqrt(xx * yy - xy * xy)
 }
 
 /** The conductivities' geometric mean a layer, as a discharge potential: unconfined flow to a well. */
@@ -55,7 +51,22 @@ export function logRadii(flow: FlowModel, well: PlacedWell, heads: Float64Array)
   const anisotropy = potentials
     ? slopeAt(potentials.x, heads[main] as number) / slopeAt(potentials.y, heads[main] as number)
     : (flow.fullX[profile] as number) / (flow.fullY[profile] as number)
+  const { kxy } = flow.d.profiles[profile] as Profile
+  if (kxy.some((cross) => cross !== 0)) {
+    return obliqueLogRadii(places, dx, dy, tensorAt(flow, profile, heads[main] as number), well.radius)
+  }
   return logEquivalentRadius(places, dx, dy, anisotropy) - Math.log(well.radius)
+}
+
+function tensorAt(flow: FlowModel, profile: number, h: number): PlaneTensor {
+  const ground = flow.d.profiles[profile] as Profile
+  const potentials = flow.flows[profile]
+  if (!potentials) {
+    const xy = transmissivityAt(ground, ground.kxy, Number.POSITIVE_INFINITY)
+    return { xx: flow.fullX[profile] as number, xy, yy: flow.fullY[profile] as number }
+  }
+  const { x, y } = potentials
+  return { xx: slopeAt(x, h), xy: slopeAt({ ...x, k: ground.kxy }, h), yy: slopeAt(y, h) }
 }
 
 export function mainCell(well: PlacedWell): number {
