@@ -2,6 +2,7 @@ import type { Discretised } from './discretise'
 import { faceBetweenColumns, faceBetweenRows, faceOf } from './faces'
 import type { FlowModel, ProfileFlow } from './flow'
 import { cellAt } from './grid'
+import { type Profile, transmissivityAt } from './ground'
 import type { Point } from './model'
 import { ModelError, requireFinite } from './model-error'
 import { stencilAt, wallAt, weightOf } from './placing'
@@ -124,13 +125,36 @@ function continued(
       ? faceBetweenColumns(d.grid, column + step, row)
       : faceBetweenRows(d.grid, column, row + step)
   const own = heads[cell] as number
-  const q = inflow.get(face)
-  if (!q) return own
+  const q = inflow.get(face) ?? 0
+  if (q === 0 && !d.corners) return own
   const { length, lowHalf, highHalf } = faceOf(d.grid, face)
   const half = towardsHigh ? lowHalf : highHalf
   const beyond = (towardsHigh ? highHalf : lowHalf) || half
-  const faceHead = headBehind(flow, cell, axis, own, (q * half) / length)
+  let rise = (q * half) / length
+  // Askew to the grid a gradient along the face drives flow through it, and the rest is what the head beyond drives.
+  if (d.corners) rise += (towardsHigh ? -1 : 1) * half * drivenAcross(flow, heads, cell, axis)
+  const faceHead = headBehind(flow, cell, axis, own, rise)
   return own + ((faceHead - own) * (half + beyond)) / half
+}
+
+/** Cross term of the transmissivity times the gradient along a face of the given axis, from the cells beside this one. */
+function drivenAcross(flow: FlowModel, heads: Float64Array, cell: number, axis: 'x' | 'y'): number {
+  const { d } = flow
+  const { columns, rows } = d.grid
+  const profile = d.profiles[d.profileOf[cell] as number] as Profile
+  const j = Math.floor(cell / columns)
+  const at = axis === 'x' ? j : cell - j * columns
+  const edges = axis === 'x' ? d.grid.yEdges : d.grid.xEdges
+  const step = axis === 'x' ? columns : 1
+  const centre = (k: number) => ((edges[k] as number) + (edges[k + 1] as number)) / 2
+  const low = at > 0 && d.active[cell - step] === 1 ? -1 : 0
+  const high = at < (axis === 'x' ? rows : columns) - 1 && d.active[cell + step] === 1 ? 1 : 0
+  if (low === high) return 0
+  const gradient =
+    ((heads[cell + high * step] as number) - (heads[cell + low * step] as number)) /
+    (centre(at + high) - centre(at + low))
+  const own = heads[cell] as number
+  return transmissivityAt(profile, profile.kxy, d.unconfined ? own : Number.POSITIVE_INFINITY) * gradient
 }
 
 function headBehind(flow: FlowModel, cell: number, axis: 'x' | 'y', own: number, rise: number): number {

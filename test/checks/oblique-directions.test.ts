@@ -53,7 +53,7 @@ describe('PS-14 turned against the grid', () => {
   }
 
   it.each([0, 30, 63])(
-    `${title}, at %d degrees: within 2 %% on 5 m cells, at the well face within a millimetre (${source})`,
+    `${title}, at %d degrees: within two percent on 5 m cells, at the well face within a millimetre (${source})`,
     (angle) => {
       const { errors, wellHead, exactWellHead } = differences(angle, 120)
       for (const error of errors) expect(error).toBeLessThan(0.02)
