@@ -1,5 +1,12 @@
 import type { Discretised } from './discretise'
-import { type FlowModel, flowModelOf, type ProfileFlow, type StorageTerm, storedVolumes } from './flow'
+import {
+  emptyMatrix,
+  type FlowModel,
+  flowModelOf,
+  type ProfileFlow,
+  type StorageTerm,
+  storedVolumes,
+} from './flow'
 import { type FlowField, planField } from './flow-field'
 import { freeSurfaceBalancer } from './free-surface'
 import type { Kernels } from './linear/kernels'
@@ -64,6 +71,7 @@ export function balancerOf(
   if (d.model.flow === 'free surface') return freeSurfaceBalancer(d, method, tolerance, options)
   const flow = flowModelOf(d)
   const step = linearStepOf(method, d, options.kernels)
+  const matrix = emptyMatrix(flow)
   const most = mostIterations(method, d.active.length)
   let interval = 0
   return {
@@ -72,7 +80,7 @@ export function balancerOf(
       if ((storage?.interval ?? 0) !== interval) step.stale = true
       interval = storage?.interval ?? 0
       const heads = start ? start.heads.slice() : firstHeads(flow)
-      const run = balancingOf(flow, step, heads, tolerance, most, options)
+      const run = balancingOf(flow, step, matrix, heads, tolerance, most, options)
       run.storage = storage
       const converged = balanceCells(run) && reduceWells(run)
       return outcomeOf(run, step, converged)

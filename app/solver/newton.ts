@@ -1,6 +1,5 @@
 import type { Discretised } from './discretise'
 import {
-  emptyMatrix,
   evaluate,
   type FlowModel,
   type FlowState,
@@ -57,10 +56,14 @@ export interface Balancing {
 
 const mostSteps = 60
 
-/** A fresh balance with the given heads to start from, held cells set to their heads. */
+/**
+ * A fresh balance with the given heads to start from, held cells set to their heads. `matrix` is that of the last
+ * balance that `step` knows, as long as the step is not stale.
+ */
 export function balancingOf(
   flow: FlowModel,
   step: LinearStep,
+  matrix: Matrix,
   heads: Float64Array,
   tolerance: number,
   mostIterations: number,
@@ -79,7 +82,7 @@ export function balancingOf(
     d,
     flow,
     step,
-    matrix: emptyMatrix(flow),
+    matrix,
     state: emptyState(),
     trial: emptyState(),
     heads,
