@@ -165,6 +165,9 @@ export function freezeCase(inputs: CaseInputs, caseId: string): FreezeAnswer {
       rate: inModel(overrideOf(settings.overrides, id, 'rate') ?? well.rate, 'rate'),
       ...(well.radius ? { radius: inModel(well.radius, 'length') } : {}),
       ...(well.lowestLevel ? { lowestLevel: inModel(well.lowestLevel, 'length') } : {}),
+      ...(well.screenTop && well.screenBottom
+        ? { screen: { top: inModel(well.screenTop, 'length'), bottom: inModel(well.screenBottom, 'length') } }
+        : {}),
       ...sourced(well.source),
     })),
     recharge: inputs.rechargeZones.map(({ id, body: zone }) => ({
@@ -179,6 +182,7 @@ export function freezeCase(inputs: CaseInputs, caseId: string): FreezeAnswer {
       line: wall.line,
       thickness: inModel(wall.thickness, 'length'),
       k: inModel(overrideOf(settings.overrides, id, 'k') ?? wall.k, 'conductivity'),
+      ...(wall.toe ? { toe: inModel(wall.toe, 'length') } : {}),
       ...sourced(wall.source),
     })),
     points: inside.map(({ body: { name, x, y, source } }) => ({ name, x, y, ...sourced(source) })),

@@ -1,9 +1,7 @@
-import type { ReactNode } from 'react'
 import { type Column, DataTable } from '~/components/data-table'
-import { Notice } from '~/components/notice'
-import type { NamedFlow, Result, Warning } from '~/solver/result'
+import type { NamedFlow, Result } from '~/solver/result'
 import { formatNumber, formatSigned } from '~/units'
-import { balanceState, byGravity, errorInWords, severityWords } from './account'
+import { balanceState, errorInWords } from './account'
 
 /** A named point of the run, with its head and what is known of the run compared with; in the run's unit. */
 export interface PointLine {
@@ -215,26 +213,6 @@ export function BalanceTables({ result, rate }: { result: Result; rate: string }
           rowKey={(line) => line.name}
         />
       )}
-    </>
-  )
-}
-
-const tones = { serious: 'alarm', check: 'warn', note: 'note' } as const
-
-/** What the run says about itself, the gravest first, each with its severity in words. */
-export function Warnings({ warnings, children }: { warnings: readonly Warning[]; children?: ReactNode }) {
-  return (
-    <>
-      {byGravity(warnings).map((warning) => (
-        <Notice
-          key={`${warning.code} ${warning.text}`}
-          tone={tones[warning.severity]}
-          title={severityWords[warning.severity]}
-        >
-          {warning.text}
-        </Notice>
-      ))}
-      {children}
     </>
   )
 }

@@ -332,11 +332,7 @@ async function storeResult(
         })
       if (changed === 0) throw new Error(`Run ${number} had ended already.`)
       await storePoints(trx, runId, run, result)
-      const done = await trx('runs')
-        .where({ project_id: run.projectId, state: 'done' })
-        .orderBy('id')
-        .select('id', 'input_sha256', 'heads_sha256')
-      await recordSection(trx, run.projectId, 'heads', { runs: done }, run.userId)
+      await recordHeads(trx, run.projectId, run.userId)
       await recordHistory(trx, {
         projectId: run.projectId,
         userId: run.userId,
@@ -355,6 +351,21 @@ async function storeResult(
     await deleteObject(stored.key)
     throw error
   }
+}
+
+/** Records what section 5 holds: its finished runs, and what was accepted of them. In the transaction of the change. */
+export async function recordHeads(trx: Database, projectId: number, userId: number): Promise<void> {
+  const runs = await trx('runs')
+    .where({ project_id: projectId, state: 'done' })
+    .orderBy('id')
+    .select('id', 'input_sha256', 'heads_sha256')
+  const acceptances = await trx('warning_acceptances')
+    .join('runs', 'runs.id', 'warning_acceptances.run_id')
+    .where({ project_id: projectId })
+    .orderBy('warning_acceptances.id')
+    .pluck('warning_acceptances.id')
+  const content = acceptances.length > 0 ? { runs, acceptances } : { runs }
+  await recordSection(trx, projectId, 'heads', content, userId)
 }
 
 /** Version of a head field that arrived whole; throws RangeError when it did not. */

@@ -190,6 +190,8 @@ function content(change: (content: GatheredContent) => void = () => {}): Gathere
         rate: { value: 86.4, unit: 'm3/d' },
         radius: m(0.15),
         lowestLevel: null,
+        screenTop: null,
+        screenBottom: null,
         source: 'WD-1',
       },
     ],
@@ -225,6 +227,7 @@ function content(change: (content: GatheredContent) => void = () => {}): Gathere
         ],
         thickness: m(0.8),
         k: { value: 0.001, unit: 'm/d' },
+        toe: m(-2.5),
         source: 'CW-1',
       },
     ],
@@ -383,8 +386,40 @@ describe('A package of an unusual project', () => {
     expect(paper.words).toContain('No readings were compared with this run.')
     expect(paper.words).toContain('The heads have not been held against any reading.')
     expect(paper.words).toContain('Section 1 of the book is empty.')
-    expect(paper.words).toMatch(/Cut-off walls, over the whole saturated thickness: none/)
+    expect(paper.words).toMatch(/Cut-off walls; in plan each acts over the whole saturated thickness: none/)
     expect(paper.words).not.toContain('5.5 Drawdown')
+  })
+
+  it('prints beside a warning who accepted it, when and why, and says of one that nobody has accepted', async () => {
+    const paper = read(
+      await drawPackage(
+        request((made) => {
+          const warning = (text: string) =>
+            ({ code: 'hanging-wall', severity: 'check', text, accept: true }) as const
+          made.run.result.warnings = [
+            warning('The wall hangs.'),
+            { code: 'n', severity: 'note', text: 'By the way.' },
+          ]
+          made.run.acceptances = [
+            {
+              code: 'hanging-wall',
+              warning: 'The wall hangs.',
+              by: 'I. Sedge',
+              at: '2026-03-02T10:30:00Z',
+              reason: 'A vertical section shows less than 2 % under the toe.',
+            },
+          ]
+          if (made.against) made.against.result.warnings = [warning('The other wall hangs.')]
+        }),
+      ),
+    )
+    expect(paper.words).toMatch(/Warnings of the runs/)
+    const one = paper.drawn().join(' ').replace(/\s+/g, ' ')
+    expect(one).toContain(
+      '2 Look before use The wall hangs. accepted by I. Sedge on 2 Mar 2026: A vertical section shows less than 2 % under the toe.',
+    )
+    expect(one).toContain('2 For information By the way. –')
+    expect(one).toContain('1 Look before use The other wall hangs. by nobody yet: not for issue')
   })
 
   it('says so in words when its run did not converge', async () => {

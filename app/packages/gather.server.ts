@@ -6,6 +6,7 @@ import { findFile } from '~/files/files.server'
 import { inProjectUnit } from '~/fit/fit'
 import { dayOfLastReading, fitOf } from '~/fit/fit.server'
 import type { PlanImage } from '~/ground/ground'
+import { acceptancesOf } from '~/heads/acceptances.server'
 import { findRun, type Run } from '~/heads/runs.server'
 import type { Project } from '~/projects/project'
 import { listImports } from '~/readings/imports.server'
@@ -58,8 +59,8 @@ export async function gatherContent(
     rechargeZones: held(inputs.rechargeZones),
     boundaries: held(inputs.boundaries),
     walls: held(inputs.walls),
-    run: gatheredRun(run),
-    against: against ? gatheredRun(against) : null,
+    run: await gatheredRun(db, run),
+    against: against ? await gatheredRun(db, against) : null,
     instruments: await gatheredInstruments(db, project),
     imports: (await listImports(db, project.id))
       .filter((record) => record.state === 'committed' && record.receipt && record.committedAt)
@@ -91,7 +92,7 @@ function held<Body>(rows: readonly { id: string; body: Body }[]): Held<Body>[] {
   return rows.map(({ id, body }) => ({ ...body, id }))
 }
 
-function gatheredRun(run: Run): GatheredRun {
+async function gatheredRun(db: Database, run: Run): Promise<GatheredRun> {
   if (!run.result || !run.headsSha256) throw new Error(`Run ${run.number} has no result.`)
   return {
     number: run.number,
@@ -103,6 +104,7 @@ function gatheredRun(run: Run): GatheredRun {
     endedAt: (run.endedAt ?? run.createdAt).toISOString(),
     model: run.model,
     result: run.result,
+    acceptances: await acceptancesOf(db, run.projectId, run.id),
   }
 }
 

@@ -3,6 +3,7 @@ import type { SectionKey, SectionState } from '~/book/sections'
 import type { Estimate } from '~/checks/estimate'
 import type { FitStatistics } from '~/fit/statistics'
 import type { Material, PlanImage, Point, Zone } from '~/ground/ground'
+import type { Acceptance } from '~/heads/acceptance'
 import type { Instrument, ReferenceLevel } from '~/readings/instrument'
 import type { Model } from '~/solver/model'
 import type { Result } from '~/solver/result'
@@ -23,6 +24,8 @@ export interface GatheredRun {
   endedAt: string
   model: Model
   result: Result
+  /** Of its warnings, by whom and why; not in packages gathered before there were any. */
+  acceptances?: Acceptance[]
 }
 
 export interface GatheredInstrument extends Held<Instrument> {

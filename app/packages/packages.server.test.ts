@@ -2,6 +2,7 @@ import { execFileSync } from 'node:child_process'
 import { createHash } from 'node:crypto'
 import { afterAll, beforeAll, describe, expect, it } from 'vitest'
 import { checkSection, sectionStates } from '~/book/sections.server'
+import { acceptWarnings } from '~/heads/acceptances.server'
 import { findRun } from '~/heads/runs.server'
 import { findJob, jobEnded } from '~/jobs/jobs.server'
 import type { Project } from '~/projects/project'
@@ -19,6 +20,7 @@ import {
   makePackage,
   packagePdf,
   signPackage,
+  warningsToAccept,
   withdrawPackage,
 } from './packages.server'
 import type { Signature } from './title-block'
@@ -292,4 +294,133 @@ it('All three sign in a row, and the last drawing is the one that is kept', {
   expect(jobs[0].id).toBe(job_id)
   for (const job of jobs) await jobEnded(job.id)
   expect((await found(packageId)).file_id).toBe(file_id)
+})
+
+describe('A package whose run gives a warning that somebody has to accept', { timeout: 240_000 }, () => {
+  const reason = 'The section of sheet 12 gives 3 % under the toe; the heads inside are on the safe side.'
+  let packageId = 0
+  let text = ''
+  const wall = {
+    name: 'Cut-off',
+    line: [
+      [800, 0],
+      [800, 600],
+    ],
+    thickness: { value: 0.8, unit: 'm' },
+    k: { value: 0.01, unit: 'm/d' },
+    toe: { value: -7, unit: 'm' },
+  }
+
+  it('is drawn, and says that nobody has accepted it', async () => {
+    for (const line of await listPackages(fresh.database, project.id)) {
+      if (line.status === 'approved') await withdrawPackage(fresh.database, project, line.id, people.manager)
+    }
+    await strip.save([add('wall', wall)])
+    runId = (await strip.compute()).id
+    packageId = await made('With the wall')
+    const waiting = await warningsToAccept(fresh.database, project.id, await found(packageId))
+    expect(waiting).toEqual([
+      { runId, runNumber: expect.any(Number), text: expect.stringContaining('"Cut-off"') },
+    ])
+    text = waiting[0]?.text ?? ''
+    await drawn(packageId)
+    const pdf = await packagePdf(fresh.database, project.id, packageId)
+    expect(execFileSync('pdftotext', ['-', '-'], { input: pdf?.bytes, encoding: 'utf8' })).toContain(
+      'by nobody yet: not for issue',
+    )
+  })
+
+  it('is signed by nobody, not even by its originator', async () => {
+    expect(await sign(packageId, 'originator')).toEqual({
+      ok: false,
+      message: expect.stringContaining(
+        'a warning that nobody has accepted yet, in section 5: The wall "Cut-off"',
+      ),
+    })
+    expect((await found(packageId)).status).toBe('draft')
+  })
+
+  it('is signed once it is accepted and gathered with who accepted it, when and why', async () => {
+    await acceptWarnings(fresh.database, {
+      projectId: project.id,
+      runId,
+      userId: people.originator,
+      warnings: [text],
+      reason,
+    })
+    // What was gathered before does not print the acceptance.
+    expect(await sign(packageId, 'originator')).toMatchObject({ ok: false })
+    await gatherAgain(fresh.database, project, packageId, people.originator)
+    await signedByAll(packageId)
+    const pdf = await packagePdf(fresh.database, project.id, packageId)
+    const words = execFileSync('pdftotext', ['-raw', '-', '-'], { input: pdf?.bytes, encoding: 'utf8' })
+    expect(words.replace(/\s+/g, ' ')).toMatch(
+      new RegExp(`accepted by O\\. Birch on \\d+ \\w+ \\d{4}: ${reason}`),
+    )
+  })
+
+  it('is not issued if its content holds a warning without its acceptance', async () => {
+    const { gathered } = await found(packageId)
+    const without = JSON.parse(gathered ?? '')
+    without.run.acceptances = []
+    await fresh
+      .database('packages')
+      .where({ id: packageId })
+      .update({ gathered: JSON.stringify(without) })
+    expect(await issuePackage(fresh.database, project, packageId, people.manager)).toEqual({
+      ok: false,
+      message:
+        'A warning was accepted after this package was gathered: gather it again, so that it is printed.',
+    })
+    await fresh.database('packages').where({ id: packageId }).update({ gathered })
+    expect(await issuePackage(fresh.database, project, packageId, people.manager)).toMatchObject({ ok: true })
+    await drawn(packageId)
+    expect((await found(packageId)).status).toBe('issued')
+  })
+
+  it('asks again for a new run of the same input', async () => {
+    runId = (await strip.compute()).id
+    packageId = await made('Computed once more')
+    expect(await sign(packageId, 'originator')).toMatchObject({ ok: false })
+    await withdrawPackage(fresh.database, project, packageId, people.manager)
+  })
+
+  it('asks for the warnings of the run that it is compared with as well', async () => {
+    const before = runId
+    await acceptWarnings(fresh.database, {
+      projectId: project.id,
+      runId,
+      userId: people.originator,
+      warnings: [text],
+      reason,
+    })
+    runId = (await strip.compute()).id
+    const outcome = await makePackage(
+      fresh.database,
+      project,
+      { ...order('Compared'), runId: before, againstRunId: runId },
+      people.manager,
+    )
+    packageId = outcome.ok ? outcome.packageId : 0
+    expect(await warningsToAccept(fresh.database, project.id, await found(packageId))).toMatchObject([
+      { runId },
+    ])
+    expect(await sign(packageId, 'originator')).toMatchObject({ ok: false })
+    await withdrawPackage(fresh.database, project, packageId, people.manager)
+  })
+})
+
+it('A run that says it is not to be used as it is makes no package, converged or not', async () => {
+  const run = await findRun(fresh.database, project.id, runId)
+  const warnings = [
+    { code: 'outflow-from-dry-cells', severity: 'serious', text: 'More than the ground can yield.' },
+  ]
+  const result = JSON.stringify({ ...run?.result, warnings })
+  await fresh.database('runs').where({ id: runId }).update({ result })
+  expect(await makePackage(fresh.database, project, order(), people.manager)).toEqual({
+    ok: false,
+    message: expect.stringContaining(
+      'not to be used as it is, so it cannot be packaged: More than the ground',
+    ),
+  })
 })

@@ -3,6 +3,8 @@ import canonicalize from 'canonicalize'
 import { digestOf, recordSection, sectionStates } from '~/book/sections.server'
 import { environment } from '~/environment.server'
 import { getVerified, putBuffer, recordFile } from '~/files/files.server'
+import { notAccepted } from '~/heads/acceptance'
+import { acceptancesOf } from '~/heads/acceptances.server'
 import { mostBalanceError } from '~/heads/account'
 import { findRun, isStale, runHeads } from '~/heads/runs.server'
 import { cancelJob, enterJob, launchJob } from '~/jobs/jobs.server'
@@ -99,15 +101,69 @@ export async function findPackage(
   return db<PackageRow>('packages').where({ project_id: projectId, id: packageId }).first()
 }
 
-/** Why a run cannot stand in a package; null when it can. */
+/** Why a run, and the one that it is compared with, cannot stand in a package; null when they can. */
+async function runsObjection(
+  db: Database,
+  project: Project,
+  ...runIds: readonly (number | null | undefined)[]
+): Promise<string | null> {
+  for (const runId of runIds) {
+    const objection = runId ? await runObjection(db, project, runId) : null
+    if (objection) return objection
+  }
+  return null
+}
+
 async function runObjection(db: Database, project: Project, runId: number): Promise<string | null> {
   const run = await findRun(db, project.id, runId)
   if (run?.state !== 'done' || !run.result) return 'Choose a run that has finished.'
   if (!run.converged) return `Run ${run.number} did not converge, so it cannot be packaged.`
-  const error = Math.abs(run.result.balance.errorPercent[0] ?? Number.POSITIVE_INFINITY)
+  const error = run.result.balance.errorPercent.reduce((worst, one) => Math.max(worst, Math.abs(one)), 0)
   if (!(error <= mostBalanceError))
     return `The water balance of run ${run.number} is out by ${error} %, so it cannot be packaged.`
+  const serious = run.result.warnings.find(({ severity }) => severity === 'serious')
+  if (serious)
+    return `Run ${run.number} is not to be used as it is, so it cannot be packaged: ${serious.text}`
   return null
+}
+
+/** What nobody has accepted yet of the warnings of a package's runs, that of its run of record first. */
+export async function warningsToAccept(
+  db: Database,
+  projectId: number,
+  runs: { run_id: number; against_run_id: number | null },
+): Promise<{ runId: number; runNumber: number; text: string }[]> {
+  const found = await Promise.all(
+    [runs.run_id, runs.against_run_id].map((id) => (id ? findRun(db, projectId, id) : undefined)),
+  )
+  const waiting = found.map(async (run) =>
+    run?.result
+      ? notAccepted(run.result.warnings, await acceptancesOf(db, projectId, run.id)).map(
+          ({ text: said }) => ({
+            runId: run.id,
+            runNumber: run.number,
+            text: said,
+          }),
+        )
+      : [],
+  )
+  return (await Promise.all(waiting)).flat()
+}
+
+/** Why nobody may sign or issue yet, as far as warnings go; null when all that need it are accepted, and printed so. */
+async function acceptanceObjection(db: Database, projectId: number, row: PackageRow): Promise<string | null> {
+  const [first, ...others] = await warningsToAccept(db, projectId, row)
+  if (first) {
+    const more = others.length > 0 ? ` (and ${others.length} more)` : ''
+    return `Run ${first.runNumber} gives a warning that nobody has accepted yet, in section 5${more}: ${first.text}`
+  }
+  const content = row.gathered === null ? null : (JSON.parse(row.gathered) as GatheredContent)
+  const printedOpen = [content?.run, content?.against].some(
+    (run) => run && notAccepted(run.result.warnings, run.acceptances ?? []).length > 0,
+  )
+  return printedOpen
+    ? 'A warning was accepted after this package was gathered: gather it again, so that it is printed.'
+    : null
 }
 
 /**
@@ -120,7 +176,7 @@ export async function makePackage(
   input: NewPackage,
   userId: number,
 ): Promise<Outcome> {
-  const objection = await runObjection(db, project, input.runId)
+  const objection = await runsObjection(db, project, input.runId, input.againstRunId)
   if (objection) return { ok: false, message: objection }
   // Before the content: what changes while it is gathered counts as moved, never as gathered.
   const sectionsDigest = await digestOf(db, project.id, printed)
@@ -305,7 +361,9 @@ async function signObjection(
   if (await isStale(db, project, run)) {
     return `The inputs have changed since run ${run.number}: run the case again and gather again.`
   }
-  const objection = await runObjection(db, project, row.run_id)
+  const objection =
+    (await runsObjection(db, project, row.run_id, row.against_run_id)) ??
+    (await acceptanceObjection(db, project.id, row))
   if (objection) return objection
   if (role === 'originator') return null
   if (await hasMadeAnyOf(db, project.id, packageId, row.run_id, userId)) {
@@ -378,6 +436,10 @@ export async function issuePackage(
   if (await bookHasMoved(db, project.id, packageId)) {
     return { ok: false, message: 'The book has changed since this package was gathered: gather it again.' }
   }
+  const objection =
+    (await runsObjection(db, project, row.run_id, row.against_run_id)) ??
+    (await acceptanceObjection(db, project.id, row))
+  if (objection) return { ok: false, message: objection }
   const under =
     row.job_id &&
     (await db('jobs').where({ id: row.job_id }).whereIn('state', ['queued', 'running']).first('id'))

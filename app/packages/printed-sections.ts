@@ -2,7 +2,8 @@ import { DateTime } from 'luxon'
 import type { Content } from 'pdfmake/interfaces'
 import { lineLength, signedArea, type Vertex } from '~/book/field'
 import { sections } from '~/book/sections'
-import { mostBalanceError } from '~/heads/account'
+import { acceptanceInWords, acceptanceOf } from '~/heads/acceptance'
+import { byGravity, mostBalanceError, severityWords } from '~/heads/account'
 import type { HeadField } from '~/heads/field'
 import { levelUnit } from '~/projects/project'
 import { decodeHeads } from '~/solver/heads-buffer'
@@ -283,6 +284,13 @@ function waterSection(content: GatheredContent): Content[] {
           { head: 'Rate', unit: rate.unit, cell: (w) => rate.show(w.rate) },
           { head: 'Radius', unit: length, optional: true, cell: (w) => level.show(w.radius, 2) },
           { head: 'Lowest level', unit: length, optional: true, cell: (w) => level.show(w.lowestLevel, 2) },
+          {
+            head: 'Screen',
+            unit: length,
+            optional: true,
+            cell: (w) =>
+              w.screenTop ? `${level.show(w.screenTop, 2)} to ${level.show(w.screenBottom, 2)}` : '–',
+          },
         ],
         content.wells,
       ),
@@ -344,7 +352,7 @@ function waterSection(content: GatheredContent): Content[] {
       'Cut-off walls',
       sourcedTable(
         '3.4',
-        'Cut-off walls, over the whole saturated thickness',
+        'Cut-off walls; in plan each acts over the whole saturated thickness',
         [
           { head: 'Wall', cell: (w) => w.name },
           { head: 'Length', unit: length, cell: (w) => formatNumber(lineLength(w.line as Vertex[]), 1) },
@@ -354,6 +362,7 @@ function waterSection(content: GatheredContent): Content[] {
             unit: speed.unit,
             cell: (w) => (w.k.value === 0 ? 'impermeable' : speed.show(w.k)),
           },
+          { head: 'Toe level', unit: length, optional: true, cell: (w) => level.show(w.toe, 2) },
         ],
         content.walls,
       ),
@@ -453,18 +462,44 @@ function casesSection(content: GatheredContent): Content[] {
         ['Model file (SHA-256)', run.inputSha256],
         ['Head field (SHA-256)', run.headsSha256],
       ]),
-      result.warnings.length > 0
-        ? table(
-            '4.1',
-            'Warnings of the run',
-            [
-              { head: 'Severity', cell: (w) => w.severity },
-              { head: 'Warning', words: true, cell: (w) => w.text },
-            ],
-            result.warnings,
-          )
-        : text('The run gave no warning.'),
+      warningsTable(content),
     ),
+  )
+}
+
+/** Warnings of the run, and of the one it is compared with, each with who accepted it and why where that is needed. */
+function warningsTable(content: GatheredContent): Piece {
+  const { run, against } = content
+  const rows = [run, ...(against ? [against] : [])].flatMap(({ number, result, acceptances }) =>
+    byGravity(result.warnings).map((warning) => ({
+      run: number,
+      severity: severityWords[warning.severity],
+      text: warning.text,
+      acceptance: acceptanceOf(warning, acceptances ?? []),
+      open: warning.accept === true,
+    })),
+  )
+  if (rows.length === 0) return text(against ? 'The runs gave no warning.' : 'The run gave no warning.')
+  return table(
+    '4.1',
+    against ? 'Warnings of the runs' : 'Warnings of the run',
+    [
+      ...(against ? [{ head: 'Run', cell: (w: (typeof rows)[number]) => String(w.run) }] : []),
+      { head: 'Severity', words: true, cell: (w) => w.severity },
+      { head: 'Warning', words: true, cell: (w) => w.text },
+      {
+        head: 'Accepted',
+        words: true,
+        optional: true,
+        cell: (w) =>
+          w.acceptance
+            ? acceptanceInWords(w.acceptance, (iso) => localDay(content, iso))
+            : w.open
+              ? 'by nobody yet: not for issue'
+              : '–',
+      },
+    ],
+    rows,
   )
 }
 

@@ -39,6 +39,7 @@ const table = {
     settings: ['project manager'],
   },
   run: { case: ['originator'] },
+  accept: { warning: ['originator'] },
   import: { readings: ['data', 'originator'] },
   check: { section: ['checker'] },
   make: { package: makers },

@@ -243,7 +243,7 @@ describe('a toe or a screen that cannot be', () => {
     expect(refused(sandOnClay({ wells: [pumped({ screen: { top: Number.NaN, bottom: 3 } })] }))).toBe(
       'wells[0].screen.top',
     )
-    const section = { kind: 'section', flow: 'saturated', ground: [{ material: 'Sand' }] } as const
+    const section: Partial<Model> = { kind: 'section', flow: 'saturated', ground: [{ material: 'Sand' }] }
     const wall = { name: 'Cut-off', line: wallAcross, thickness: 1, k: 0, toe: 2 }
     expect(refused(sandOnClay({ ...section, walls: [wall] }))).toBe('walls[0].toe')
   })

@@ -38,6 +38,8 @@ describe('rows of the water section on the drawing', () => {
       rate: { value: 10, unit: 'm3/d' },
       radius: null,
       lowestLevel: null,
+      screenTop: null,
+      screenBottom: null,
       source: '',
     }
     expect(wellFeatures([row('a', 'well', well)])[0]).toEqual({

@@ -1,20 +1,32 @@
 import { z } from 'zod'
 import { coordinate, notNegative, polygon, polyline, positive, quantity, source, text } from '~/book/field'
 import { list } from '~/book/list'
+import { convert } from '~/units'
 
 export const wellKinds = ['abstraction', 'recharge'] as const
 
 /** A well. Its kind gives the direction; the rate carries no sign. */
-export const wellSchema = z.strictObject({
-  name: text(40, 'Name the well.'),
-  x: coordinate,
-  y: coordinate,
-  kind: z.enum(wellKinds, { error: 'Choose abstraction or recharge.' }),
-  rate: notNegative('rate', 'A rate'),
-  radius: positive('length', 'The radius').nullable().default(null),
-  lowestLevel: quantity('length').nullable().default(null),
-  source,
-})
+export const wellSchema = z
+  .strictObject({
+    name: text(40, 'Name the well.'),
+    x: coordinate,
+    y: coordinate,
+    kind: z.enum(wellKinds, { error: 'Choose abstraction or recharge.' }),
+    rate: notNegative('rate', 'A rate'),
+    radius: positive('length', 'The radius').nullable().default(null),
+    lowestLevel: quantity('length').nullable().default(null),
+    /** Levels between which the well is open; blank = over the whole saturated thickness. */
+    screenTop: quantity('length').nullable().default(null),
+    screenBottom: quantity('length').nullable().default(null),
+    source,
+  })
+  .superRefine(({ screenTop, screenBottom }, context) => {
+    const say = (path: string, message: string) => context.addIssue({ code: 'custom', path: [path], message })
+    if (screenTop && !screenBottom) say('screenBottom', 'A screen needs its bottom as well as its top.')
+    else if (screenBottom && !screenTop) say('screenTop', 'A screen needs its top as well as its bottom.')
+    else if (screenTop && screenBottom && convert(screenBottom, screenTop.unit) >= screenTop.value)
+      say('screenBottom', 'The bottom of the screen must lie below its top.')
+  })
 export type Well = z.infer<typeof wellSchema>
 
 /** Recharge over a polygon, or everywhere; zones add up where they overlap. */
@@ -62,12 +74,14 @@ export const boundarySchema = z
   })
 export type Boundary = z.infer<typeof boundarySchema>
 
-/** A cut-off wall over the whole saturated thickness; conductivity 0 is impermeable. */
+/** A cut-off wall; conductivity 0 is impermeable. In plan it acts over the whole saturated thickness. */
 export const wallSchema = z.strictObject({
   name: text(80, 'Name the wall.'),
   line: polyline,
   thickness: positive('length', 'The thickness'),
   k: notNegative('conductivity', 'Hydraulic conductivity'),
+  /** Level of its lower end; blank = at the base of the ground or below. */
+  toe: quantity('length').nullable().default(null),
   source,
 })
 export type Wall = z.infer<typeof wallSchema>

@@ -93,7 +93,7 @@ export const access: Record<string, Access> = {
   '/projects/:projectId/ground': section,
   '/projects/:projectId/water': section,
   '/projects/:projectId/cases': section,
-  '/projects/:projectId/heads': section,
+  '/projects/:projectId/heads': { get: only(team, 'shown'), post: only(['originator'], 'let through') },
   '/projects/:projectId/readings': section,
   '/projects/:projectId/readings/imports/:importId': {
     get: only(team, 'shown'),

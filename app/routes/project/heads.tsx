@@ -1,5 +1,7 @@
+import type { SubmissionResult } from '@conform-to/react'
+import { parseWithZod } from '@conform-to/zod/v4'
 import { type FormEvent, useMemo, useState } from 'react'
-import { href, Link, type ShouldRevalidateFunctionArgs, useSearchParams } from 'react-router'
+import { data, href, Link, type ShouldRevalidateFunctionArgs, useSearchParams } from 'react-router'
 import { CheckButton } from '~/book/check-button'
 import { sectionStatus } from '~/book/sections.server'
 import { Button, DownloadButton } from '~/components/button'
@@ -8,14 +10,17 @@ import { Caution, Notice } from '~/components/notice'
 import { saveBlob } from '~/components/save-blob'
 import { type Carried, Heading, type Reference, SectionPage } from '~/components/section-page'
 import { toCsv } from '~/components/spreadsheet'
+import { acceptanceSchema } from '~/heads/acceptance'
+import { acceptancesOf, acceptWarnings } from '~/heads/acceptances.server'
 import { balanceState, errorInWords, listed, recordInWords } from '~/heads/account'
 import { automaticInterval, mostContours } from '~/heads/contours'
 import { featuresOf, groundAt } from '~/heads/features'
 import { drawdownBetween, type HeadField, rangeOf } from '~/heads/field'
 import { headsCsv } from '~/heads/heads-csv'
 import { type FigureOfRun, HeadsFigure } from '~/heads/heads-figure'
-import { BalanceTables, type PointLine, PointTable, Warnings, WellTable } from '~/heads/heads-tables'
+import { BalanceTables, type PointLine, PointTable, WellTable } from '~/heads/heads-tables'
 import { type RunLine, shortHash, underWay } from '~/heads/run'
+import { RunWarnings } from '~/heads/run-warnings'
 import { findRun, listRuns, type Run, runPoints } from '~/heads/runs.server'
 import { useHeads } from '~/heads/use-heads'
 import { permit } from '~/projects/guard.server'
@@ -43,14 +48,31 @@ export async function loader({ request, context, params }: Route.LoaderArgs) {
     project: { number: project.number, verticalDatum: project.verticalDatum, timeZone: project.timeZone },
     mayRun: can(member, 'run', 'case'),
     mayCheck: can(member, 'check', 'section'),
+    mayAccept: can(member, 'accept', 'warning'),
     status: await sectionStatus(db, project.id, 'heads'),
     finished,
     open: runs.filter((line) => underWay(line.state)),
     line: chosen,
     run: run && shownRun(run),
     points: run ? await pointLines(db, project.id, run, against) : [],
+    acceptances: run ? await acceptancesOf(db, project.id, run.id) : [],
     against: against && run && comparedRun(run, against),
   }
+}
+
+/** Accepts the ticked warnings of a run, with a reason. */
+export async function action({ request, context }: Route.ActionArgs) {
+  const { project, member } = permit(context, 'accept', 'warning')
+  const submission = parseWithZod(await request.formData(), { schema: acceptanceSchema })
+  if (submission.status !== 'success') return data({ submission: submission.reply() }, { status: 400 })
+  const answer = await acceptWarnings(database(), {
+    projectId: project.id,
+    userId: member.userId,
+    ...submission.value,
+  })
+  return answer.ok
+    ? data({ submission: submission.reply({ resetForm: true }) }, { status: 200 })
+    : data({ submission: submission.reply({ formErrors: [answer.message] }) }, { status: 400 })
 }
 
 type Database = Parameters<typeof listRuns>[0]
@@ -127,8 +149,12 @@ function isReady(data: Loaded): data is Ready {
   return data.line !== undefined && data.run?.result != null
 }
 
-export default function Heads({ loaderData }: Route.ComponentProps) {
-  return isReady(loaderData) ? <Computed data={loaderData} /> : <NotComputed data={loaderData} />
+export default function Heads({ loaderData, actionData }: Route.ComponentProps) {
+  return isReady(loaderData) ? (
+    <Computed data={loaderData} sent={actionData?.submission} />
+  ) : (
+    <NotComputed data={loaderData} />
+  )
 }
 
 function NotComputed({ data }: { data: Loaded }) {
@@ -157,7 +183,7 @@ function NotComputed({ data }: { data: Loaded }) {
   )
 }
 
-function Computed({ data }: { data: Ready }) {
+function Computed({ data, sent }: { data: Ready; sent: SubmissionResult<string[]> | undefined }) {
   const { projectId, project, run, line, against, points, finished, open, status, mayCheck } = data
   const { model, result } = run
   const [search, setSearch] = useSearchParams()
@@ -282,7 +308,14 @@ function Computed({ data }: { data: Ready }) {
           for the book as it stands.
         </Notice>
       )}
-      <Warnings warnings={result.warnings} />
+      <RunWarnings
+        runId={run.id}
+        warnings={result.warnings}
+        acceptances={data.acceptances}
+        mayAccept={data.mayAccept}
+        result={sent}
+        day={localTime(project.timeZone).day}
+      />
 
       <Heading
         no="5.1"

@@ -1,7 +1,7 @@
 import { type SubmissionResult, useForm } from '@conform-to/react'
 import { parseWithZod } from '@conform-to/zod/v4'
 import { useEffect, useState } from 'react'
-import { data, Form, href, useNavigation, useRevalidator } from 'react-router'
+import { data, Form, href, Link, useNavigation, useRevalidator } from 'react-router'
 import { sectionStates } from '~/book/sections.server'
 import { Button, DownloadButton } from '~/components/button'
 import { Confirm } from '~/components/confirm'
@@ -16,11 +16,13 @@ import { listRuns } from '~/heads/runs.server'
 import { newPackageSchema, type PackageLine, statusMeaning } from '~/packages/package'
 import {
   bookHasMoved,
+  findPackage,
   gatherAgain,
   issuePackage,
   listPackages,
   makePackage,
   signPackage,
+  warningsToAccept,
   withdrawPackage,
 } from '~/packages/packages.server'
 import { idFrom, membershipContext, permit } from '~/projects/guard.server'
@@ -37,10 +39,12 @@ export async function loader({ context }: Route.LoaderArgs) {
     sectionStates(db, project.id),
   ])
   const open = packages.find((p) => isOpen(p))
+  const openRow = open && (await findPackage(db, project.id, open.id))
   return {
     packages,
     open: open ?? null,
     moved: open ? await bookHasMoved(db, project.id, open.id) : false,
+    toAccept: openRow ? await warningsToAccept(db, project.id, openRow) : [],
     runs: runs
       .filter((run) => run.state === 'done' && run.converged)
       .map((run) => ({ id: run.id, number: run.number, caseName: run.caseName, stale: run.stale })),
@@ -132,7 +136,7 @@ export async function action({ context, request }: Route.ActionArgs) {
 }
 
 export default function PackagePage({ loaderData, actionData, params }: Route.ComponentProps) {
-  const { packages, open, moved, runs, states, may } = loaderData
+  const { packages, open, moved, toAccept, runs, states, may } = loaderData
   const time = localTime(loaderData.timeZone)
   const issued = packages.find((p) => p.status === 'issued')
   const reopened = states.filter((s) => s.state === 'changed since check')
@@ -187,6 +191,7 @@ export default function PackagePage({ loaderData, actionData, params }: Route.Co
           key={open.id}
           line={open}
           moved={moved}
+          toAccept={toAccept}
           may={may}
           pdf={pdf(open)}
           params={params}
@@ -262,6 +267,7 @@ interface May {
 function OpenRevision({
   line,
   moved,
+  toAccept,
   may,
   pdf,
   params,
@@ -269,6 +275,8 @@ function OpenRevision({
 }: {
   line: PackageLine
   moved: boolean
+  /** Warnings that nobody has accepted yet. */
+  toAccept: { runId: number; runNumber: number; text: string }[]
   may: May
   pdf: string
   params: { projectId: string }
@@ -317,6 +325,27 @@ function OpenRevision({
           It must be gathered again before anybody signs; signatures given so far fall.
         </Notice>
       )}
+      {toAccept.length > 0 && (
+        <Notice
+          tone="warn"
+          title={
+            toAccept.length === 1
+              ? 'A warning waits to be accepted before anybody signs.'
+              : `${toAccept.length} warnings wait to be accepted before anybody signs.`
+          }
+        >
+          <ul>
+            {toAccept.map(({ runId, runNumber, text }) => (
+              <li key={`${runId} ${text}`} className="mt-1">
+                <Link to={`${href('/projects/:projectId/heads', params)}?run=${runId}`} className="underline">
+                  Run {runNumber}, section 5
+                </Link>
+                : {text}
+              </li>
+            ))}
+          </ul>
+        </Notice>
+      )}
       {drawing.failed && (
         <Notice tone="alarm" title="The drawing failed." live>
           {drawing.failed}
@@ -341,7 +370,7 @@ function OpenRevision({
               look="primary"
               name="intent"
               value={`sign ${next}`}
-              disabled={busy || moved || drawing.active}
+              disabled={busy || moved || toAccept.length > 0 || drawing.active}
             >
               Sign as {next}
             </Button>
@@ -352,7 +381,7 @@ function OpenRevision({
               look="primary"
               name="intent"
               value="issue"
-              disabled={busy || moved || drawing.active}
+              disabled={busy || moved || toAccept.length > 0 || drawing.active}
             >
               Issue {line.revision}
             </Button>
