@@ -1,6 +1,7 @@
 import type { Outcome } from './balancer'
 import type { Discretised } from './discretise'
 import type { Tally } from './flow-field'
+import { gradientsOf } from './gradients'
 import type { Model } from './model'
 import { noFlowEdgesOf } from './no-flow-edges'
 import { pointResults } from './points'
@@ -73,6 +74,7 @@ function sectionResults({ d, outcome, moment }: Report): Partial<Result> {
   return {
     ...(saturation ? { freeSurface: freeSurfaceOf(d, outcome, saturation) } : {}),
     seepageFaces: seepageFacesOf(d, outcome, saturation, moment.atOuterFaces),
+    gradients: gradientsOf(d, outcome, moment.atOuterFaces),
   }
 }
 

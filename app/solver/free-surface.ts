@@ -157,6 +157,7 @@ function findWetSet(run: Search): boolean {
   const theta = new Float64Array(count)
   let fewest = Number.POSITIVE_INFINITY
   let idle = 0
+  let settled = false
   for (let round = 0; round < mostChanges; round++) {
     settleTerms(run, round === 0)
     run.stale = true
@@ -170,7 +171,7 @@ function findWetSet(run: Search): boolean {
       (v, out) => nearly(run, v, out),
       r,
       change,
-      Math.max(0.3 * run.tolerance * run.rightHandSide, 1e-3 * norm),
+      Math.max(0.3 * run.tolerance * run.rightHandSide, settled ? 0 : 1e-3 * norm),
       stepsAtOnce,
     )
     let largest = 0
@@ -186,7 +187,8 @@ function findWetSet(run: Search): boolean {
     const switched = switchCells(run, idle < patience)
     measure(run)
     if (run.cancelled) return false
-    if (switched === 0) {
+    settled = switched === 0
+    if (settled) {
       if (run.residual <= run.tolerance) return true
       if (run.residual > 0.5 * before) {
         run.atRoundingFloor = run.residual < 1e-6

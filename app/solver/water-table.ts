@@ -117,7 +117,7 @@ function exitAt(d: Discretised, exchange: Exchange, elevations: Float64Array | n
  * Heads to interpolate between, above the reference: above the free surface the pressure is carried on upwards as it
  * falls below it, NaN in columns without one, so that a place is above the surface where its pressure is negative.
  */
-function carriedHeads(d: Discretised, heads: Float64Array, saturation: Float64Array): Float64Array {
+export function carriedHeads(d: Discretised, heads: Float64Array, saturation: Float64Array): Float64Array {
   const { columns, rows, yEdges } = d.grid
   const z = centresOf(yEdges)
   const elevations = surfaceElevations(d, heads, saturation)
