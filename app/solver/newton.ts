@@ -141,7 +141,7 @@ export function balanceCells(run: Balancing): boolean {
     const start = run.iterations
     const outcome = step.solve(run.matrix, state.imbalance, {
       target: flow.linear ? full : Math.max(full, 1e-5 * norm),
-      headTolerance: flow.linear ? 1e-8 : 1e-4,
+      headTolerance: flow.linear ? headToleranceOf(step, run.tolerance) : 1e-4,
       mostIterations: run.mostIterations - start,
       watch: (iterations, residual) => {
         run.iterations = start + iterations
@@ -158,6 +158,14 @@ export function balanceCells(run: Balancing): boolean {
   evaluate(flow, run.heads, run.rates, state, null, run.storage)
   run.residual = run.rightHandSide > 0 ? normOfFree(d, state.imbalance) / run.rightHandSide : 0
   return !run.cancelled && run.residual <= run.tolerance
+}
+
+/**
+ * The share of the range of heads that a head may be wrong by: what multigrid's next cycle would change is a little
+ * less than what is wrong, while relaxation's estimate is a hundred times too high.
+ */
+function headToleranceOf(step: LinearStep, tolerance: number): number {
+  return step.method === 'sor' ? 1e-8 : Math.max(tolerance, 1e-13)
 }
 
 /** Largest change of head that would balance a cell by itself. */
