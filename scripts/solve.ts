@@ -57,10 +57,10 @@ function run({ file, headsFile }: Request): number {
   const parsed = parseModelFile(json)
   if (!parsed.ok)
     throw new Refusal(parsed.errors.map(({ path, message }) => `${path}: ${message}`).join('\n'))
-  const { result, heads, grid } = solveModel(parsed.model, { input: modelHash(json) })
+  const { result, heads, fields, grid } = solveModel(parsed.model, { input: modelHash(json) })
   if (headsFile !== null) {
     try {
-      writeFileSync(headsFile, new Uint8Array(encodeHeads(grid, heads)))
+      writeFileSync(headsFile, new Uint8Array(encodeHeads(grid, fields.length > 0 ? fields : heads)))
     } catch (error) {
       throw new Refusal(`${headsFile}: cannot be written (${(error as Error).message})`)
     }

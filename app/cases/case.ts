@@ -42,6 +42,18 @@ export type Override = z.infer<typeof overrideSchema>
 /** Relative to the right-hand side of the equations; what a run is held to when the case sheet says nothing. */
 export const defaultTolerance = 1e-10
 
+/** How the equations may be solved, as the model file has it, in the words of the case sheet. */
+export const methodWords = {
+  automatic: 'automatic',
+  sor: 'successive over-relaxation',
+  multigrid: 'multigrid',
+} as const
+export type CaseMethod = keyof typeof methodWords
+const methods = Object.keys(methodWords) as CaseMethod[]
+
+/** Multigrid, and relaxation where that does not get there. */
+export const defaultMethod: CaseMethod = 'automatic'
+
 /** More cells than this are refused: a run would hold a server thread for too long. */
 export const mostCells = 1_000_000
 
@@ -67,6 +79,7 @@ export const caseSchema = z
       .max(1e-4, 'A tolerance above 1e-4 is too loose for heads.')
       .nullable()
       .default(null),
+    method: z.enum(methods).nullable().default(null),
     overrides: list(overrideSchema, { most: 2000 })
       .default([])
       .refine(
@@ -90,6 +103,7 @@ export interface CaseSettings {
   extent: Extent | null
   cellSize: Quantity | null
   tolerance: number
+  method: CaseMethod
   overrides: Override[]
 }
 
@@ -106,6 +120,7 @@ export function settingsOf(base: Case | undefined, own: Case): CaseSettings {
     extent: own.extent ?? inherited?.extent ?? null,
     cellSize: own.cellSize ?? inherited?.cellSize ?? null,
     tolerance: own.tolerance ?? inherited?.tolerance ?? defaultTolerance,
+    method: own.method ?? inherited?.method ?? defaultMethod,
     overrides: [
       ...own.overrides,
       ...(inherited?.overrides ?? []).filter((o) => !set.has(`${o.rowId} ${o.quantity}`)),

@@ -112,7 +112,14 @@ describe('A frozen case', () => {
     points: [
       row('p1', 'point', pointSchema.parse({ name: 'P1', x: 120, y: 80, source: 'Setting out drawing 12' })),
     ],
-    wells: [well('W1', { radius: { value: 150, unit: 'mm' }, lowestLevel: m(-8) })],
+    wells: [
+      well('W1', {
+        radius: { value: 150, unit: 'mm' },
+        lowestLevel: m(-8),
+        screenTop: m(-1.5),
+        screenBottom: { value: -9000, unit: 'mm' },
+      }),
+    ],
     rechargeZones: [
       row(
         'field',
@@ -164,6 +171,7 @@ describe('A frozen case', () => {
           ],
           thickness: m(0.8),
           k: { value: 1e-4, unit: 'm/d' },
+          toe: { value: -850, unit: 'cm' },
         }),
       ),
     ],
@@ -189,11 +197,12 @@ describe('A frozen case', () => {
         rate: 900,
         radius: 0.15,
         lowestLevel: -8,
+        screen: { top: -1.5, bottom: -9 },
       },
     ])
     expect(model.recharge).toEqual([{ name: 'Field', rate: expect.closeTo(0.0008, 15) }])
     expect(model.points?.[0]?.source).toBe('Setting out drawing 12')
-    expect(model.walls?.[0]).toMatchObject({ name: 'Cut-off', thickness: 0.8, k: 1e-4 })
+    expect(model.walls?.[0]).toMatchObject({ name: 'Cut-off', thickness: 0.8, k: 1e-4, toe: -8.5 })
   })
 
   it('gives each kind of boundary its own fields, levels one a line or one a vertex, and a flux its sign', () => {
@@ -219,6 +228,25 @@ describe('A frozen case', () => {
     expect(model.ground[0]?.base).toBeCloseTo(-10 / 0.3048, 10)
     expect(model.wells?.[0]?.rate).toBeCloseTo(900 / 0.3048 ** 3, 6)
     expect(model.boundaries?.[3]).toMatchObject({ flux: expect.closeTo(-0.05 / 0.3048 ** 2, 10) })
+  })
+
+  it('is solved by the method of the case, of the base case, or else automatically', () => {
+    const methodOf = (inBase: string | null, own: string | null) =>
+      frozen({ ...full, cases: [base({ method: inBase }), calcCase('Other', { method: own })] }, 'Other')
+        .model.solver?.method
+    expect(methodOf(null, null)).toBe('automatic')
+    expect(methodOf('sor', null)).toBe('sor')
+    expect(methodOf('sor', 'multigrid')).toBe('multigrid')
+  })
+
+  it('says nothing of a toe or a screen that nobody gave', () => {
+    const { model } = frozen({
+      ...full,
+      wells: [well('W1')],
+      walls: full.walls.map((one) => ({ ...one, body: { ...one.body, toe: null } })),
+    })
+    expect(model.walls?.[0]).not.toHaveProperty('toe')
+    expect(model.wells?.[0]).not.toHaveProperty('screen')
   })
 
   it('takes from the base case what it leaves blank, and its own values for the rest', () => {

@@ -186,7 +186,7 @@ export function freezeCase(inputs: CaseInputs, caseId: string): FreezeAnswer {
       ...sourced(wall.source),
     })),
     points: inside.map(({ body: { name, x, y, source } }) => ({ name, x, y, ...sourced(source) })),
-    solver: { method: 'sor', tolerance: settings.tolerance },
+    solver: { method: settings.method, tolerance: settings.tolerance },
   }
   return {
     ok: true,

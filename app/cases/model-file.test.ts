@@ -83,6 +83,20 @@ describe('the model file', () => {
     expect(parseModelFile(file({ time, want: { verify: true } })).ok).toBe(true)
   })
 
+  it('reads the toe of a wall and the screen of a well', () => {
+    const line = [
+      [0, 0],
+      [0, 9],
+    ]
+    const wall = { name: 'Cut-off', line, thickness: 1, k: 0, toe: -3 }
+    const well = { name: 'W', x: 1, y: 1, kind: 'abstraction', rate: 1, screen: { top: 4, bottom: 1 } }
+    expect(parseModelFile(file({ walls: [wall], wells: [well] })).ok).toBe(true)
+    expect(errors(file({ walls: [{ ...wall, toe: 'deep' }] }))).toHaveProperty(['walls[0].toe'])
+    expect(errors(file({ wells: [{ ...well, screen: { top: 4 } }] }))).toHaveProperty([
+      'wells[0].screen.bottom',
+    ])
+  })
+
   it('has one hash whatever the order of its fields, and another for every change', () => {
     const json = file()
     const turned = Object.fromEntries(Object.entries(json).reverse())

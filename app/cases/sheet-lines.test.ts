@@ -95,6 +95,16 @@ describe('The case sheet', () => {
     expect(typed('xMax', wider, '1000').extent).toBeNull()
   })
 
+  it('offers the methods in words, automatic unless somebody chooses', () => {
+    expect(line('method').inherited(base)).toBe('automatic')
+    expect(line('method').choices).toEqual(['automatic', 'successive over-relaxation', 'multigrid'])
+    const relaxed = typed('method', blank, 'successive over-relaxation')
+    expect([relaxed.method, line('method').own(relaxed)]).toEqual(['sor', 'successive over-relaxation'])
+    expect(settingsOf(base, relaxed).method).toBe('sor')
+    expect(typed('method', relaxed, '')).toEqual(blank)
+    expect(line('method').read(blank, 'guess')).toMatchObject({ ok: false })
+  })
+
   it('refuses with the reason what cannot be read', () => {
     expect(line('xMax').read(blank, '-5')).toMatchObject({ ok: false })
     expect(line('w1 rate').read(blank, '-900')).toMatchObject({

@@ -12,8 +12,11 @@ import {
 } from '~/units'
 import {
   type Case,
+  type CaseMethod,
+  defaultMethod,
   defaultTolerance,
   type Extent,
+  methodWords,
   type Overridable,
   overrideDimension,
   overrideOf,
@@ -148,6 +151,23 @@ function settingLines(units: ProjectUnits, base: Case | undefined): SheetLine[] 
         if (text.trim() === '') return { ok: true, set: { tolerance: null } }
         const read = parseQuantity(text, 'none', '-')
         return read.ok ? { ok: true, set: { tolerance: read.quantity.value } } : read
+      },
+    },
+    {
+      key: 'method',
+      group,
+      label: 'Method',
+      unit: '',
+      choices: Object.values(methodWords),
+      own: (body) => (body.method ? methodWords[body.method] : ''),
+      inherited: (body) => methodWords[from(body)?.method ?? defaultMethod],
+      read: (_body, text) => {
+        const word = text.trim().toLowerCase()
+        if (word === '') return { ok: true, set: { method: null } }
+        const method = (Object.keys(methodWords) as CaseMethod[]).find((one) => methodWords[one] === word)
+        return method
+          ? { ok: true, set: { method } }
+          : { ok: false, message: `"${text}" is none of ${Object.values(methodWords).join(', ')}.` }
       },
     },
   ]
@@ -291,6 +311,7 @@ export function copyOfCase(source: Case, name: string): Case {
     extent: null,
     cellSize: null,
     tolerance: null,
+    method: null,
     overrides: [],
   }
 }
@@ -322,6 +343,7 @@ export function firstBaseCase(inputs: CaseInputs): Case {
     extent,
     cellSize: { value: roundStep(longer / 100), unit: inputs.project.units.length },
     tolerance: null,
+    method: null,
     overrides: [],
   }
 }

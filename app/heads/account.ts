@@ -21,16 +21,29 @@ export const methodWords: Record<Result['method'], string> = {
   multigrid: 'conjugate gradients with multigrid',
 }
 
-/** "36 000 cells, conjugate gradients with multigrid, 12 iterations, residual 3·10⁻¹¹, water-balance error 2·10⁻⁹ %". */
+/** What did the arithmetic. Results of before there was a choice do not say: theirs was the TypeScript one. */
+export function kernelsInWords(kernels: string | undefined): string {
+  return kernels === undefined || kernels === 'typescript'
+    ? 'TypeScript kernels'
+    : `compiled kernels (${kernels})`
+}
+
+/** What a method counts: sweeps over the grid, or iterations of conjugate gradients. */
+export function iterationsWord(method: Result['method']): 'sweeps' | 'iterations' {
+  return method === 'sor' ? 'sweeps' : 'iterations'
+}
+
+/** "36 000 cells, conjugate gradients with multigrid, TypeScript kernels, 12 iterations, residual 3·10⁻¹¹, water-balance error 2·10⁻⁹ %". */
 export function recordInWords(result: Result): string {
   const { active, cells } = result.grid
-  const error = result.balance.errorPercent[0]
+  const error = result.balance.errorPercent.at(-1)
   return [
     active === cells
       ? `${formatNumber(cells, 0)} cells`
       : `${formatNumber(active, 0)} of ${formatNumber(cells, 0)} cells`,
     methodWords[result.method],
-    `${formatNumber(result.iterations, 0)} ${result.method === 'sor' ? 'sweeps' : 'iterations'}`,
+    kernelsInWords(result.kernels),
+    `${formatNumber(result.iterations, 0)} ${iterationsWord(result.method)}`,
     `residual ${shortly(result.residual)}`,
     ...(error === undefined ? [] : [`water-balance error ${errorInWords(error)}`]),
   ].join(', ')

@@ -303,7 +303,7 @@ function launch(
   })
 }
 
-/** Stores what the thread computed: the head field in S3, the record and the heads at points here. */
+/** Stores what the thread computed: the head field in S3, the record and the (last) heads at points here. */
 async function storeResult(
   db: Database,
   run: NewRun,
@@ -380,7 +380,7 @@ async function storePoints(trx: Database, runId: number, run: NewRun, result: Re
     .filter((point) => point.why === null)
     .map(({ rowId, name, x, y }) => {
       const point = heads.get(name)
-      const head = point?.head[0] ?? null
+      const head = point?.head.at(-1) ?? null
       return {
         run_id: runId,
         point_id: rowId,
@@ -440,7 +440,7 @@ export async function listRuns(db: Database, project: Project): Promise<RunLine[
       'runs.created_at',
       'ended_at',
       'users.name as by',
-      db.raw("json_value(result, '$.balance.errorPercent[0]') as error_percent"),
+      db.raw("json_value(result, '$.balance.errorPercent[last]') as error_percent"),
     )
   const stale = await staleRuns(
     db,

@@ -5,14 +5,25 @@ import type { HeadField } from './field'
 export type LoadedHeads =
   | { state: 'loading' }
   | { state: 'failed'; message: string }
-  | { state: 'here'; field: HeadField }
+  | {
+      state: 'here'
+      /** In transient flow the last. */
+      field: HeadField
+      /** Transient flow: every field with its time, from the initial heads on. Steady flow: empty. */
+      fields: readonly TimedField[]
+    }
+
+export interface TimedField {
+  time: number
+  field: HeadField
+}
 
 // A run never changes: its heads are fetched once a visit. The oldest of a few goes when another comes.
-const kept = new Map<string, HeadField>()
+const kept = new Map<string, Extract<LoadedHeads, { state: 'here' }>>()
 const most = 4
 
 /**
- * The head field of a finished run, in its own unit of length times `factor` (to compare runs of different units);
+ * The head fields of a finished run, in its own unit of length times `factor` (to compare runs of different units);
  * null when `address` is.
  */
 export function useHeads(address: string | null, factor = 1): LoadedHeads | null {
@@ -22,17 +33,16 @@ export function useHeads(address: string | null, factor = 1): LoadedHeads | null
     const key = `${address} ${factor}`
     const before = kept.get(key)
     if (before) {
-      setLoaded({ state: 'here', field: before })
+      setLoaded(before)
       return
     }
     const controller = new AbortController()
     setLoaded({ state: 'loading' })
-    fetchHeads(address, controller.signal).then(
-      (field) => {
-        const scaled = factor === 1 ? field : { ...field, heads: field.heads.map((head) => head * factor) }
+    fetchHeads(address, factor, controller.signal).then(
+      (here) => {
         if (kept.size >= most) kept.delete(kept.keys().next().value ?? '')
-        kept.set(key, scaled)
-        setLoaded({ state: 'here', field: scaled })
+        kept.set(key, here)
+        setLoaded(here)
       },
       (error: unknown) => {
         if (controller.signal.aborted) return
@@ -47,9 +57,18 @@ export function useHeads(address: string | null, factor = 1): LoadedHeads | null
   return address ? loaded : null
 }
 
-async function fetchHeads(address: string, signal: AbortSignal): Promise<HeadField> {
+async function fetchHeads(address: string, factor: number, signal: AbortSignal) {
   const answer = await fetch(address, { signal })
   if (!answer.ok) throw new Error(`The server answered ${answer.status} instead of the heads of this run.`)
-  const { grid, heads } = decodeHeads(await answer.arrayBuffer())
-  return { xEdges: grid.xEdges, yEdges: grid.yEdges, heads }
+  const { grid, heads, fields } = decodeHeads(await answer.arrayBuffer())
+  const scaled = (own: Float64Array): HeadField => ({
+    xEdges: grid.xEdges,
+    yEdges: grid.yEdges,
+    heads: factor === 1 ? own : own.map((head) => head * factor),
+  })
+  return {
+    state: 'here' as const,
+    field: scaled(heads),
+    fields: fields.map((one) => ({ time: one.time, field: scaled(one.heads) })),
+  }
 }

@@ -2,12 +2,13 @@ import { DateTime } from 'luxon'
 import type { Content } from 'pdfmake/interfaces'
 import { lineLength, signedArea, type Vertex } from '~/book/field'
 import { sections } from '~/book/sections'
+import { defaultTolerance } from '~/cases/case'
 import { acceptanceInWords, acceptanceOf } from '~/heads/acceptance'
-import { byGravity, mostBalanceError, severityWords } from '~/heads/account'
+import { byGravity, kernelsInWords, methodWords, mostBalanceError, severityWords } from '~/heads/account'
 import type { HeadField } from '~/heads/field'
+import { momentInWords, resultAt } from '~/heads/moment'
 import { levelUnit } from '~/projects/project'
 import { decodeHeads } from '~/solver/heads-buffer'
-import type { Result } from '~/solver/result'
 import {
   convert,
   type Dimension,
@@ -38,8 +39,10 @@ import {
 } from './typeset'
 
 /** Sections 1 to 9 of the book as they are printed, numbered as on the pages. */
-export function printedSections(request: DrawRequest): Content[] {
-  const { content, cover } = request
+export function printedSections(given: DrawRequest): Content[] {
+  const { cover } = given
+  const content = atTheEnd(given.content)
+  const request = { ...given, content }
   return [
     ...basisSection(content),
     ...groundSection(content),
@@ -51,6 +54,16 @@ export function printedSections(request: DrawRequest): Content[] {
     ...checksSection(content),
     ...packageSection(content, cover),
   ]
+}
+
+/** Of runs in time the package prints the end: head fields are read so too, and section 4 says it. */
+function atTheEnd(content: GatheredContent): GatheredContent {
+  const { run, against } = content
+  return {
+    ...content,
+    run: { ...run, result: resultAt(run.result) },
+    against: against && { ...against, result: resultAt(against.result) },
+  }
 }
 
 function inUnit(content: GatheredContent, dimension: Dimension) {
@@ -427,6 +440,14 @@ function casesSection(content: GatheredContent): Content[] {
       facts([
         ['Case', run.caseName],
         ['Kind', `${model.kind}, ${model.flow}, ${model.time.kind}`],
+        ...(result.times.length > 0
+          ? [
+              [
+                'Time of the results',
+                `the end of its stages, ${formatNumber(result.times[0])} ${content.project.units.time}; earlier times are in the result of the run`,
+              ] as const,
+            ]
+          : []),
         ['Extent', `x ${span(model.extent.x)} ${length}, y ${span(model.extent.y)} ${length}`],
         [
           'Grid',
@@ -455,10 +476,16 @@ function casesSection(content: GatheredContent): Content[] {
           `${run.number}, by ${run.by}, ${localTime(content, run.startedAt)} to ${localTime(content, run.endedAt)}`,
         ],
         ['Engine', `Lavant engine ${result.engine}`],
-        ['Method', methodInWords(result.method)],
+        ['Method', `${methodWords[result.method]}; ${kernelsInWords(result.kernels)}`],
         ['Outcome', result.converged ? 'converged' : 'DID NOT CONVERGE: not to be used'],
-        [result.method === 'sor' ? 'Sweeps' : 'Iterations', formatNumber(result.iterations, 0)],
-        ['Residual', `${formatNumber(result.residual)} of the right-hand side`],
+        [
+          result.method === 'sor' ? 'Sweeps' : 'Iterations',
+          `${formatNumber(result.iterations, 0)}${result.steps === undefined ? '' : `, over ${formatNumber(result.steps, 0)} steps in time`}`,
+        ],
+        [
+          'Residual',
+          `${formatNumber(result.residual)} of the right-hand side; tolerance ${formatNumber(run.model.solver?.tolerance ?? defaultTolerance)}`,
+        ],
         ['Model file (SHA-256)', run.inputSha256],
         ['Head field (SHA-256)', run.headsSha256],
       ]),
@@ -503,12 +530,6 @@ function warningsTable(content: GatheredContent): Piece {
   )
 }
 
-function methodInWords(method: Result['method']): string {
-  return method === 'sor'
-    ? 'successive over-relaxation, red-black order (the method of record)'
-    : 'conjugate gradients preconditioned by multigrid; the method of record, successive over-relaxation, agrees with it'
-}
-
 // ---- 5 Heads --------------------------------------------------------------------------------------------------
 
 function headsSection({ content, heads, againstHeads }: DrawRequest): Content[] {
@@ -535,7 +556,7 @@ function headsSection({ content, heads, againstHeads }: DrawRequest): Content[] 
       figure(
         '5.1',
         headsFigure(content, field),
-        `Heads, ${levelUnit(length, project.verticalDatum)}; case ${run.caseName}, run ${run.number}, ${localDay(content, run.endedAt)}. `,
+        `Heads, ${levelUnit(length, project.verticalDatum)}; case ${run.caseName}${momentInWords(result, project.units.time)}, run ${run.number}, ${localDay(content, run.endedAt)}. `,
       ),
     ),
     subsection('5.2', 'Heads at named points', pointsTable(content)),

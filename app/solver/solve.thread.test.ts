@@ -56,6 +56,22 @@ describe('a solve on its own thread', () => {
     expect(decodeHeads(message.buffer).heads).toHaveLength(144)
   })
 
+  it('sends the heads of every reported time of a model in time', async () => {
+    const inTime: Model = {
+      ...model(6),
+      materials: [{ name: 'Sand', kx: 1, ky: 1, specificStorage: 1e-4 }],
+      time: { kind: 'transient', initialHead: 12, stages: [{ duration: 1 }, { duration: 2 }] },
+    }
+    const message = await onThread({ model: inTime })
+    if (message.kind !== 'done') throw new Error(JSON.stringify(message))
+    const { heads, fields } = decodeHeads(message.buffer)
+    expect(message.result.times).toEqual([1, 3])
+    expect(fields.map(({ time }) => time)).toEqual([0, 1, 3])
+    expect(new Set(fields[0]?.heads)).toEqual(new Set([12]))
+    expect(heads).toEqual(fields[2]?.heads)
+    expect(heads[5]).toBeGreaterThan(12)
+  })
+
   it('says where a model is refused', async () => {
     expect(await onThread({ model: model(12, 0) })).toMatchObject({
       kind: 'refused',

@@ -42,7 +42,7 @@ function run(
       post({ kind: 'cancelled' })
       return
     }
-    const buffer = encodeHeads(solution.grid, solution.heads)
+    const buffer = encodeHeads(solution.grid, solution.fields.length > 0 ? solution.fields : solution.heads)
     post({ kind: 'done', result: solution.result, buffer }, [buffer])
   } catch (error) {
     if (!(error instanceof ModelError)) throw error

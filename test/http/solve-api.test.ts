@@ -111,6 +111,22 @@ describe('POST /api/v1/solve', () => {
     expect(result.points[0].head[0]).toBeCloseTo(11, 6)
   })
 
+  it('answers a model in time with one entry a stage', async () => {
+    const response = await solve(
+      strip({
+        materials: [{ name: 'Sand', kx: 10, ky: 10, specificStorage: 1e-2 }],
+        time: { kind: 'transient', initialHead: 10, stages: [{ duration: 0.1 }, { duration: 100 }] },
+        solver: { method: 'multigrid' },
+      }),
+    )
+    expect(response.status).toBe(200)
+    const result = await response.json()
+    expect(result).toMatchObject({ converged: true, method: 'multigrid', times: [0.1, 100.1] })
+    expect(result.points[0].head[0]).toBeLessThan(10.9)
+    expect(result.points[0].head[1]).toBeCloseTo(11, 3)
+    expect(result.balance.volumes.storage).toHaveLength(2)
+  })
+
   it('answers a longer one with the address of its job, which its owner alone may see', async () => {
     const response = await solve(endless, { prefer: 'wait=0' })
     expect(response.status).toBe(202)
@@ -180,7 +196,7 @@ describe('POST /api/v1/solve', () => {
       strip({ time: { kind: 'transient', initialHead: 1, stages: [{ duration: 1 }] } }),
     )
     expect(section.status).toBe(422)
-    expect(await errorOf(section)).toMatchObject({ path: 'time.kind' })
+    expect(await errorOf(section)).toMatchObject({ path: 'materials[0].specificStorage' })
     const outside = await solve(
       strip({ wells: [{ name: 'W1', x: 500, y: 0, kind: 'abstraction', rate: 1 }] }),
     )

@@ -474,7 +474,7 @@ function referencesOf(cases: readonly SheetCase[]): Reference[] {
     },
     {
       no: 'Solver',
-      text: 'Red-black successive over-relaxation; a run has converged once its true residual, relative to the right-hand side, is below the tolerance.',
+      text: 'Automatic takes conjugate gradients with multigrid, and successive over-relaxation where these do not get there; the run says which it was. It has converged once its true residual, relative to the right-hand side, is below the tolerance.',
     },
   ]
 }

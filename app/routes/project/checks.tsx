@@ -11,6 +11,7 @@ import { DataTable } from '~/components/data-table'
 import { Caution, Notice } from '~/components/notice'
 import { Heading, SectionPage } from '~/components/section-page'
 import { mostBalanceError } from '~/heads/account'
+import { resultAt } from '~/heads/moment'
 import { latestDoneRun } from '~/heads/runs.server'
 import { permit } from '~/projects/guard.server'
 import { can } from '~/projects/permissions'
@@ -26,7 +27,7 @@ export async function loader({ context }: Route.LoaderArgs) {
     sectionStatus(db, project.id, 'checks'),
     latestDoneRun(db, project.id),
   ])
-  const result = run?.result
+  const result = run?.result && resultAt(run.result)
   return {
     project,
     member: { userId: member.userId, mayEdit: can(member, 'edit', 'checks') },

@@ -19,6 +19,7 @@ import { drawdownBetween, type HeadField, rangeOf } from '~/heads/field'
 import { headsCsv } from '~/heads/heads-csv'
 import { type FigureOfRun, HeadsFigure } from '~/heads/heads-figure'
 import { BalanceTables, type PointLine, PointTable, WellTable } from '~/heads/heads-tables'
+import { momentInWords, resultAt } from '~/heads/moment'
 import { type RunLine, shortHash, underWay } from '~/heads/run'
 import { RunWarnings } from '~/heads/run-warnings'
 import { findRun, listRuns, type Run, runPoints } from '~/heads/runs.server'
@@ -26,6 +27,7 @@ import { useHeads } from '~/heads/use-heads'
 import { permit } from '~/projects/guard.server'
 import { can } from '~/projects/permissions'
 import { levelUnit } from '~/projects/project'
+import type { Result } from '~/solver/result'
 import { convert, formatNumber, shownUnit, unitLabel } from '~/units'
 import { database } from '~database/connection.server'
 import type { Route } from './+types/heads'
@@ -54,7 +56,7 @@ export async function loader({ request, context, params }: Route.LoaderArgs) {
     open: runs.filter((line) => underWay(line.state)),
     line: chosen,
     run: run && shownRun(run),
-    points: run ? await pointLines(db, project.id, run, against) : [],
+    points: run ? await pointLines(db, project.id, run, against, search.get('time')) : [],
     acceptances: run ? await acceptancesOf(db, project.id, run.id) : [],
     against: against && run && comparedRun(run, against),
   }
@@ -87,7 +89,7 @@ function shownRun({ id, number, caseName, model, result, inputSha256, engine, en
     endedAt: endedAt?.toISOString() ?? null,
     by,
     model,
-    result: result && { ...result, history: [] },
+    result: result && { ...result, history: [] as Result['history'] },
   }
 }
 
@@ -102,16 +104,23 @@ async function pointLines(
   projectId: number,
   run: Run,
   against: Run | undefined,
+  time: string | null,
 ): Promise<PointLine[]> {
   const [now, before] = await Promise.all([
     runPoints(db, projectId, run.id),
     against ? runPoints(db, projectId, against.id) : [],
   ])
   const heads = new Map(before.map((point) => [point.pointId, point.head]))
+  // The database keeps the heads at the end of a run in time; those of an earlier time are in its result.
+  const at = run.result ? chosenTime(run.result, time) : -1
+  const earlier =
+    run.result && at < run.result.times.length - 1
+      ? new Map(resultAt(run.result, at).points.map((point) => [point.name, point]))
+      : null
   const shown = (metres: number | null) =>
     metres === null ? null : convert({ value: metres, unit: 'm' }, run.model.units.length)
   return now.map(({ pointId, name, x, y, head, why }) => {
-    const own = shown(head)
+    const own = earlier ? (earlier.get(name)?.head[0] ?? null) : shown(head)
     const other = shown(heads.get(pointId) ?? null)
     return {
       name,
@@ -120,19 +129,25 @@ async function pointLines(
       head: own,
       before: other,
       drawdown: own === null || other === null ? null : other - own,
-      why,
+      why: own === null ? (why ?? 'no head at this time') : null,
     }
   })
 }
 
-/** How the figure is drawn is the page's own affair; only another run needs the server. */
+/** Index of the reported time that the address asks for, or else of the last; -1 for a steady result. */
+function chosenTime(result: Result, asked: string | null): number {
+  const index = result.times.findIndex((time) => String(time) === asked)
+  return index >= 0 ? index : result.times.length - 1
+}
+
+/** How the figure is drawn is the page's own affair; only another run or time needs the server. */
 export function shouldRevalidate({
   currentUrl,
   nextUrl,
   formMethod,
   defaultShouldRevalidate,
 }: ShouldRevalidateFunctionArgs) {
-  const same = ['run', 'against'].every(
+  const same = ['run', 'against', 'time'].every(
     (name) => currentUrl.searchParams.get(name) === nextUrl.searchParams.get(name),
   )
   const drawnOnly = same && currentUrl.search !== nextUrl.search && currentUrl.pathname === nextUrl.pathname
@@ -184,9 +199,13 @@ function NotComputed({ data }: { data: Loaded }) {
 }
 
 function Computed({ data, sent }: { data: Ready; sent: SubmissionResult<string[]> | undefined }) {
-  const { projectId, project, run, line, against, points, finished, open, status, mayCheck } = data
-  const { model, result } = run
+  const { projectId, project, line, against, points, finished, open, status, mayCheck } = data
   const [search, setSearch] = useSearchParams()
+  const times = data.run.result.times
+  const at = chosenTime(data.run.result, search.get('time'))
+  const run = useMemo(() => ({ ...data.run, result: resultAt(data.run.result, at) }), [data.run, at])
+  const { model, result } = run
+  const moment = momentInWords(result, unitLabel(model.units.time))
   const [selected, setSelected] = useState<string | null>(null)
   const [near, setNear] = useState<string | null>(null)
   const now = useHeads(href('/projects/:projectId/runs/:runId/heads', { projectId, runId: String(run.id) }))
@@ -194,7 +213,8 @@ function Computed({ data, sent }: { data: Ready; sent: SubmissionResult<string[]
     against ? href('/projects/:projectId/runs/:runId/heads', { projectId, runId: String(against.id) }) : null,
     against?.factor,
   )
-  const heads = now?.state === 'here' ? now.field : null
+  const heads =
+    now?.state === 'here' ? (now.fields.find(({ time }) => time === times[at])?.field ?? now.field) : null
   const beforeHeads = before?.state === 'here' ? before.field : null
   const drawdown = useMemo(
     () => (heads && beforeHeads ? drawdownBetween(heads, beforeHeads) : null),
@@ -216,12 +236,12 @@ function Computed({ data, sent }: { data: Ready; sent: SubmissionResult<string[]
         unit: length,
         datum,
         converged: result.converged,
-        of: `case ${run.caseName}, run ${run.number}`,
+        of: `case ${run.caseName}${moment}, run ${run.number}`,
         against: against ? `run ${against.number} (${against.caseName})` : '',
         groundAt: (x, y) => groundAt(model, x, y),
         fileName: `${project.number}-run-${run.number}-${shows === 'drawdown' ? 'drawdown' : 'heads'}`,
       },
-    [heads, beforeHeads, drawdown, model, result, length, datum, run, against, project.number, shows],
+    [heads, beforeHeads, drawdown, model, result, length, datum, run, moment, against, project.number, shows],
   )
   const failed = [now, before].find((loaded) => loaded?.state === 'failed')
   const kinds = useMemo(() => new Map((model.wells ?? []).map(({ name, kind }) => [name, kind])), [model])
@@ -270,6 +290,14 @@ function Computed({ data, sent }: { data: Ready; sent: SubmissionResult<string[]
             none="no other run"
             onChoose={(id) => choose('against', id)}
           />
+          {times.length > 1 && (
+            <TimeChoice
+              times={times}
+              at={at}
+              unit={unitLabel(model.units.time)}
+              onChoose={(time) => choose('time', time)}
+            />
+          )}
           <CheckButton
             projectId={Number(projectId)}
             timeZone={project.timeZone}
@@ -280,7 +308,7 @@ function Computed({ data, sent }: { data: Ready; sent: SubmissionResult<string[]
       }
       status={<RunStatusLine data={data} />}
       references={referencesOf(data)}
-      carried={carriedOf(data, heads, drawdown, datum)}
+      carried={carriedOf({ ...data, run }, heads, drawdown, datum)}
       carryFoot={<Caution>{cautionOf(model.flow)}</Caution>}
     >
       {!result.converged && (
@@ -296,6 +324,16 @@ function Computed({ data, sent }: { data: Ready; sent: SubmissionResult<string[]
             follow it in section 4
           </Link>
           .
+        </Notice>
+      )}
+      {times.length > 0 && (
+        <Notice
+          title={`Heads, flows and balance${moment}${at === times.length - 1 ? ', the end of the run' : ''}`}
+        >
+          {times.length > 1
+            ? `The run reports ${times.length} times; everything on this page belongs to this one. The rates are those of the step that ends then.`
+            : 'The rates are those of the step that ends then.'}
+          {against && ' The run compared with stands at its end.'}
         </Notice>
       )}
       {line.stale && (
@@ -429,6 +467,35 @@ function RunChoice({
             {run.number} {run.caseName}
             {run.converged ? '' : ' (not converged)'}
             {run.stale ? ' (inputs changed)' : ''}
+          </option>
+        ))}
+      </select>
+    </label>
+  )
+}
+
+function TimeChoice({
+  times,
+  at,
+  unit,
+  onChoose,
+}: {
+  times: readonly number[]
+  at: number
+  unit: string
+  onChoose: (time: string) => void
+}) {
+  return (
+    <label className="flex min-w-0 items-center gap-2 text-[0.93rem] text-flint-2">
+      Time
+      <select
+        value={String(times[at])}
+        onChange={(event) => onChoose(event.target.value === String(times.at(-1)) ? '' : event.target.value)}
+        className="max-w-60 min-w-0 rounded border border-rule bg-chalk px-2 py-1 text-flint"
+      >
+        {times.map((time) => (
+          <option key={time} value={String(time)}>
+            {formatNumber(time)} {unit}
           </option>
         ))}
       </select>
