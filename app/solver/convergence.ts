@@ -9,8 +9,9 @@ export interface GridError {
   how: 'observed order' | 'limited order' | 'first order assumed' | 'none'
 }
 
-/** Safety factors of the grid convergence index (Roache 1994, J. Fluids Eng. 116, 405): with an observed order; without. */
-const withOrder = 1.25
+/** Safety factors of the grid convergence index (Roache 1994, J. Fluids Eng. 116, 405): with an observed order ... */
+export const safetyFactor = 1.25
+/** ... and without. */
 const withoutOrder = 3
 
 const leastOrder = 0.5
@@ -45,7 +46,7 @@ export function gridError(values: number[], sizes: number[], own: number): GridE
     const coarse = (f3 - f2) / (r3 ** p - r2 ** p)
     const c = order > formalOrder && Math.abs(coarse) > Math.abs(fine) ? coarse : fine
     return {
-      error: withOrder * Math.abs(c) * (h[own] as number) ** p,
+      error: safetyFactor * Math.abs(c) * (h[own] as number) ** p,
       order,
       extrapolated: f1 - fine,
       how: order > formalOrder ? 'limited order' : 'observed order',

@@ -1,4 +1,4 @@
-import { type GridError, gridError } from './convergence'
+import { type GridError, gridError, safetyFactor } from './convergence'
 import type { Discretised } from './discretise'
 import { comparisonOf } from './formulas/compare'
 import { type GridChoice, gridChoice, onGrid } from './grid-variants'
@@ -6,6 +6,7 @@ import type { Model } from './model'
 import { ModelError } from './model-error'
 import { type NamedValue, namedValues } from './named-values'
 import { openEdges, undisturbed, withEdgesHeld, withOuterClosed } from './outer-boundary'
+import { interpolationErrors, shiftedNames, withShiftedLines } from './placement-errors'
 import type { Band, Result, SwapResult, Verification, VerifiedResult, Warning } from './result'
 
 /** What is asked of whoever solves: the model as it is given, or with every step in time halved. */
@@ -17,6 +18,8 @@ export interface Variant {
 export interface Solved {
   result: Result
   heads: Float64Array
+  /** Transient flow: the heads before the first step and at every reported time. Else empty. */
+  fields: { heads: Float64Array }[]
   cancelled: boolean
 }
 
@@ -53,14 +56,22 @@ export function verificationOf(
   const columns = own.result.grid.columns
   const rows = own.result.grid.rows
   const choice = gridChoice(columns * rows, columns, rows, mostCells)
-  const grids = gridsOf(ends, own, choice, tries)
+  const grids = gridsOf({ ...ends, lines: withShiftedLines(d) }, own, choice, tries)
   const halved =
     model.time.kind === 'transient' ? tries(ends, { phase: 'steps halved', halveSteps: true }) : null
   const outer = outerOf(ends, d, own, tries)
   if (tries.cancelled) return null
   const named = namedValues(own.result)
   const floor = floorOf([own, ...grids.solved.map(({ solved }) => solved)])
-  const results = named.map((entry) => verified(entry, own, grids.solved, halved, outer, floor))
+  const evidence: Evidence = {
+    own,
+    grids: grids.solved,
+    halved,
+    outer,
+    floor,
+    interpolation: interpolationOf(d, own),
+  }
+  const results = named.map((entry) => verified(entry, evidence))
   return {
     grid: {
       grids: grids.solved.map(({ times, solved }) => {
@@ -232,14 +243,26 @@ function valueIn(solved: Solved, name: string, time: number | null): number | nu
   return at < 0 ? null : (values[at] ?? null)
 }
 
-function verified(
-  entry: NamedValue,
-  own: Solved,
-  grids: OnGrid[],
-  halved: Solved | null,
-  outer: OuterTry[],
-  floor: Floor,
-): VerifiedResult {
+interface Evidence {
+  own: Solved
+  /** Finest first. */
+  grids: OnGrid[]
+  halved: Solved | null
+  outer: OuterTry[]
+  floor: Floor
+  /** By point and reported time. */
+  interpolation: number[][]
+}
+
+/** What interpolation leaves out at each point, by reported time. */
+function interpolationOf(d: Discretised, own: Solved): number[][] {
+  const moments = own.fields.length > 0 ? own.fields.slice(1).map(({ heads }) => heads) : [own.heads]
+  const byTime = moments.map((heads) => interpolationErrors(d, heads))
+  return (d.model.points ?? []).map((_, index) => byTime.map((errors) => errors[index] as number))
+}
+
+function verified(entry: NamedValue, evidence: Evidence): VerifiedResult {
+  const { own, halved, outer, floor } = evidence
   const steady = own.result.times.length === 0
   const found: VerifiedResult = {
     name: entry.name,
@@ -253,7 +276,7 @@ function verified(
   }
   entry.values.forEach((value, k) => {
     const time = steady ? null : (own.result.times[k] as number)
-    const error = value === null ? null : errorOnGrids(entry.name, time, grids)
+    const error = value === null ? null : errorOnGrids(entry.name, time, k, evidence)
     const step = value === null || !halved ? null : valueIn(halved, entry.name, time)
     const atStep = steady ? 0 : step === null ? null : stepFactor * Math.abs((value as number) - step)
     found.order.push(error?.order ?? null)
@@ -270,20 +293,40 @@ function verified(
   return found
 }
 
-/** Halved steps leave at most as much again as they change (first order), with the safety factor of an observed order. */
-const stepFactor = 2.5
+/** Halved steps leave at most as much again as they change (first order), with the safety factor. */
+const stepFactor = 2 * safetyFactor
 
-function errorOnGrids(name: string, time: number | null, grids: OnGrid[]): GridError {
+function errorOnGrids(name: string, time: number | null, k: number, evidence: Evidence): GridError {
+  const { grids } = evidence
   const usable = grids.flatMap((grid) => {
     const value = valueIn(grid.solved, name, time)
     return value === null ? [] : [{ grid, value }]
   })
   const own = usable.findIndex(({ grid }) => grid.times === 1)
   if (own < 0) return { error: 0, order: null, extrapolated: null, how: 'none' }
-  return gridError(
+  const found = gridError(
     usable.map(({ value }) => value),
     sizesOf(usable.map(({ grid }) => grid)),
     own,
+  )
+  return { ...found, error: Math.max(found.error, placement(name, time, k, evidence)) }
+}
+
+/** What the place of a point between centres, or of a line between faces, may be worth on the model's own grid. */
+function placement(
+  name: string,
+  time: number | null,
+  k: number,
+  { own, grids, interpolation }: Evidence,
+): number {
+  const point = own.result.points.findIndex((row) => `points/${row.name}` === name)
+  if (point >= 0) return safetyFactor * (interpolation[point]?.[k] ?? 0)
+  const finest = grids[0] as OnGrid
+  if (!name.startsWith('lines/') || finest.times >= 1) return 0
+  const here = valueIn(finest.solved, name, time)
+  return Math.max(
+    0,
+    ...shiftedNames(name).map((other) => changeOf(here, valueIn(finest.solved, other, time))),
   )
 }
 

@@ -2,7 +2,7 @@ import type { Model } from '../model'
 import type { FormulaComparison, Result } from '../result'
 import { circleFormula } from './circle'
 import { endlessFormula } from './endless'
-import type { Formula } from './formula'
+import { type Formula, meanRound } from './formula'
 import { rectangleFormula } from './rectangle'
 
 /** The formula that holds for a model as it stands, or null. Strict: nothing of the model may be left out of it. */
@@ -16,8 +16,8 @@ export function comparisonOf(model: Model, result: Result): FormulaComparison | 
   if (!formula) return null
   const times = result.times.length === 0 ? [0] : result.times
   const results: FormulaComparison['results'] = []
-  function compare(name: string, heads: (number | null)[], x: number, y: number): void {
-    const values = times.map((time) => (formula as Formula).headAt(x, y, time))
+  function compare(name: string, heads: (number | null)[], valueAt: (time: number) => number | null): void {
+    const values = times.map(valueAt)
     if (values.every((value) => value === null)) return
     const differences = values.map((value, k) => {
       const head = heads[k] ?? null
@@ -27,12 +27,16 @@ export function comparisonOf(model: Model, result: Result): FormulaComparison | 
   }
   for (const [index, { name, head }] of result.points.entries()) {
     const point = model.points?.[index]
-    if (point) compare(`points/${name}`, head, point.x, point.y)
+    if (point) compare(`points/${name}`, head, (time) => formula.headAt(point.x, point.y, time))
   }
   for (const [index, { name, wellHead, achieved, requested }] of result.wells.entries()) {
     const well = model.wells?.[index]
     if (!well?.radius || achieved.some((rate, k) => rate < 0.999999 * (requested[k] as number))) continue
-    compare(`wells/${name}`, wellHead, well.x + well.radius, well.y)
+    const { x, y, radius } = well
+    compare(`wells/${name}`, wellHead, (time) => {
+      const mean = meanRound(x, y, radius, (px, py) => formula.headAt(px, py, time) ?? Number.NaN)
+      return Number.isNaN(mean) ? null : mean
+    })
   }
   const { name, source, extentEffect } = formula
   return { name, source, extentEffect, results }

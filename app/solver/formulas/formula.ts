@@ -130,3 +130,13 @@ export function sidesOf(model: Model): Sides | null {
   }
   return sides
 }
+
+/** Mean of the heads round a well's face, which is the head in it: in four directions, so that no gradient counts. */
+export function meanRound(
+  x: number,
+  y: number,
+  radius: number,
+  headAt: (x: number, y: number) => number,
+): number {
+  return (headAt(x + radius, y) + headAt(x - radius, y) + headAt(x, y + radius) + headAt(x, y - radius)) / 4
+}
