@@ -4,7 +4,6 @@ import { cellAt, type Grid, gridOf } from './grid'
 import { groundOnGrid, type Profile, shiftLevels, thicknessAt, transmissivityAt } from './ground'
 import {
   type Along,
-  type CrossedFace,
   checkLine,
   crossedFaces,
   lineLength,
@@ -19,7 +18,7 @@ import { checkedPolygon, signedArea, visitCellsInside, visitOverlaps } from './p
 import type { Warning } from './result'
 import { refuseWhatIsNotComputed } from './scope'
 import { knownLevels, modelOfStage } from './stages'
-import { closedShare, type Tip, type TipGround, tipsOf } from './wall-tips'
+import { closeTips, type TipGround, tipsOf } from './wall-tips'
 import { type PlacedWell, placeWells } from './wells'
 
 /** Water exchanged with something outside the ground at a known level, in one cell or through one outer face of it. */
@@ -157,11 +156,11 @@ function placeWalls(d: Discretised): void {
     const free = freeEnds(d, walls, index)
     const tips = tipsOf(wall, free, ground)
     const inGround = lengthInGround(grid, active, tips.line)
-    const faces = crossedFaces(grid, tips.line, free).filter(({ face }) => {
+    const separated = crossedFaces(grid, tips.line, free).filter(({ face }) => {
       const { low, high } = faceOf(grid, face)
       return low >= 0 && high >= 0 && active[low] === 1 && active[high] === 1
     })
-    closeTips(grid, ground, tips, faces)
+    const faces = closeTips(wall, tips, ground, separated)
     if (faces.length === 0) {
       warnings.push({
         code: 'wall-not-represented',
@@ -222,19 +221,6 @@ function tipGroundOf({ grid, active, profileOf, profiles }: Discretised): TipGro
       const sum = (k: number[]) => k.reduce((total, value, layer) => total + value * thick(layer), 0)
       return { x: sum(profile.kx), y: sum(profile.ky) }
     },
-  }
-}
-
-/** Replaces the covered share of a wall's last faces by what must be closed there for the wall to be as long as it is. */
-function closeTips(grid: Grid, ground: TipGround, tips: Tip, faces: CrossedFace[]): void {
-  const last = tips.line.length - 2
-  for (const entry of faces) {
-    const { segment, t } = entry.at
-    if (!((tips.start && segment === 0 && t === 0) || (tips.end && segment === last && t === 1))) continue
-    const { axis, middle, length, lowHalf, highHalf } = faceOf(grid, entry.face)
-    const k = ground.conductivity(middle[0], middle[1])
-    const [across, along] = axis === 'x' ? [k.x, k.y] : [k.y, k.x]
-    entry.share = closedShare(entry.share, across, along, lowHalf + highHalf, length)
   }
 }
 

@@ -72,8 +72,9 @@ function crossingsAt(polygon: Position[], y: number): number[] {
   for (let k = 0; k < polygon.length; k++) {
     const a = polygon[k] as Position
     const b = polygon[(k + 1) % polygon.length] as Position
-    // Half-open in y, so that a corner at this height counts once.
-    if (a[1] <= y !== b[1] <= y) crossings.push(a[0] + ((y - a[1]) / (b[1] - a[1])) * (b[0] - a[0]))
+    // Half-open in y, so that a corner at this height counts once; a centre on a side lies on the side of it that
+    // crossedFaces sees, too.
+    if (a[1] < y !== b[1] < y) crossings.push(a[0] + ((y - a[1]) / (b[1] - a[1])) * (b[0] - a[0]))
   }
   return crossings.sort((p, q) => p - q)
 }
