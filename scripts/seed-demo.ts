@@ -470,6 +470,7 @@ const dated: Record<string, string[]> = {
   imports: ['created_at', 'committed_at'],
   packages: ['created_at'],
   package_signatures: ['signed_at'],
+  warning_acceptances: ['accepted_at'],
 }
 
 let phaseBegan = new Date()

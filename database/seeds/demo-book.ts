@@ -168,6 +168,8 @@ export const demoWells = (
   rate: rate(pumped),
   radius: metres(0.15),
   lowestLevel: metres(-12.5),
+  screenTop: metres(-1),
+  screenBottom: metres(-13.5),
   source: 'Wells as drilled, record sheets WD-01 to WD-08, revision B',
 }))
 
@@ -230,6 +232,7 @@ export const demoWalls = [
     line: ring(cutOffWall),
     thickness: metres(0.8),
     k: perDay(0.001),
+    toe: metres(-14.6),
     source: 'Wall design CW-03; joints as logged, October 2026',
   },
 ]
