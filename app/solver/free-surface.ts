@@ -17,7 +17,7 @@ import { sectionField } from './section-field'
 /** Changes of the wet set; each is one linear solve. */
 const mostChanges = 200
 
-/** After so many changes that leave as many cells to switch as before, draining and filling take turns. */
+/** After so many changes that leave as many cells to switch as before, draining and filling take turns, more coarsely. */
 const patience = 12
 
 /** Steps of minimal residuals between two looks at the wet set. */
@@ -157,6 +157,7 @@ function findWetSet(run: Search): boolean {
   const theta = new Float64Array(count)
   let fewest = Number.POSITIVE_INFINITY
   let idle = 0
+  let stuck = 0
   let settled = false
   for (let round = 0; round < mostChanges; round++) {
     settleTerms(run, round === 0)
@@ -184,15 +185,18 @@ function findWetSet(run: Search): boolean {
     // The last change is to what is left as the residual before it to the one after.
     run.headError = norm > 0 ? largest * Math.min(1, (2 * norm2(r)) / norm) : 0
     const before = run.residual
-    const switched = switchCells(run, idle < patience)
+    const tired = idle >= patience
+    const switched = switchCells(run, tired ? 1e-9 : Math.max(run.tolerance, 1e-13), !tired)
     measure(run)
     if (run.cancelled) return false
     settled = switched === 0
     if (settled) {
       if (run.residual <= run.tolerance) return true
-      if (run.residual > 0.5 * before) {
-        run.atRoundingFloor = run.residual < 1e-6
-        return run.atRoundingFloor && run.headError <= 1e4 * hairOf(run)
+      // Once or twice it may be that a drain or a seepage face came to act otherwise.
+      stuck = run.residual > 0.5 * before ? stuck + 1 : 0
+      if (stuck > 2 && run.residual < 1e-6) {
+        run.atRoundingFloor = true
+        return run.headError <= 1e-6 * heightOf(run)
       }
     }
     idle = switched < fewest ? 0 : idle + 1
@@ -288,16 +292,16 @@ function at(run: Search, p: Float64Array, c: number, share: 0 | 1): number {
 }
 
 /**
- * Lets cells of negative pressure drain and fills those that get too much; how many were switched. Not `together`:
- * cells are filled only when none has to drain.
+ * Lets cells of negative pressure drain and fills those that get too much; how many were switched. `hair`: share of the
+ * height and of a full cell that is taken for nothing. Not `together`: cells are filled only when none has to drain.
  */
-function switchCells(run: Search, together: boolean): number {
+function switchCells(run: Search, hair: number, together: boolean): number {
   const { wet, state } = run
   const { p, theta } = state
-  const hair = hairOf(run)
+  const least = -hair * heightOf(run)
   let drained = 0
   for (let c = 0; c < wet.length; c++) {
-    if (wet[c] !== 1 || (p[c] as number) >= -hair) continue
+    if (wet[c] !== 1 || (p[c] as number) >= least) continue
     wet[c] = 0
     p[c] = 0
     drained++
@@ -305,7 +309,7 @@ function switchCells(run: Search, together: boolean): number {
   if (drained > 0 && !together) return drained
   let filled = 0
   for (let c = 0; c < wet.length; c++) {
-    if (wet[c] === 1 || !((theta[c] as number) > 1 + 1e-9)) continue
+    if (wet[c] === 1 || !((theta[c] as number) > 1 + hair)) continue
     // Cells just drained still have the saturation 1 of wet ones, held cells always.
     wet[c] = 1
     theta[c] = 1
@@ -314,9 +318,9 @@ function switchCells(run: Search, together: boolean): number {
   return drained + filled
 }
 
-function hairOf({ balance }: Search): number {
+function heightOf({ balance }: Search): number {
   const { yEdges, rows } = balance.d.grid
-  return 1e-10 * ((yEdges[rows] as number) - (yEdges[0] as number))
+  return (yEdges[rows] as number) - (yEdges[0] as number)
 }
 
 /** About the solution of the wet cells' symmetric equations, water that leaves the wet set taken as lost. */
