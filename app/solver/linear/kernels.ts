@@ -1,5 +1,239 @@
-/** The arithmetic of the fast method, compiled. Without one its TypeScript twin serves. */
+/** What the compiled module exports (kernels/): addresses and sizes in bytes, rows from..to - 1. */
+export interface KernelExports {
+  black(single: number, size: number, stride: number, source: number, from: number, to: number): void
+  correctAlong: Between
+  correctBoth: Correction
+  correctRedAlong: RedBetween
+  correctRedBoth: RedCorrection
+  dense(
+    level: number,
+    size: number,
+    stride: number,
+    half: number,
+    columns: number,
+    rows: number,
+    inverse: number,
+    width: number,
+    natural: number,
+  ): void
+  direction(
+    single: number,
+    size: number,
+    stride: number,
+    double: number,
+    beta: number,
+    from: number,
+    to: number,
+  ): void
+  eliminate(
+    size: number,
+    stride: number,
+    double: number,
+    source: number,
+    withSource: number,
+    from: number,
+    to: number,
+  ): void
+  galerkinAlong(...numbers: number[]): void
+  galerkinBoth(...numbers: number[]): void
+  galerkinRedAlong: RedGalerkin
+  galerkinRedBoth: RedGalerkin
+  invert: Sweep
+  joined(
+    single: number,
+    size: number,
+    stride: number,
+    double: number,
+    columns: number,
+    into: number,
+    red: number,
+    black: number,
+    from: number,
+    to: number,
+  ): void
+  largest(size: number, stride: number, double: number, array: number, from: number, to: number): number
+  load5(
+    single: number,
+    size: number,
+    stride: number,
+    double: number,
+    columns: number,
+    rows: number,
+    east: number,
+    north: number,
+    own: number,
+    from: number,
+    to: number,
+  ): void
+  parted(
+    size: number,
+    stride: number,
+    double: number,
+    columns: number,
+    given: number,
+    red: number,
+    black: number,
+    from: number,
+    to: number,
+  ): void
+  product(size: number, stride: number, double: number, from: number, to: number): number
+  redLast(single: number, size: number, stride: number, double: number, from: number, to: number): number
+  redRest(single: number, size: number, stride: number, from: number, to: number): void
+  relax(
+    level: number,
+    size: number,
+    stride: number,
+    half: number,
+    from: number,
+    to: number,
+    backwards: number,
+  ): void
+  residual: Sweep
+  restrictAlong: Between
+  restrictBoth: Between
+  restrictRedAlong: RedBetween
+  restrictRedBoth: RedBetween
+  sharesOf(
+    level: number,
+    size: number,
+    stride: number,
+    half: number,
+    columns: number,
+    rows: number,
+    shares: number,
+    sharesSize: number,
+    along: number,
+    from: number,
+    to: number,
+  ): void
+  sharesRedBoth(
+    size: number,
+    stride: number,
+    double: number,
+    columns: number,
+    rows: number,
+    shares: number,
+    sharesSize: number,
+    from: number,
+    to: number,
+  ): void
+  startEven: Sweep
+  startOdd: Sweep
+  startResidual: Sweep
+  step(
+    single: number,
+    size: number,
+    stride: number,
+    double: number,
+    alpha: number,
+    scale: number,
+    from: number,
+    to: number,
+  ): number
+  trueResidual(
+    single: number,
+    size: number,
+    stride: number,
+    double: number,
+    scale: number,
+    from: number,
+    to: number,
+  ): number
+}
+
+type Sweep = (level: number, size: number, stride: number, half: number, from: number, to: number) => void
+
+/** level, size, stride, half, shares, sharesSize, coarse level, its size, stride and half, memory for a row. */
+type Between = (
+  level: number,
+  size: number,
+  stride: number,
+  half: number,
+  shares: number,
+  sharesSize: number,
+  coarse: number,
+  coarseSize: number,
+  coarseStride: number,
+  coarseHalf: number,
+  natural: number,
+  from: number,
+  to: number,
+) => void
+
+type Correction = (
+  level: number,
+  size: number,
+  stride: number,
+  half: number,
+  shares: number,
+  sharesSize: number,
+  coarse: number,
+  coarseSize: number,
+  coarseStride: number,
+  coarseHalf: number,
+  natural: number,
+  apart: number,
+  from: number,
+  to: number,
+) => void
+
+type RedBetween = (
+  single: number,
+  size: number,
+  stride: number,
+  shares: number,
+  sharesSize: number,
+  coarse: number,
+  coarseSize: number,
+  coarseStride: number,
+  coarseHalf: number,
+  natural: number,
+  from: number,
+  to: number,
+) => void
+
+type RedCorrection = (
+  single: number,
+  size: number,
+  stride: number,
+  shares: number,
+  sharesSize: number,
+  coarse: number,
+  coarseSize: number,
+  coarseStride: number,
+  coarseHalf: number,
+  natural: number,
+  apart: number,
+  from: number,
+  to: number,
+) => void
+
+type RedGalerkin = (
+  size: number,
+  stride: number,
+  double: number,
+  columns: number,
+  shares: number,
+  sharesSize: number,
+  coarse: number,
+  coarseSize: number,
+  coarseStride: number,
+  coarseHalf: number,
+  from: number,
+  to: number,
+) => void
+
+/** The arithmetic of the fast method, compiled. Without it its TypeScript twin serves. */
 export interface Kernels {
-  /** What a run reports: 'wasm-simd', 'wasm-simd, 2 threads'. */
+  /** What a run reports: 'wasm-simd' or 'wasm-simd, 2 threads'. */
   name: string
+  module: WebAssembly.Module
+}
+
+/**
+ * Compiles the module of kernels/ from its bytes, at once: on a server's thread or in a web worker. Throws
+ * WebAssembly.CompileError where the machine has no SIMD of WebAssembly: then do without.
+ */
+export function instantiateKernels(bytes: BufferSource): Kernels {
+  return { name: 'wasm-simd', module: new WebAssembly.Module(bytes) }
 }

@@ -1,3 +1,4 @@
+import { prepareCompiled } from './compiled'
 import type { Kernels } from './kernels'
 import type { LinearOptions, LinearOutcome, LinearSystem, Prepared } from './system'
 
@@ -155,8 +156,9 @@ function interpolate(level: Level, axis: Axis, coarseColumns: number): [Interpol
     share[4 * c + k] = value
   }
   function between(c: number, low: number, high: number): [number, number] {
-    const a = Math.max(low, 0)
-    const b = Math.max(high, 0)
+    // A negative sum of links counts nothing; when neither side has a positive one, their sizes count.
+    const a = low > 0 ? low : high > 0 ? 0 : -low
+    const b = high > 0 ? high : low > 0 ? 0 : -high
     const held = Math.max(at(own, c), 0)
     const sum = a + b + held
     defect[c] = sum > 0 ? held / sum : 1
@@ -452,9 +454,11 @@ function dot(a: Float64Array, b: Float64Array): number {
 
 /**
  * Makes a system ready for `solve`: the hierarchy of grids and the factor of the coarsest. Numbers in the system are
- * copied. Nothing is thrown: a system that is not positive definite ends its solves as stalled.
+ * copied. Nothing is thrown: a system that is not positive definite ends its solves as stalled. With `kernels` a
+ * five-point system is solved by compiled arithmetic (compiled.ts), in the same way.
  */
-export function prepareMultigrid(system: LinearSystem, _kernels?: Kernels): Prepared {
+export function prepareMultigrid(system: LinearSystem, kernels?: Kernels): Prepared {
+  if (kernels && !system.northEast && !system.northWest) return prepareCompiled(system, kernels)
   const levels = [finest(system)]
   let last = levels[0] as Level
   while (last.columns * last.rows > coarsest) {
