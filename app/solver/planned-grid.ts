@@ -23,7 +23,14 @@ interface Feature {
   what: string
   /** Cells at this edge are at most so wide; only refine points ask for that. */
   size: number
+  /** Is it one at all? Asked only where no edge lies already, as the answer takes time. */
+  isThere?: () => boolean
 }
+
+const mostRefinePoints = 1000
+
+/** Places looked up in the outlines of the ground before a grid is refused: some seconds. */
+const mostLookUps = 3e8
 
 /**
  * Plans the edges of a grid from a largest cell size and refine points. Edges lie at the extent, at refine points, at
@@ -82,12 +89,21 @@ function featuresOf(model: Model, planned: PlannedGrid, axis: 0 | 1, low: number
     what: "the extent's edge",
     size: Number.POSITIVE_INFINITY,
   }))
-  function add(at: number, rank: number, what: string, size = Number.POSITIVE_INFINITY): void {
-    if (at > low && at < high) features.push({ at, rank, what, size })
+  function add(
+    at: number,
+    rank: number,
+    what: string,
+    size = Number.POSITIVE_INFINITY,
+    isThere?: () => boolean,
+  ): void {
+    if (at > low && at < high) features.push({ at, rank, what, size, ...(isThere && { isThere }) })
     // On the edge itself there is an edge already, but a refine point still asks for its size.
     else if ((at === low || at === high) && size < Number.POSITIVE_INFINITY) {
       features.push({ at, rank: 0, what, size })
     }
+  }
+  if ((planned.refine?.length ?? 0) > mostRefinePoints) {
+    throw new ModelError('grid.refine', `has more than ${mostRefinePoints} points`)
   }
   planned.refine?.forEach((point, index) => {
     const path = `grid.refine[${index}]`
@@ -108,28 +124,25 @@ function featuresOf(model: Model, planned: PlannedGrid, axis: 0 | 1, low: number
     const name = boundary.name ? `the boundary "${boundary.name}"` : `boundary no. ${index + 1}`
     for (const vertex of endsAndBends(boundary.line)) add(vertex[axis], 3, name)
   })
-  const polygons = model.ground.map((entry, index) =>
-    entry.polygon ? checkedPolygon(entry.polygon, `ground[${index}].polygon`) : null,
-  )
-  const span = high - low
-  polygons.forEach((polygon) => {
-    if (!polygon) return
-    polygon.forEach((corner, k) => {
+  const ground = coverOf(model)
+  const step = 1e-7 * (high - low)
+  for (const polygon of ground.polygons) {
+    if (!polygon) continue
+    for (const [k, corner] of polygon.entries()) {
       const before = polygon[(k + polygon.length - 1) % polygon.length] as Position
       const after = polygon[(k + 1) % polygon.length] as Position
-      if (turnAt(before, corner, after) >= leastTurn && touchesHole(model, polygons, corner, 1e-7 * span)) {
-        add(corner[axis], 3, 'a corner of the ground')
+      if (turnAt(before, corner, after) >= leastTurn) {
+        add(corner[axis], 3, 'a corner of the ground', Number.POSITIVE_INFINITY, () =>
+          touchesHole(model, ground, corner, step),
+        )
       }
-      const other = axis === 0 ? 1 : 0
-      if (
-        Math.abs(after[axis] - corner[axis]) <= 1e-9 * span &&
-        partsGround(model.ground, polygons, corner, after, axis, 1e-7 * span)
-      ) {
-        // A side along the axis' own edge line; its ends belong to the other axis.
-        if (after[other] !== corner[other]) add(corner[axis], 4, 'an interface of the ground')
+      if (Math.abs(after[axis] - corner[axis]) <= 0.01 * step) {
+        add(corner[axis], 4, 'an interface of the ground', Number.POSITIVE_INFINITY, () =>
+          partsGround(ground, corner, after, axis, step),
+        )
       }
-    })
-  })
+    }
+  }
   return features
 }
 
@@ -154,22 +167,40 @@ function turnAt(a: Position, b: Position, c: Position): number {
   return (Math.abs(Math.atan2(ux * vy - uy * vx, ux * vx + uy * vy)) * 180) / Math.PI
 }
 
+/** The ground's outlines, and how many vertices have been looked at so far. */
+interface Cover {
+  ground: Ground[]
+  polygons: (Position[] | null)[]
+  vertices: number
+  lookUps: number
+}
+
+function coverOf({ ground }: Model): Cover {
+  const polygons = ground.map((entry, index) =>
+    entry.polygon ? checkedPolygon(entry.polygon, `ground[${index}].polygon`) : null,
+  )
+  const vertices = polygons.reduce((sum, polygon) => sum + (polygon?.length ?? 1), 0)
+  return { ground, polygons, vertices, lookUps: 0 }
+}
+
 /** The last ground entry that covers a place, or -1. */
-function entryAt(polygons: (Position[] | null)[], x: number, y: number): number {
-  for (let k = polygons.length - 1; k >= 0; k--) {
-    const polygon = polygons[k]
+function entryAt(cover: Cover, x: number, y: number): number {
+  cover.lookUps += cover.vertices
+  if (cover.lookUps > mostLookUps) {
+    throw new ModelError(
+      'grid',
+      'the ground has too many corners to plan a grid around: give columns and rows',
+    )
+  }
+  for (let k = cover.polygons.length - 1; k >= 0; k--) {
+    const polygon = cover.polygons[k]
     if (!polygon || isInside(polygon, x, y)) return k
   }
   return -1
 }
 
 /** Is there ground on some sides of a place, inside the extent, and none on others? */
-function touchesHole(
-  { extent }: Model,
-  polygons: (Position[] | null)[],
-  [x, y]: Position,
-  step: number,
-): boolean {
+function touchesHole({ extent }: Model, cover: Cover, [x, y]: Position, step: number): boolean {
   let covered = false
   let open = false
   const directions = 16
@@ -177,26 +208,19 @@ function touchesHole(
     const angle = ((k + 0.37) * 2 * Math.PI) / directions
     const [px, py] = [x + step * Math.cos(angle), y + step * Math.sin(angle)]
     if (px < extent.x[0] || px > extent.x[1] || py < extent.y[0] || py > extent.y[1]) continue
-    if (entryAt(polygons, px, py) >= 0) covered = true
+    if (entryAt(cover, px, py) >= 0) covered = true
     else open = true
   }
   return covered && open
 }
 
 /** Is the ground different on the two sides of an axis-parallel side from `a` to `b`, anywhere along it? */
-function partsGround(
-  ground: Ground[],
-  polygons: (Position[] | null)[],
-  a: Position,
-  b: Position,
-  axis: 0 | 1,
-  step: number,
-): boolean {
+function partsGround(cover: Cover, a: Position, b: Position, axis: 0 | 1, step: number): boolean {
   const other = axis === 0 ? 1 : 0
   const from = Math.min(a[other], b[other])
   const to = Math.max(a[other], b[other])
   const cuts = [from, to]
-  for (const polygon of polygons) {
+  for (const polygon of cover.polygons) {
     for (const corner of polygon ?? [])
       if (corner[other] > from && corner[other] < to) cuts.push(corner[other])
   }
@@ -204,9 +228,10 @@ function partsGround(
   for (let k = 0; k + 1 < cuts.length; k++) {
     const middle = ((cuts[k] as number) + (cuts[k + 1] as number)) / 2
     const beside = [a[axis] - step, a[axis] + step].map((place) =>
-      axis === 0 ? entryAt(polygons, place, middle) : entryAt(polygons, middle, place),
+      axis === 0 ? entryAt(cover, place, middle) : entryAt(cover, middle, place),
     ) as [number, number]
-    if (beside[0] !== beside[1] && groundKey(ground[beside[0]]) !== groundKey(ground[beside[1]])) return true
+    const [one, two] = [cover.ground[beside[0]], cover.ground[beside[1]]]
+    if (one !== two && groundKey(one) !== groundKey(two)) return true
   }
   return false
 }
@@ -247,21 +272,22 @@ function mergedFeatures(
   const letter = axis === 0 ? 'x' : 'y'
   const inOrder = [...features].sort((a, b) => a.rank - b.rank || a.at - b.at || a.size - b.size)
   for (const feature of inOrder) {
-    const near = kept.reduce<(Edge & { what: string }) | null>(
-      (best, edge) =>
-        !best || Math.abs(edge.at - feature.at) < Math.abs(best.at - feature.at) ? edge : best,
-      null,
-    )
+    const next = placeIn(kept, feature.at)
+    const [below, above] = [kept[next - 1], kept[next]]
+    const near = below && (!above || feature.at - below.at <= above.at - feature.at) ? below : above
     const distance = near ? Math.abs(near.at - feature.at) : Number.POSITIVE_INFINITY
     const wanted = wantedSize(feature.at)
+    if (near && distance <= 1e-6 * wanted) {
+      near.size = Math.min(near.size, feature.size)
+      continue
+    }
+    if (feature.isThere && !feature.isThere()) continue
     if (!near || distance > tooClose * wanted) {
-      kept.push({ at: feature.at, size: feature.size, what: feature.what })
+      kept.splice(next, 0, { at: feature.at, size: feature.size, what: feature.what })
       continue
     }
     near.size = Math.min(near.size, feature.size)
-    if (distance > 1e-6 * wanted) {
-      merged.push(`${feature.what} at ${letter} = ${feature.at} onto ${near.what} at ${letter} = ${near.at}`)
-    }
+    merged.push(`${feature.what} at ${letter} = ${feature.at} onto ${near.what} at ${letter} = ${near.at}`)
   }
   if (merged.length > 0) {
     const more = merged.length > 4 ? `, and ${merged.length - 4} more` : ''
@@ -271,7 +297,19 @@ function mergedFeatures(
       text: `Edges of the planned grid closer together than a tenth of the cells there were merged: ${merged.slice(0, 4).join('; ')}${more}. A refine point there keeps them apart.`,
     })
   }
-  return kept.sort((a, b) => a.at - b.at)
+  return kept
+}
+
+/** Where `at` belongs among rising edges. */
+function placeIn(edges: Edge[], at: number): number {
+  let low = 0
+  let high = edges.length
+  while (low < high) {
+    const middle = (low + high) >> 1
+    if ((edges[middle] as Edge).at < at) low = middle + 1
+    else high = middle
+  }
+  return low
 }
 
 /** Stretch between two neighbouring edges. `first`, `last`: upper bounds of its outermost cells; `cap`: of any. */
