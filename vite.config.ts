@@ -35,6 +35,7 @@ export default defineConfig({
     include: inBrowser ? ['test/browser/**/*.test.ts'] : ['app/**/*.test.{ts,tsx}', 'test/**/*.test.ts'],
     exclude: inBrowser ? [] : ['test/browser/**'],
     fileParallelism: !inBrowser,
+    globalSetup: ['test/kernels.ts'],
     setupFiles: ['test/stray-errors.ts'],
     environment: 'node',
     testTimeout: inBrowser ? 180_000 : 60_000,

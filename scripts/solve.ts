@@ -6,11 +6,15 @@
  * "converged": false).
  */
 import { readFileSync, writeFileSync } from 'node:fs'
+import { dirname, join } from 'node:path'
+import { fileURLToPath } from 'node:url'
 import { parseModelFile } from '~/cases/model-file'
 import { modelHash } from '~/cases/model-hash.server'
+import { solverKernels } from '~/heads/kernels.server'
 import { encodeHeads } from '~/solver/heads-buffer'
 import { ModelError } from '~/solver/model-error'
 import { solveModel } from '~/solver/solve'
+import { compileKernels } from './compile-kernels.ts'
 
 const refused = 2
 const notConverged = 3
@@ -57,7 +61,10 @@ function run({ file, headsFile }: Request): number {
   const parsed = parseModelFile(json)
   if (!parsed.ok)
     throw new Refusal(parsed.errors.map(({ path, message }) => `${path}: ${message}`).join('\n'))
-  const { result, heads, fields, grid } = solveModel(parsed.model, { input: modelHash(json) })
+  const { result, heads, fields, grid } = solveModel(parsed.model, {
+    input: modelHash(json),
+    kernels: solverKernels(),
+  })
   if (headsFile !== null) {
     try {
       writeFileSync(headsFile, new Uint8Array(encodeHeads(grid, fields.length > 0 ? fields : heads)))
@@ -71,6 +78,7 @@ function run({ file, headsFile }: Request): number {
   return result.converged ? 0 : notConverged
 }
 
+await compileKernels(join(dirname(dirname(fileURLToPath(import.meta.url))), '.data/kernels'))
 try {
   process.exitCode = run(requestOf(process.argv.slice(2)))
 } catch (error) {

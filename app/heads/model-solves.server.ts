@@ -4,6 +4,7 @@ import { findJob, type Job, openJobs, startJob } from '~/jobs/jobs.server'
 import type { Model } from '~/solver/model'
 import type { Result } from '~/solver/result'
 import type { Database } from '~database/connection.server'
+import { solverKernels } from './kernels.server'
 import { inTurn, longestSolveSeconds, openSolvesPerPerson, type SolvedMessage } from './runs.server'
 
 /** A model file that came by itself, outside any project, and what became of it. */
@@ -38,7 +39,7 @@ export async function startModelSolve(
       projectId: null,
       userId,
       kind: 'solve',
-      workerData: { model, input: modelHash(model) },
+      workerData: { model, input: modelHash(model), kernels: solverKernels() },
       limitSeconds: longestSolveSeconds,
       onDone: async ({ result }, jobId) => {
         const stored = await putBuffer(Buffer.from(JSON.stringify(result)), {

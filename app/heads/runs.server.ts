@@ -13,6 +13,7 @@ import type { Result } from '~/solver/result'
 import type { SolveMessage } from '~/solver/solve.thread'
 import { convert } from '~/units'
 import type { Database } from '~database/connection.server'
+import { solverKernels } from './kernels.server'
 import type { RunLine, RunPoint, RunState, RunStatus, SolveProgress } from './run'
 
 /** A solve that takes longer is stopped. */
@@ -274,7 +275,7 @@ function launch(
     projectId: run.projectId,
     userId: run.userId,
     kind: 'solve',
-    workerData: { model: run.model, input: `sha256:${run.inputSha256}` },
+    workerData: { model: run.model, input: `sha256:${run.inputSha256}`, kernels: solverKernels() },
     limitSeconds: longestSolveSeconds,
     onStart: async () => {
       await db('runs')

@@ -1,5 +1,6 @@
 import { parentPort, workerData } from 'node:worker_threads'
 import { encodeHeads } from './heads-buffer'
+import type { Kernels } from './linear/kernels'
 import type { Model } from './model'
 import { ModelError } from './model-error'
 import type { Result } from './result'
@@ -10,6 +11,8 @@ export interface SolveRequest {
   model: Model
   input?: string
   cancel?: SharedArrayBuffer | Int32Array
+  /** Compiled once, by whoever starts threads. */
+  kernels?: Kernels
 }
 
 /** What the thread posts: progress at most five times a second, then one of the others, once. */
@@ -22,7 +25,7 @@ export type SolveMessage =
 const progressEvery = 200
 
 function run(
-  { model, input, cancel }: SolveRequest,
+  { model, input, cancel, kernels }: SolveRequest,
   post: (message: SolveMessage, move?: ArrayBuffer[]) => void,
 ): void {
   const flag = cancel instanceof Int32Array ? cancel : cancel ? new Int32Array(cancel) : null
@@ -30,6 +33,7 @@ function run(
   try {
     const solution = solveModel(model, {
       input,
+      kernels,
       isCancelled: () => flag !== null && Atomics.load(flag, 0) !== 0,
       onProgress: (progress) => {
         const now = performance.now()

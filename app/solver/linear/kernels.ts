@@ -223,9 +223,12 @@ type RedGalerkin = (
   to: number,
 ) => void
 
-/** The arithmetic of the fast method, compiled. Without it its TypeScript twin serves. */
+/**
+ * The arithmetic of the fast method, compiled. Without it its TypeScript twin serves. It can be sent to a worker, which
+ * then has nothing to compile.
+ */
 export interface Kernels {
-  /** What a run reports: 'wasm-simd' or 'wasm-simd, 2 threads'. */
+  /** What a run reports. */
   name: string
   module: WebAssembly.Module
 }
@@ -234,6 +237,6 @@ export interface Kernels {
  * Compiles the module of kernels/ from its bytes, at once: on a server's thread or in a web worker. Throws
  * WebAssembly.CompileError where the machine has no SIMD of WebAssembly: then do without.
  */
-export function instantiateKernels(bytes: BufferSource): Kernels {
+export function instantiateKernels(bytes: Uint8Array<ArrayBuffer>): Kernels {
   return { name: 'wasm-simd', module: new WebAssembly.Module(bytes) }
 }
