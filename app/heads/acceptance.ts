@@ -17,9 +17,7 @@ const fewestWords = 4
 
 export const acceptanceSchema = z.object({
   runId: z.coerce.number().int().positive(),
-  warnings: z
-    .union([z.string(), z.array(z.string())], { error: 'Tick the warnings that you accept.' })
-    .transform((given) => [given].flat()),
+  warnings: z.array(z.string()).min(1, 'Tick the warnings that you accept.'),
   reason: z
     .string({ error: 'Say why the result may be used all the same.' })
     .trim()

@@ -125,7 +125,7 @@ describe('A warning that somebody has to accept', () => {
 
 describe('The form', () => {
   const parse = (given: object) =>
-    acceptanceSchema.safeParse({ runId: '7', warnings: 'It hangs.', reason, ...given })
+    acceptanceSchema.safeParse({ runId: '7', warnings: ['It hangs.'], reason, ...given })
 
   it('takes one warning or several, with a sentence', () => {
     expect(parse({}).data).toEqual({ runId: 7, warnings: ['It hangs.'], reason })
@@ -143,6 +143,6 @@ describe('The form', () => {
     ]) {
       expect(parse({ reason: empty }).success).toBe(false)
     }
-    expect(parse({ warnings: undefined }).success).toBe(false)
+    expect(parse({ warnings: [] }).success).toBe(false)
   })
 })

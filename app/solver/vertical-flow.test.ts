@@ -57,7 +57,7 @@ describe('a wall that hangs', () => {
   it('is told when its toe lies above the base of the ground, with what the ground under it transmits', () => {
     const [warning] = toAccept(sandOnClay({ ...gradient, walls: [{ ...wall, toe: 4 }] }))
     expect(warning).toMatchObject({ code: 'hanging-wall', severity: 'check' })
-    expect(warning?.text).toContain('"Cut-off" ends at 4, up to 4 above the base')
+    expect(warning?.text).toContain('"Cut-off" ends at 4 m, up to 4 m above the base')
     // 4 m of about 10 m.
     expect(warning?.text).toMatch(/: (36|37|38|39|40) % of what the ground transmits/)
     expect(warning?.text).toContain('vertical section')

@@ -157,6 +157,7 @@ function percent(share: number): string {
 
 function hangingWalls({ d, heads }: State): Found[] {
   const found: Found[] = []
+  const unit = d.model.units.length
   for (const wall of d.model.walls ?? []) {
     if (wall.toe === undefined) continue
     const toe = wall.toe - d.reference
@@ -178,7 +179,7 @@ function hangingWalls({ d, heads }: State): Found[] {
       code: 'hanging-wall',
       what: wall.name,
       size: gap,
-      text: `The wall "${wall.name}" ends at ${wall.toe}, up to ${short(gap)} above the base of the ground: ${percent(open)} of what the ground transmits lies under its toe. Plan flow closes it to the base, so that the flow under the toe and the heads it raises behind the wall are left out. ${sectionAnswers}`,
+      text: `The wall "${wall.name}" ends at ${wall.toe} ${unit}, up to ${short(gap)} ${unit} above the base of the ground: ${percent(open)} of what the ground transmits lies under its toe. Plan flow closes it to the base, so that the flow under the toe and the heads it raises behind the wall are left out. ${sectionAnswers}`,
     })
   }
   return found
@@ -194,6 +195,7 @@ function cellsBeside(d: Discretised, cell: number, face: number): number[] {
 
 function partScreens(state: State): Found[] {
   const { d, report, when } = state
+  const unit = d.model.units.length
   const found: Found[] = []
   d.wells.forEach((well, index) => {
     const screen = d.model.wells?.[index]?.screen
@@ -221,7 +223,7 @@ function partScreens(state: State): Found[] {
       code: 'part-screen',
       what: well.name,
       size: wet - open,
-      text: `The well "${well.name}" is open over ${short(open)} of ${short(wet)} of saturated thickness${when} (${percent(open / wet)}). Within about ${short(reach)} of it the flow is not horizontal: ${results.join(' and ')} would differ: the well moves heads beside it by more than plan flow says. ${sectionAnswers}`,
+      text: `The well "${well.name}" is open over ${short(open)} of ${short(wet)} ${unit} of saturated thickness${when} (${percent(open / wet)}). Within about ${short(reach)} ${unit} of it the flow is not horizontal, and the well moves heads by more than plan flow says: ${results.join(' and ')} would differ. ${sectionAnswers}`,
     })
   })
   return found
@@ -366,7 +368,7 @@ function drawnToTheBase(state: State): Found[] {
       code: 'drawn-to-the-base',
       what,
       size: 1 - share,
-      text: `${what} draws the water table${when} down to the lowest ${percent(Math.max(share, 0.001))} of the ground there. In truth water seeps out above the level it is drawn to, and flow is not horizontal within about ${short(reach)} of it: heads there stand higher than plan flow says. ${sectionAnswers}`,
+      text: `${what} draws the water table${when} down to the lowest ${percent(Math.max(share, 0.001))} of the ground there. In truth water seeps out above the level it is drawn to, and flow is not horizontal within about ${short(reach)} ${d.model.units.length} of it: heads there stand higher than plan flow says. ${sectionAnswers}`,
     })
   }
   d.wells.forEach((well, index) => {
@@ -426,7 +428,7 @@ function steepEdges(state: State): Found[] {
       code: 'steep-edge',
       what: name,
       size: share,
-      text: `Beside "${name}", near (${placeOf(state, cell)}), the head changes by ${short(jump)}${when} within one saturated thickness, ${percent(share)} of it. Flow there rises or falls steeply towards the edge: plan flow has the heads within about ${reachInThicknesses} thicknesses of it wrong, and says nothing of gradients through the floor. ${sectionAnswers}`,
+      text: `Beside "${name}", near (${placeOf(state, cell)}), the head changes by ${short(jump)} ${d.model.units.length}${when} within one saturated thickness, ${percent(share)} of it. Flow there rises or falls steeply towards the edge: plan flow has the heads within about ${reachInThicknesses} thicknesses of it wrong, and says nothing of gradients through the floor. ${sectionAnswers}`,
     }
   })
 }
