@@ -74,7 +74,7 @@ interface Search {
   lets: Float64Array
   gets: Float64Array
   imbalance: Float64Array
-  size: Float64Array
+  /** What the residual is relative to. */
   rightHandSide: number
   residual: number
   iterations: number
@@ -133,8 +133,7 @@ function searchOf(
     lets,
     gets,
     imbalance: new Float64Array(count),
-    size: new Float64Array(count),
-    rightHandSide: 0,
+    rightHandSide: drivingFlow(balance, gets),
     residual: Number.POSITIVE_INFINITY,
     iterations: 0,
     mostIterations: mostIterations(step.method, count),
@@ -206,19 +205,31 @@ function findWetSet(run: Search): boolean {
   return false
 }
 
-function measure(run: Search): void {
-  const { balance, state, imbalance, size, storage } = run
-  netInflow(balance, state, storage, imbalance, size)
-  let sum = 0
-  let whole = 0
-  for (let c = 0; c < imbalance.length; c++) {
-    if (balance.d.active[c] !== 1) continue
-    if (!Number.isNaN(balance.held[c] as number)) continue
-    sum += (imbalance[c] as number) ** 2
-    whole += (size[c] as number) ** 2
+/**
+ * Norm of what drives the flow: all that would enter a full cell from outside at no pressure, and the weight of the
+ * water in it, which is there even when water rests.
+ */
+function drivingFlow({ d, held, terms, fall }: SectionBalance, gets: Float64Array): number {
+  const given = gets.map((q, c) => Math.abs(q) + (fall[c] as number))
+  for (const { cell, conductance, level, cap, gravity } of terms) {
+    given[cell] = (given[cell] as number) + conductance * Math.min(level, cap) + gravity
   }
-  run.rightHandSide = Math.sqrt(whole)
-  run.residual = whole > 0 ? Math.sqrt(sum / whole) : 0
+  let sum = 0
+  for (let c = 0; c < given.length; c++) {
+    if (d.active[c] === 1 && Number.isNaN(held[c] as number)) sum += (given[c] as number) ** 2
+  }
+  return Math.sqrt(sum)
+}
+
+function measure(run: Search): void {
+  const { balance, state, imbalance, storage } = run
+  netInflow(balance, state, storage, imbalance)
+  let sum = 0
+  for (let c = 0; c < imbalance.length; c++) {
+    if (balance.d.active[c] !== 1 || !Number.isNaN(balance.held[c] as number)) continue
+    sum += (imbalance[c] as number) ** 2
+  }
+  run.residual = run.rightHandSide > 0 ? Math.sqrt(sum) / run.rightHandSide : 0
   run.history.push({ iterations: run.iterations, residual: run.residual })
   run.options.onProgress?.({
     iterations: run.iterations,

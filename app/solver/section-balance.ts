@@ -229,7 +229,7 @@ function termOf(balance: SectionBalance, exchange: Exchange): Term | null {
     return { ...term, conductance, level, cap }
   }
   const seeps = exchange.kind === 'seepage'
-  if (axis === 'x') return sideTerm(d, exchange, k, term)
+  if (axis === 'x') return sideTerm(d, exchange, k, elevation, term)
   const face = faceOf(d.grid, exchange.face)
   const isFoot = face.high === cell
   const above = exchange.head - (face.middle[1] - d.reference)
@@ -242,28 +242,35 @@ function termOf(balance: SectionBalance, exchange: Exchange): Term | null {
   return { ...term, conductance: half, level: pressure + exchange.half, oneSided: seeps }
 }
 
-/** A head at an upright face: it acts on the part of the face below it. */
+/**
+ * A head at an upright face drives flow as the heads of the cell and the face say, so that water at rest stays at rest
+ * where a level cuts the face. Where it lies below the cell's centre only what is under water lets water out.
+ */
 function sideTerm(
   d: Discretised,
   exchange: Exchange,
   k: number,
+  elevation: number,
   term: Omit<Term, 'conductance' | 'level'>,
 ): Term | null {
   const { width, half, head } = exchange
-  if (exchange.kind === 'seepage') {
-    return { ...term, conductance: (k * width) / half, level: 0, oneSided: true }
-  }
   const { middle, length } = faceOf(d.grid, exchange.face)
   const whole = width >= length * (1 - 1e-9)
   const centre = (whole ? middle[1] : (exchange.elevation ?? middle[1])) - d.reference
+  if (exchange.kind === 'seepage') {
+    return {
+      ...term,
+      conductance: (k * width) / half,
+      level: Math.max(0, centre - elevation),
+      oneSided: true,
+    }
+  }
   const wet = Math.min(width, head - (centre - width / 2))
   if (wet <= 1e-9 * length) return null
-  return {
-    ...term,
-    conductance: (k * wet) / half,
-    level: head - (centre - width / 2 + wet / 2),
-    oneSided: false,
-  }
+  const above = head - elevation
+  if (above > 0) return { ...term, conductance: (k * width) / half, level: above }
+  // Twice as much as is wet: where the level is at the centre, the whole of it.
+  return { ...term, conductance: (k * Math.min(width, 2 * wet)) / half, level: 0, oneSided: true }
 }
 
 /** Flow of a term into its cell, and -dq/dp. */
@@ -284,29 +291,21 @@ export function sectionStored(balance: SectionBalance, { p, theta }: SectionStat
   )
 }
 
-/**
- * Net inflow of every cell, storage taken off; in `size` the sum of the magnitudes of what flows into and out of it
- * other than from cell to cell.
- */
+/** Net inflow of every cell, storage taken off. */
 export function netInflow(
   balance: SectionBalance,
   { p, theta }: SectionState,
   storage: StorageTerm | null,
   out: Float64Array,
-  size: Float64Array,
 ): void {
-  const { d, columns, rows, east, north, fall, held, source, sink, terms } = balance
+  const { d, columns, rows, east, north, fall, source, sink, terms } = balance
   out.fill(0)
-  size.fill(0)
-  function outside(cell: number, q: number): void {
+  function add(cell: number, q: number): void {
     out[cell] = (out[cell] as number) + q
-    size[cell] = (size[cell] as number) + Math.abs(q)
   }
   function between(low: number, high: number, q: number): void {
-    out[low] = (out[low] as number) - q
-    out[high] = (out[high] as number) + q
-    if (!Number.isNaN(held[low] as number)) size[high] = (size[high] as number) + Math.abs(q)
-    if (!Number.isNaN(held[high] as number)) size[low] = (size[low] as number) + Math.abs(q)
+    add(low, -q)
+    add(high, q)
   }
   for (let j = 0; j < rows; j++) {
     for (let i = 0; i < columns; i++) {
@@ -319,18 +318,17 @@ export function netInflow(
         const falls = (fall[above] as number) * (theta[above] as number)
         between(c, above, (north[c] as number) * (own - (p[above] as number)) - falls)
       }
-      outside(c, source[c] as number)
-      outside(c, -(sink[c] as number) * (theta[c] as number))
+      add(c, (source[c] as number) - (sink[c] as number) * (theta[c] as number))
     }
   }
   for (const term of terms) {
     const { q } = termFlow(term, p[term.cell] as number)
-    outside(term.cell, q - term.gravity * (theta[term.cell] as number))
+    add(term.cell, q - term.gravity * (theta[term.cell] as number))
   }
   if (!storage) return
   const stored = sectionStored(balance, { p, theta })
   for (let c = 0; c < out.length; c++) {
-    outside(c, ((storage.before[c] as number) - (stored[c] as number)) / storage.interval)
+    add(c, ((storage.before[c] as number) - (stored[c] as number)) / storage.interval)
   }
 }
 

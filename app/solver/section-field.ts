@@ -19,7 +19,7 @@ export function sectionField(
   const { p, theta } = state
   const count = d.active.length
   const field = emptyField(d, (face) => sectionFlowAtFace(balance, state, face))
-  netInflow(balance, state, storage, field.error, new Float64Array(count))
+  netInflow(balance, state, storage, field.error)
   if (storage) {
     const stored = sectionStored(balance, state)
     for (let c = 0; c < count; c++) {

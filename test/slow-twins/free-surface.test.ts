@@ -23,6 +23,10 @@ interface Bank {
 function bank(of: Bank, changes: Partial<Model> = {}): Model {
   const { columns, rows, width, height, upstream, downstream, recharge, mirrored, shift = 0 } = of
   const [near, far] = mirrored ? [width, 0] : [0, width]
+  const [west, east] = [0.3137, 0.6923].map((share) => (mirrored ? 1 - share : share) * width) as [
+    number,
+    number,
+  ]
   const upright = (x: number, from: number, to: number): [number, number][] => [
     [x, from + shift],
     [x, to + shift],
@@ -58,10 +62,10 @@ function bank(of: Bank, changes: Partial<Model> = {}): Model {
       {
         material: 'Block',
         polygon: [
-          [0.3137 * width, 0.2871 * height + shift],
-          [0.6923 * width, 0.2871 * height + shift],
-          [0.6923 * width, 0.6134 * height + shift],
-          [0.3137 * width, 0.6134 * height + shift],
+          [west, 0.2871 * height + shift],
+          [east, 0.2871 * height + shift],
+          [east, 0.6134 * height + shift],
+          [west, 0.6134 * height + shift],
         ],
       },
     ],
@@ -97,6 +101,7 @@ function bruteForce(of: Bank): { p: number[][]; full: number[][] } {
         let gets = 0
         let holds = 0
         let lets = 0
+        const outlets: { c: number; above: number }[] = []
         for (const side of [-1, 1]) {
           const other = i + side
           if (other >= 0 && other < columns) {
@@ -107,12 +112,17 @@ function bruteForce(of: Bank): { p: number[][]; full: number[][] } {
           }
           const level = side < 0 ? upstream : downstream
           const [foot, head] = [j * dz, (j + 1) * dz]
-          // The part of the side under water, at the pressure in its middle.
           const wet = Math.max(0, Math.min(level, head) - foot)
           const c = (2 * kx) / dx
-          gets += c * wet * (level - foot - wet / 2)
-          holds += c * wet
-          if (side > 0) holds += c * (dz - wet)
+          // The lower water's line ends at its level, the upper one's runs to the top of the bank.
+          const covered = side < 0 ? dz : wet
+          if (level > z(j)) {
+            gets += c * covered * (level - z(j))
+            holds += c * covered
+          } else if (wet > 0) outlets.push({ c: c * Math.min(covered, 2 * wet), above: 0 })
+          if (side > 0 && wet < dz) {
+            outlets.push({ c: c * (dz - wet), above: Math.max(0, (foot + wet + head) / 2 - z(j)) })
+          }
         }
         if (j > 0) {
           const c = (harmonic(kz, k(i, j - 1)[1]) * dx) / dz
@@ -125,10 +135,13 @@ function bruteForce(of: Bank): { p: number[][]; full: number[][] } {
           gets += c * at(p, i, j + 1) + c * dz * at(full, i, j + 1)
           holds += c
         } else gets += recharge * dx
+        if (j === rows - 1) outlets.push({ c: (2 * kz * dx) / dz, above: dz / 2 })
         let pressure = Math.max(0, (gets - lets) / holds)
-        if (j === rows - 1 && pressure > dz / 2) {
-          const c = (2 * kz * dx) / dz
-          pressure = Math.max(dz / 2, (gets - lets + (c * dz) / 2) / (holds + c))
+        for (const { c, above } of outlets.sort((a, b) => a.above - b.above)) {
+          if (pressure <= above) break
+          gets += c * above
+          holds += c
+          pressure = Math.max(0, (gets - lets) / holds)
         }
         const share = pressure > 0 ? 1 : lets > 0 ? Math.min(1, gets / lets) : 0
         largest = Math.max(largest, Math.abs(pressure - at(p, i, j)), dz * Math.abs(share - at(full, i, j)))
