@@ -19,7 +19,9 @@ import { type Profile, thicknessAt, transmissivityAt } from './ground'
  * are exact, across interfaces along the grid and beside fixed heads and edges without flow too; without a cross term
  * it is the harmonic mean of the five-point balance. Every quarter's energy is positive, so the whole is positive
  * definite on any grid, for any contrast and anisotropy. Heads may leave the range of their boundaries slightly where
- * the anisotropy is strong and askew: no linear nine-point method prevents that.
+ * the anisotropy is strong and askew: no linear nine-point method prevents that. Faces on the model's edge at drains,
+ * seepage faces, and rivers that disconnect or stand beside unconfined ground count as closed for the cross term: there
+ * it is of first order.
  *
  * Kept here is the excess F - F0 over the five-point flow F0, which flow.ts computes as for any ground. Units: R is
  * time/length² for transmissivities (confined, sections), time/length for conductivities (unconfined, where D is a

@@ -124,8 +124,8 @@ export function discretise(file: Model, stage = 0, levels = knownLevels(file)): 
     wells: [],
     warnings,
   }
-  placeWalls(discretised)
   placeBoundaries(discretised)
+  placeWalls(discretised)
   placeLeakage(discretised)
   placeRecharge(discretised)
   discretised.wells = placeWells(model, grid, active, discretised.wallShare, warnings)
@@ -205,12 +205,16 @@ function placeWalls(d: Discretised): void {
   }
 }
 
-function tipGroundOf({ grid, active, profileOf, profiles }: Discretised): TipGround {
+function tipGroundOf({ grid, active, fixedBy, profileOf, profiles }: Discretised): TipGround {
   return {
     grid,
     isGround: (x, y) => {
       const cell = cellAt(grid, x, y)
       return cell >= 0 && active[cell] === 1
+    },
+    isFree: (x, y) => {
+      const cell = cellAt(grid, x, y)
+      return cell >= 0 && active[cell] === 1 && (fixedBy[cell] as number) < 0
     },
     conductivity: (x, y) => {
       const profile = profiles[profileOf[cellAt(grid, x, y)] as number] as Profile

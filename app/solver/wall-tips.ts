@@ -39,6 +39,8 @@ type TipKind = 'tight' | 'along' | 'oblique'
 export interface TipGround {
   grid: Grid
   isGround: (x: number, y: number) => boolean
+  /** Ground that no boundary holds at a head. */
+  isFree: (x: number, y: number) => boolean
   /** Conductivity along x and y at a place. */
   conductivity: (x: number, y: number) => { x: number; y: number }
 }
@@ -62,8 +64,8 @@ export function tipsOf(wall: Wall, free: [start: boolean, end: boolean], ground:
   return { line, start: kinds[0] as TipKind, end: kinds[1] as TipKind }
 }
 
-/** Is there ground on both sides of the wall's line, half a cell beyond its end? */
-function goesOn(tip: Position, next: Position, { grid, isGround }: TipGround): boolean {
+/** Is there ground on both sides of the wall's line, half a cell beyond its end, that may have any head? */
+function goesOn(tip: Position, next: Position, { grid, isFree }: TipGround): boolean {
   const length = Math.hypot(tip[0] - next[0], tip[1] - next[1])
   if (length === 0) return false
   const [ux, uy] = [(tip[0] - next[0]) / length, (tip[1] - next[1]) / length]
@@ -71,7 +73,7 @@ function goesOn(tip: Position, next: Position, { grid, isGround }: TipGround): b
   const [hx, hy] = half as [number, number]
   if (hx === 0 || hy === 0) return false
   return [1, -1].every((side) => {
-    return isGround(tip[0] + hx * (ux - side * uy), tip[1] + hy * (uy + side * ux))
+    return isFree(tip[0] + hx * (ux - side * uy), tip[1] + hy * (uy + side * ux))
   })
 }
 
