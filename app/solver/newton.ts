@@ -161,11 +161,11 @@ export function balanceCells(run: Balancing): boolean {
 }
 
 /**
- * The share of the range of heads that a head may be wrong by: what multigrid's next cycle would change is a little
- * less than what is wrong, while relaxation's estimate is a hundred times too high.
+ * The share of the range of heads that a head may be wrong by: what multigrid's next cycle would change is some
+ * times less than what is wrong, while relaxation's estimate is a hundred times too high.
  */
 function headToleranceOf(step: LinearStep, tolerance: number): number {
-  return step.method === 'sor' ? 1e-8 : Math.max(tolerance, 1e-13)
+  return step.method === 'sor' ? 1e-8 : Math.max(0.3 * tolerance, 1e-13)
 }
 
 /** Largest change of head that would balance a cell by itself. */
