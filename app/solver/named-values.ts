@@ -32,5 +32,11 @@ export function namedValues(result: Result): NamedValue[] {
       values: through,
       quantity: 'flow' as const,
     })),
+    // Gradients are those at the end.
+    ...(result.gradients ?? []).map(({ name, mean }) => ({
+      name: `gradients/${name}`,
+      values: [...result.times.slice(1).map(() => null), mean],
+      quantity: 'gradient' as const,
+    })),
   ]
 }

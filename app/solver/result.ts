@@ -120,6 +120,9 @@ export interface Result {
   flowLines?: FlowLineResult[]
   captureZones?: CaptureResult
   verification?: Verification
+  responses?: ResponseResult[]
+  sensitivities?: SensitivityResult[]
+  drawdown?: DrawdownResult
 }
 
 /** What a flow line ended at. Against the flow that is where its water came from. */
@@ -231,4 +234,37 @@ export interface GradientResult {
   cellSize: number
   /** The maximum stands beside a corner or a wall's end where it grows without limit as cells shrink. */
   singular: boolean
+  /** Of the mean. */
+  band?: Band[]
+}
+
+/** Change of every named result for one more unit of a well's rate. */
+export interface ResponseResult {
+  well: string
+  /** The rate is water taken out, or put in. */
+  per: 'abstraction' | 'recharge'
+  results: { name: string; change: number | null }[]
+}
+
+/** How a named result changes with what the model assumes; of small changes, all else held. */
+export interface SensitivityResult {
+  name: string
+  value: number | null
+  /** With ln K (both principal conductivities together), and with kx at the same ratio. */
+  materials: { name: string; perLnK: number; perK: number }[]
+  recharge: { name: string; perRate: number }[]
+  /** With the head or level, ln of the conductance, or flux, all along the boundary. */
+  boundaries: { name: string; perHead?: number; perLnConductance?: number; perFlux?: number }[]
+  /** With ln k; 0 where k = 0. */
+  walls: { name: string; perLnK: number }[]
+  leakage: { name: string; perHead: number; perLnLeakance: number }[]
+  /** With the rate, positive as the file gives it. */
+  wells: { name: string; perRate: number }[]
+}
+
+/** Heads with all wells off less those of the run, one a reported time. */
+export interface DrawdownResult {
+  points: { name: string; drawdown: (number | null)[] }[]
+  /** At the well face where the well has a radius, else in its cells. */
+  wells: { name: string; drawdown: (number | null)[] }[]
 }

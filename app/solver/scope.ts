@@ -36,12 +36,4 @@ export function refuseWhatIsNotComputed(model: Model): void {
       'leakage belongs to a plan; a vertical section shows the aquitard itself',
     )
   }
-  const want = model.want
-  if (want?.sensitivities && want.sensitivities.length > 0)
-    throw notYet('want.sensitivities', 'sensitivities')
-  if (want?.responses) throw notYet('want.responses', 'response coefficients')
-}
-
-function notYet(path: string, what: string): ModelError {
-  return new ModelError(path, `not computed by this version: ${what}`)
 }

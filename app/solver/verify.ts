@@ -284,7 +284,7 @@ function verified(entry: NamedValue, evidence: Evidence): VerifiedResult {
     found.how.push(error?.how ?? 'none')
     found.gridError.push(error && error.how !== 'none' ? error.error : null)
     found.timeError?.push(atStep)
-    found.band.push(bandOf(value, error, atStep, entry.quantity === 'head' ? floor.head : floor.flow))
+    found.band.push(bandOf(value, error, atStep, entry.quantity === 'gradient' ? 0 : floor[entry.quantity]))
     let which = 0
     for (const { solved } of outer) {
       if (solved) found.swapped[which++]?.values.push(valueIn(solved, entry.name, time))
@@ -348,6 +348,7 @@ export function applyVerification(result: Result, verification: Verification): v
   for (const row of result.wells) put(row, `wells/${row.name}`)
   for (const row of result.lines) put(row, `lines/${row.name}`)
   for (const row of result.rings) put(row, `rings/${row.name}/through`)
+  for (const row of result.gradients ?? []) put(row, `gradients/${row.name}`)
   result.warnings.push(...warningsOf(result, verification))
 }
 
@@ -363,7 +364,8 @@ function warningsOf(result: Result, { results, grid }: Verification): Warning[] 
   const byText = new Map<string, string[]>()
   for (const { name, swapped } of results) {
     const own = named.get(name) as NamedValue
-    const scale = own.quantity === 'head' ? range : through
+    const largest = Math.max(...own.values.map((value) => Math.abs(value ?? 0)))
+    const scale = { head: range, flow: through, gradient: largest }[own.quantity]
     for (const { text, values } of swapped) {
       const change = Math.max(0, ...values.map((value, k) => changeOf(own.values[k] ?? null, value)))
       if (change > controlled * scale) byText.set(text, [...(byText.get(text) ?? []), name])
@@ -373,7 +375,7 @@ function warningsOf(result: Result, { results, grid }: Verification): Warning[] 
     warnings.push({
       code: 'boundary-controlled',
       severity: 'check',
-      text: `The outer boundary decides ${names.length === 1 ? 'a result' : `${names.length} results`}: ${listed(names)} would change by more than 5 % of ${names.some((name) => named.get(name)?.quantity === 'head') ? 'the range of heads' : 'the throughflow'}. ${text}`,
+      text: `The outer boundary decides ${names.length === 1 ? 'a result' : `${names.length} results`}: ${listed(names)} would change by more than 5 % (heads: of their range; flows: of the throughflow). ${text}`,
     })
   }
   if (grid.grids.length < 2) {
