@@ -20,8 +20,10 @@ const mostChanges = 200
 /** After so many changes that leave as many cells to switch as before, draining and filling take turns, more coarsely. */
 const patience = 12
 
-/** Steps of minimal residuals between two looks at the wet set. */
-const stepsAtOnce = 30
+/** Steps of minimal residuals between two looks at the wet set: each keeps two numbers a cell. */
+function stepsAtOnce(cells: number): number {
+  return Math.min(30, Math.max(6, Math.floor(3e7 / cells)))
+}
 
 /**
  * The balancer of vertical sections with a free surface. It looks for the set of wet cells: with a set given, the
@@ -172,7 +174,7 @@ function findWetSet(run: Search): boolean {
       r,
       change,
       Math.max(0.3 * run.tolerance * run.rightHandSide, settled ? 0 : 1e-3 * norm),
-      stepsAtOnce,
+      stepsAtOnce(count),
     )
     let largest = 0
     for (let c = 0; c < count; c++) {

@@ -544,3 +544,87 @@ describe('SE-11', () => {
     },
   )
 })
+
+describe('PT-15', () => {
+  const { title, source, inputs, expected } = check<
+    {
+      K_m_s: number
+      Sy: number
+      L_m: number
+      h_at_divide_t0_m: number
+      x_m: number[]
+      t_s: number[]
+    },
+    { alpha: number; head: Record<string, number[]>; outflow_coefficient: number }
+  >('PT-15')
+
+  /** Boussinesq's profile: the share F of the highest head at the share u of the length (Polubarinova-Kochina 1962). */
+  function profile(u: number): number {
+    const lengthOf = (share: number) => {
+      const steps = 400
+      const end = 1 - Math.sqrt(1 - share)
+      let sum = 0
+      for (let k = 0; k < steps; k++) {
+        const v = ((k + 0.5) * end) / steps
+        const f = 1 - (1 - v) ** 2
+        sum += ((6 * f * (1 - v)) / Math.sqrt(1 - f ** 3)) * (end / steps)
+      }
+      return sum
+    }
+    const whole = lengthOf(1)
+    let [low, high] = [0, 1]
+    for (let k = 0; k < 40; k++) {
+      const middle = (low + high) / 2
+      if (lengthOf(middle) / whole < u) low = middle
+      else high = middle
+    }
+    return (low + high) / 2
+  }
+
+  it(`${title}, in a vertical section: heads within 0.3 % of the first height, outflow within 3 % (${source})`, () => {
+    const { K_m_s: k, Sy, L_m: length, h_at_divide_t0_m: height } = inputs
+    const [columns, rows] = [40, 18]
+    const levels = Array.from({ length: columns }, (_, i) => height * profile((i + 0.5) / columns))
+    const times = inputs.t_s
+    const lastStep = 7200
+    const solution = solveModel({
+      format: 'lavant-model',
+      version: 1,
+      units: { length: 'm', time: 's' },
+      kind: 'section',
+      flow: 'free surface',
+      extent: { x: [0, length], y: [0, 1.125 * height] },
+      grid: { columns, rows },
+      time: {
+        kind: 'transient',
+        initialHead: Array.from({ length: rows }, () => levels).flat(),
+        stages: times.flatMap((time, index) => [
+          {
+            duration: time - (times[index - 1] ?? 0) - lastStep,
+            firstStep: index === 0 ? 3600 : 43200,
+            growth: 1.3,
+            largestStep: index === 0 ? 86400 : 432000,
+          },
+          { duration: lastStep, firstStep: lastStep },
+        ]),
+      },
+      materials: [{ name: 'Sand', kx: k, ky: k, specificYield: Sy }],
+      ground: [{ material: 'Sand' }],
+      boundaries: [{ name: 'Drain', kind: 'seepage face', line: upright(0, 0, 1.125 * height) }],
+      points: inputs.x_m.map((x) => ({ name: `${x}`, x, y: 0.05 })),
+    })
+    const { result } = solution
+    expect(result.converged).toBe(true)
+    times.forEach((time, index) => {
+      const at = 2 * index + 1
+      const slower = 1 + (expected.alpha * k * height * (time - lastStep / 2)) / (Sy * length ** 2)
+      const outflow = (expected.outflow_coefficient * k * height ** 2) / length / slower ** 2
+      expect(relative(result.balance.outflow[at] as number, outflow)).toBeLessThan(0.03)
+      expect(Math.abs(result.balance.errorPercent[at] as number)).toBeLessThan(1e-4)
+      const heads = withKey(expected.head, time)
+      inputs.x_m.forEach((x, place) => {
+        expect(Math.abs(head(solution, `${x}`, at) - (heads[place] as number))).toBeLessThan(0.003 * height)
+      })
+    })
+  })
+})
