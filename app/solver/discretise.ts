@@ -160,6 +160,11 @@ function placeWalls(d: Discretised): void {
       const { low, high } = faceOf(grid, face)
       return low >= 0 && high >= 0 && active[low] === 1 && active[high] === 1
     })
+    // A staircase is longer than the wall it follows, so each face carries that much more resistance.
+    const stairs = new Float64Array(wall.line.length)
+    for (const { face, share, at } of separated) {
+      stairs[at.segment] = (stairs[at.segment] as number) + share * faceOf(grid, face).length
+    }
     const faces = closeTips(wall, tips, ground, separated)
     if (faces.length === 0) {
       warnings.push({
@@ -168,11 +173,6 @@ function placeWalls(d: Discretised): void {
         text: `The wall ${called(wall, index)} separates no two cell centres: it is shorter than the cells or outside the ground, and has no effect.`,
       })
       continue
-    }
-    // A staircase is longer than the wall it follows, so each face carries that much more resistance.
-    const stairs = new Float64Array(wall.line.length)
-    for (const { face, share, at } of faces) {
-      stairs[at.segment] = (stairs[at.segment] as number) + share * faceOf(grid, face).length
     }
     for (const { face, share, at } of faces) {
       const straight = inGround[at.segment] as number

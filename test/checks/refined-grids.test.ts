@@ -1,6 +1,6 @@
 import { describe, expect, it } from 'vitest'
 import type { Model, Position } from '~/solver/model'
-import { check, fixed, head, heldAllRound, intoModel, relative, sheet, solvedByBoth } from './plan'
+import { check, fixed, head, heldAllRound, intoModel, rectangle, relative, sheet, solvedByBoth } from './plan'
 
 /** A strip with a wall that leaves an opening at its south side, held on its west and east ends. */
 function strip(
@@ -366,6 +366,38 @@ describe('walls oblique to the grid', () => {
       expect(Math.abs(lengthSeen(angle, 2.5))).toBeLessThan(0.25)
     },
   )
+
+  it('an end that meets held water is tight', () => {
+    const solution = solvedByBoth({
+      ...sheet(1),
+      extent: { x: [0, 100], y: [0, 20] },
+      grid: { columns: 20, rows: 4 },
+      boundaries: [
+        { name: 'Lake', kind: 'fixed head', polygon: rectangle(0, 100, 10, 20), head: 10 },
+        fixed(
+          'West',
+          [
+            [0, 0],
+            [0, 10],
+          ],
+          12,
+        ),
+      ],
+      walls: [
+        {
+          name: 'Wall',
+          line: [
+            [50, 0],
+            [50, 10],
+          ],
+          thickness: 1,
+          k: 0,
+        },
+      ],
+      points: [{ name: 'behind', x: 52.5, y: 7.5 }],
+    })
+    expect(Math.abs(head(solution, 'behind') - 10)).toBeLessThan(1e-9)
+  })
 
   it('along the grid it is right to a thirtieth', () => {
     expect(Math.abs(lengthSeen(0, 5))).toBeLessThan(0.03)
