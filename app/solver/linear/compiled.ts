@@ -1,16 +1,6 @@
 import { type Cycle, cycleOf } from './cycle'
 import type { KernelExports, Kernels } from './kernels'
-import {
-  doubleArrays,
-  type Grid,
-  nineArrays,
-  type Plan,
-  planCoarser,
-  planFinest,
-  planInverse,
-  take,
-  upTo,
-} from './plan'
+import { doubleArrays, type Grid, nineArrays, type Plan, planCoarser, planFinest, planInverse } from './plan'
 import type { LinearOptions, LinearOutcome, LinearSystem, Prepared } from './system'
 
 /** A grid of at most so many cells is solved directly. */
@@ -22,11 +12,12 @@ const leaning = 3
 function lean(cells: number, along: (c: number) => number, across: (c: number) => number): number {
   let sum = 0
   let count = 0
-  const step = Math.max(1, Math.floor(cells / 2003))
+  const step = Math.max(1, Math.floor(cells / 499))
   for (let c = 0; c < cells; c += step) {
-    const ratio = along(c) / across(c)
-    if (ratio > 0 && ratio < Number.POSITIVE_INFINITY) {
-      sum += Math.log(ratio)
+    const one = along(c)
+    const other = across(c)
+    if (one > 0 && other > 0) {
+      sum += Math.log(one / other)
       count++
     }
   }
@@ -55,12 +46,13 @@ function transposed(values: Float64Array, columns: number, rows: number): Float6
 
 /**
  * Makes a five-point system ready for the compiled kernels. Where links across rows are much the stronger ones rows
- * and columns change places, so that only one direction needs kernels of its own.
+ * and columns change places, so that only one direction needs kernels of its own. `before`, if any, gives its memory
+ * and must not be used any more.
  */
-export function prepareCompiled(system: LinearSystem, kernels: Kernels): Prepared {
+export function prepareCompiled(system: LinearSystem, kernels: Kernels, before?: Prepared): Prepared {
   const { columns, rows } = system
   const turned = rows > 1 && (columns === 1 || leanOf(system) < 1 / leaning)
-  if (!turned) return prepareRows(system, kernels)
+  if (!turned) return prepareRows(system, kernels, before)
   const inner = prepareRows(
     {
       columns: rows,
@@ -72,8 +64,9 @@ export function prepareCompiled(system: LinearSystem, kernels: Kernels): Prepare
       own: transposed(system.own, columns, rows),
     },
     kernels,
+    before,
   )
-  return {
+  const prepared: Prepared = {
     solve(b, x, options) {
       const solution = transposed(x, columns, rows)
       const outcome = inner.solve(transposed(b, columns, rows), solution, options)
@@ -86,6 +79,9 @@ export function prepareCompiled(system: LinearSystem, kernels: Kernels): Prepare
       z.set(transposed(made, rows, columns))
     },
   }
+  const machine = machines.get(inner)
+  if (machine) machines.set(prepared, machine)
+  return prepared
 }
 
 /** Memory that grows, its views and the kernels that work in it. */
@@ -94,6 +90,8 @@ interface Machine {
   floats: Float32Array
   doubles: Float64Array
   grow: (bytes: number) => void
+  /** What lies in the memory; null: zeros. */
+  plan: Plan | null
 }
 
 export function machineOf(kernels: Kernels): Machine {
@@ -103,6 +101,7 @@ export function machineOf(kernels: Kernels): Machine {
     kernels: instance.exports as unknown as KernelExports,
     floats: new Float32Array(memory.buffer),
     doubles: new Float64Array(memory.buffer),
+    plan: null,
     grow(bytes) {
       const missing = Math.ceil((bytes + 64 - memory.buffer.byteLength) / 65536)
       if (missing <= 0) return
@@ -114,13 +113,25 @@ export function machineOf(kernels: Kernels): Machine {
   return machine
 }
 
+/** Can a system's numbers take the places of an earlier one's? The zeros of the rims are then there already. */
+function fits(machine: Machine, columns: number, rows: number, along: boolean): Plan | null {
+  const { plan } = machine
+  if (plan && plan.columns === columns && plan.rows === rows && plan.way.along === along) return plan
+  if (plan) machine.floats.fill(0)
+  machine.plan = null
+  return null
+}
+
 /** Lays the system out and makes all coarser grids. */
 export function setUp(system: LinearSystem, machine: Machine): Plan {
   const { columns, rows } = system
   const { kernels: k } = machine
-  const plan = planFinest(columns, rows, rows === 1 || (leanOf(system) > leaning && columns > 2))
+  const along = rows === 1 || (columns > 2 && leanOf(system) > leaning)
+  const kept = fits(machine, columns, rows, along)
+  const plan = kept ?? planFinest(columns, rows, along)
   machine.grow(plan.bytes)
-  const { single, double, size, stride, staged, stage } = plan
+  const { single, double, size, stride, staged, stage, way } = plan
+  plan.gaps = 0
   for (let from = 0; from < rows; from += staged) {
     const to = Math.min(rows, from + staged)
     const north = stage + 8 * columns * staged
@@ -131,25 +142,35 @@ export function setUp(system: LinearSystem, machine: Machine): Plan {
     const below = Math.max(0, from - 1)
     const place = north / 8 + (from > 0 ? 0 : columns)
     machine.doubles.set(system.north.subarray(below * columns, to * columns), place)
-    k.load5(single, size, stride, double, columns, rows, stage, north, own, from, to)
+    plan.gaps += k.load5(single, size, stride, double, columns, rows, stage, north, own, from, to)
   }
-  let last = plan.grids[0] as Grid
-  const toFirst = [plan.way.shares, plan.way.sharesSize, last.at, last.size, last.stride, last.half] as const
-  if (plan.way.along) {
-    k.galerkinRedAlong(size, stride, double, columns, ...toFirst, 0, last.rows)
+  const first = plan.grids[0] as Grid
+  const toFirst = [way.shares, way.sharesSize, first.at, first.size, first.stride, first.half] as const
+  if (along) {
+    k.galerkinRedAlong(size, stride, double, columns, ...toFirst, 0, first.rows)
   } else {
-    k.sharesRedBoth(size, stride, double, columns, rows, plan.way.shares, plan.way.sharesSize, 0, last.rows)
-    k.galerkinRedBoth(size, stride, double, columns, ...toFirst, 0, last.rows)
+    k.sharesRedBoth(size, stride, double, columns, rows, way.shares, way.sharesSize, 0, first.rows)
+    k.galerkinRedBoth(size, stride, double, columns, ...toFirst, 0, first.rows)
   }
-  k.invert(last.at, last.size, last.stride, last.half, 0, last.rows)
-  while (last.columns * last.rows > coarsest) last = coarsened(plan, last, machine)
-  planInverse(plan)
+  k.invert(first.at, first.size, first.stride, first.half, 0, first.rows)
+  let last = first
+  for (let n = 1; last.columns * last.rows > coarsest; n++) last = coarsened(plan, n, machine)
+  if (plan.inverse === 0) planInverse(plan)
   machine.grow(plan.bytes)
-  const inverse = inverseOf(last, machine)
-  for (let row = 0; row < plan.unknowns; row++) {
-    const values = inverse.subarray(row * plan.unknowns, (row + 1) * plan.unknowns)
-    machine.floats.set(values, (plan.inverse + row * plan.width) / 4)
-  }
+  const { inverse, width, work, wide } = plan
+  k.invertCoarsest(
+    last.at,
+    last.size,
+    last.stride,
+    last.half,
+    last.columns,
+    last.rows,
+    inverse,
+    width,
+    work,
+    wide,
+  )
+  machine.plan = plan
   return plan
 }
 
@@ -160,8 +181,10 @@ export function numberAt(grid: Grid, machine: Machine, array: number, c: number)
   return machine.floats[(row + (i & 1) * grid.half) / 4 + (i >> 1)] as number
 }
 
-function coarsened(plan: Plan, fine: Grid, machine: Machine): Grid {
+/** Fills grid n from grid n - 1, in the place that the plan has for it if it is to be coarsened the same way again. */
+function coarsened(plan: Plan, n: number, machine: Machine): Grid {
   const { kernels: k } = machine
+  const fine = plan.grids[n - 1] as Grid
   function strength(c: number, array: number): number {
     const corners =
       numberAt(fine, machine, nineArrays.northEast, c) + numberAt(fine, machine, nineArrays.northWest, c)
@@ -172,12 +195,14 @@ function coarsened(plan: Plan, fine: Grid, machine: Machine): Grid {
     (c) => strength(c, nineArrays.east),
     (c) => strength(c, nineArrays.north),
   )
-  const along = fine.rows === 1 || (ratio > leaning && fine.columns > 2)
-  const coarse = planCoarser(plan, along)
-  const apart = upTo(8 * (coarse.columns + 2), 64)
-  const middles = along ? 0 : take(plan, 8 * apart)
+  const wanted = fine.rows === 1 || (ratio > leaning && fine.columns > 2)
+  if (plan.grids[n] && fine.way.along !== wanted) {
+    plan.grids.length = n
+    plan.inverse = 0
+  }
+  const coarse = plan.grids[n] ?? planCoarser(plan, wanted)
   machine.grow(plan.bytes)
-  const { shares, sharesSize } = fine.way
+  const { along, shares, sharesSize, middles, middleRow } = fine.way
   const from = [
     fine.at,
     fine.size,
@@ -191,77 +216,22 @@ function coarsened(plan: Plan, fine: Grid, machine: Machine): Grid {
   const to = [coarse.at, coarse.size, coarse.stride, coarse.half] as const
   k.sharesOf(...from, along ? 1 : 0, 0, coarse.rows)
   if (along) k.galerkinAlong(...from, ...to, 0, coarse.rows)
-  else k.galerkinBoth(...from, ...to, middles, apart, 0, coarse.rows)
+  else k.galerkinBoth(...from, ...to, middles, middleRow, 0, coarse.rows)
   k.invert(...to, 0, coarse.rows)
   return coarse
 }
 
-/** Inverse of the coarsest grid's matrix by Cholesky's factor; a pivot lost to rounding leaves its cell at 0. */
-function inverseOf(grid: Grid, machine: Machine): Float64Array {
-  const { columns } = grid
-  const n = columns * grid.rows
-  const l = new Float64Array(n * n)
-  function at(array: number, c: number): number {
-    return numberAt(grid, machine, array, c)
-  }
-  function link(row: number, column: number, value: number): void {
-    if (value === 0) return
-    l[row * n + column] = -value
-    l[row * n + row] = (l[row * n + row] as number) + value
-    l[column * n + column] = (l[column * n + column] as number) + value
-  }
-  for (let c = 0; c < n; c++) {
-    l[c * n + c] = (l[c * n + c] as number) + at(nineArrays.own, c)
-    link(c + 1, c, at(nineArrays.east, c))
-    link(c + columns, c, at(nineArrays.north, c))
-    link(c + columns + 1, c, at(nineArrays.northEast, c))
-    link(c + columns - 1, c, at(nineArrays.northWest, c))
-  }
-  // L below the diagonal; on it 1 / L_kk, 0 for a lost pivot.
-  for (let k = 0; k < n; k++) {
-    const whole = l[k * n + k] as number
-    let pivot = whole
-    for (let m = 0; m < k; m++) pivot -= (l[k * n + m] as number) ** 2
-    const unit = pivot > 1e-14 * whole ? 1 / Math.sqrt(pivot) : 0
-    l[k * n + k] = unit
-    for (let i = k + 1; i < n; i++) {
-      let value = l[i * n + k] as number
-      for (let m = 0; m < k; m++) value -= (l[i * n + m] as number) * (l[k * n + m] as number)
-      l[i * n + k] = value * unit
-    }
-  }
-  // Row c of `lower`: row c of the inverse of L.
-  const lower = new Float64Array(n * n)
-  for (let i = 0; i < n; i++) {
-    const unit = l[i * n + i] as number
-    lower[i * n + i] = unit
-    for (let m = 0; m < i; m++) {
-      const factor = unit * (l[i * n + m] as number)
-      if (factor === 0) continue
-      for (let c = 0; c <= m; c++) {
-        lower[i * n + c] = (lower[i * n + c] as number) - factor * (lower[m * n + c] as number)
-      }
-    }
-  }
-  const inverse = new Float64Array(n * n)
-  for (let m = 0; m < n; m++) {
-    for (let i = 0; i <= m; i++) {
-      const factor = lower[m * n + i] as number
-      if (factor === 0) continue
-      for (let c = 0; c <= m; c++) {
-        inverse[i * n + c] = (inverse[i * n + c] as number) + factor * (lower[m * n + c] as number)
-      }
-    }
-  }
-  return inverse
-}
+/** Whose memory a system lies in, so that a later one can take it over. */
+const machines = new WeakMap<Prepared, Machine>()
 
-function prepareRows(system: LinearSystem, kernels: Kernels): Prepared {
-  const machine = machineOf(kernels)
+function prepareRows(system: LinearSystem, kernels: Kernels, before: Prepared | undefined): Prepared {
+  const machine = (before && machines.get(before)) ?? machineOf(kernels)
+  if (before) machines.delete(before)
   const plan = setUp(system, machine)
   const { kernels: k, doubles } = machine
   const { columns, rows, single, double, size, stride, stage, staged } = plan
   const cycle = cycleOf(plan, k, doubles.subarray(plan.sums / 8), { index: 0, count: 1, meet: () => {} })
+  const { blackOwn, p, q, redX } = doubleArrays
 
   /** Lays numbers in the order of the cells out by colours, in the places of two arrays. */
   function layOut(values: Float64Array, red: number, black: number): void {
@@ -277,48 +247,59 @@ function prepareRows(system: LinearSystem, kernels: Kernels): Prepared {
     for (let from = 0; from < rows; from += staged) {
       const to = Math.min(rows, from + staged)
       const part = values.subarray(from * columns, to * columns)
-      doubles.set(part, stage / 8)
-      k.joined(single, size, stride, double, columns, stage, red, doubleArrays.blackOwn, from, to)
+      if (plan.gaps === 0) {
+        k.joined(size, stride, double, columns, stage, red, blackOwn, from, to)
+      } else {
+        doubles.set(part, stage / 8)
+        k.joinedWithGaps(single, size, stride, double, columns, stage, red, blackOwn, from, to)
+      }
       part.set(doubles.subarray(stage / 8, stage / 8 + part.length))
     }
   }
 
   function solve(b: Float64Array, x: Float64Array, options: LinearOptions): LinearOutcome {
-    if (b.every((value) => value === 0)) x.fill(0)
-    layOut(x, doubleArrays.redX, doubleArrays.blackOwn)
+    if (isZero(b)) x.fill(0)
+    layOut(x, redX, blackOwn)
     const outcome = conjugateGradients(cycle, options, {
-      layOut: () => layOut(b, doubleArrays.q, doubleArrays.blackOwn),
-      largest: () => k.largest(size, stride, double, doubleArrays.p, 0, rows),
+      layOut: () => layOut(b, q, blackOwn),
+      largest: () => k.largest(size, stride, double, p, 0, rows),
     })
-    bringBack(x, doubleArrays.redX)
+    bringBack(x, redX)
     return outcome
   }
 
   function precondition(r: Float64Array, z: Float64Array): void {
-    let most = 0
-    for (let c = 0; c < r.length; c++) most = Math.max(most, Math.abs(r[c] as number))
+    const most = largestOf(r)
     z.fill(0)
     if (most === 0) return
     // Single precision has no room for numbers far from 1.
-    const scale = 1 / most
-    layOut(z, doubleArrays.redX, doubleArrays.blackOwn)
-    layOut(r, doubleArrays.q, doubleArrays.blackOwn)
-    cycle.trueResidual(scale)
+    const scaled = r.map((value) => value / most)
+    layOut(z, redX, blackOwn)
+    layOut(scaled, q, blackOwn)
+    cycle.trueResidual(1)
     cycle.descend()
     cycle.up()
     cycle.product(0)
-    // Black cells in the same scale.
-    layOut(
-      r.map((value) => value * scale),
-      doubleArrays.q,
-      doubleArrays.blackOwn,
-    )
-    cycle.eliminate(doubleArrays.p)
-    bringBack(z, doubleArrays.p)
+    layOut(scaled, q, blackOwn)
+    cycle.eliminate(p)
+    bringBack(z, p)
     for (let c = 0; c < z.length; c++) z[c] = (z[c] as number) * most
   }
 
-  return { solve, precondition }
+  const prepared = { solve, precondition }
+  machines.set(prepared, machine)
+  return prepared
+}
+
+function isZero(values: Float64Array): boolean {
+  for (let c = 0; c < values.length; c++) if (values[c] !== 0) return false
+  return true
+}
+
+function largestOf(values: Float64Array): number {
+  let most = 0
+  for (let c = 0; c < values.length; c++) most = Math.max(most, Math.abs(values[c] as number))
+  return most
 }
 
 interface Surroundings {
@@ -334,20 +315,25 @@ function conjugateGradients(
   { target, mostIterations, watch }: LinearOptions,
   { layOut, largest }: Surroundings,
 ): LinearOutcome {
-  layOut()
-  let norm = Math.sqrt(cycle.trueResidual(1))
-  const scale = norm > 0 ? 1 / norm : 1
-  if (norm > 0) {
+  let scale = 1
+  function trueNorm(): number {
     layOut()
-    cycle.trueResidual(scale)
+    return Math.sqrt(cycle.trueResidual(scale))
+  }
+  let norm = trueNorm()
+  // Single precision has no room for numbers far from 1.
+  if (norm > 0 && (norm < 1e-20 || norm > 1e20)) {
+    scale = 1 / norm
+    norm = trueNorm()
   }
   let truth = norm
+  let isTruth = true
   let iterations = 0
   let before = norm
   let old = 0
   let alpha = 0
-  let ended: LinearOutcome['ended'] | null = norm <= target ? 'converged' : null
   let descended = false
+  let ended: LinearOutcome['ended'] | null = norm <= target ? 'converged' : null
   while (ended === null) {
     if (iterations >= mostIterations) {
       ended = 'iterations'
@@ -366,11 +352,12 @@ function conjugateGradients(
     descended = norm * Math.min(1, norm / before) > 2 * target
     before = norm
     norm = Math.sqrt(cycle.step(alpha, scale, descended))
+    isTruth = false
     iterations++
     if (norm <= target) {
       // Rounding lets the recurrence run ahead of the truth: the true residual decides, and is gone on from.
-      layOut()
-      norm = Math.sqrt(cycle.trueResidual(scale))
+      norm = trueNorm()
+      isTruth = true
       descended = false
       if (norm <= target) ended = 'converged'
       else if (norm > 0.5 * truth) ended = 'stalled'
@@ -378,10 +365,8 @@ function conjugateGradients(
       before = norm
       old = 0
     }
-    if (watch?.(iterations, norm) && ended !== 'converged') ended = 'cancelled'
+    if (watch?.(iterations, norm) && ended === null) ended = 'cancelled'
   }
   const error = alpha * largest()
-  layOut()
-  const residual = Math.sqrt(cycle.trueResidual(scale))
-  return { iterations, residual, ended, error }
+  return { iterations, residual: isTruth ? norm : trueNorm(), ended, error }
 }

@@ -94,146 +94,164 @@ export function cycleOf(
   const toTop = [topWay.shares, topWay.sharesSize, top.at, top.size, top.stride, top.half] as const
   const topRow = topWay.natural + 2 * topWay.apart * index
   const doubleRow = 2 * stride
+  const { rows, columns } = plan
+  const { restrictRedAlong, restrictRedBoth, correctRedAlong, correctRedBoth } = k
   const restrictTop: Work = topWay.along
-    ? (from, to) => k.restrictRedAlong(single, size, stride, ...toTop, topRow, from, to)
+    ? (from, to) => restrictRedAlong(single, size, stride, ...toTop, topRow, from, to)
     : (from, to) =>
-        k.restrictRedBoth(
-          single,
-          size,
-          stride,
-          ...toTop,
-          topRow,
-          from >> 1,
-          to === plan.rows ? top.rows : to >> 1,
-        )
+        restrictRedBoth(single, size, stride, ...toTop, topRow, from >> 1, to === rows ? top.rows : to >> 1)
   const correctTop: Work = topWay.along
-    ? (from, to) => k.correctRedAlong(single, size, stride, ...toTop, topRow, from, to)
+    ? (from, to) => correctRedAlong(single, size, stride, ...toTop, topRow, from, to)
     : (from, to) =>
-        k.correctRedBoth(single, size, stride, ...toTop, topRow, topWay.apart, from >> 1, (to + 1) >> 1)
-  const blackOf =
-    (source: number): Work =>
-    (from, to) =>
-      k.black(single, size, stride, source, from, to)
+        correctRedBoth(single, size, stride, ...toTop, topRow, topWay.apart, from >> 1, (to + 1) >> 1)
+  const blackOfScaled: Work = (from, to) => k.black(single, size, stride, singleArrays.scaled, from, to)
+  const blackOfZ: Work = (from, to) => k.black(single, size, stride, singleArrays.z, from, to)
   const rest: Work = (from, to) => k.redRest(single, size, stride, from, to)
+
+  const visits = grids.slice(0, -1).map((grid, n) => visitOf(grid, grids[n + 1] as Grid, index, k))
 
   /** Visits grid n: x from b, from x = 0 or, `again`, from where it is. */
   function visit(n: number, again: boolean): void {
     const grid = grids[n] as Grid
-    const { rows, columns, way } = grid
-    const g = [grid.at, grid.size, grid.stride, grid.half] as const
-    if (n === coarsest) {
+    const own = visits[n]
+    if (!own) {
       if (index === 0) {
+        const { at, size: bytes, stride: row, half } = grid
         const { inverse, width, unknowns } = plan
-        k.dense(...g, columns, rows, inverse, width, inverse + unknowns * width)
+        k.dense(at, bytes, row, half, grid.columns, grid.rows, inverse, width, inverse + unknowns * width)
       }
       if (count > 1) meet()
       return
     }
-    const coarse = grids[n + 1] as Grid
-    const row = way.natural + 2 * way.apart * index
-    const to = [way.shares, way.sharesSize, coarse.at, coarse.size, coarse.stride, coarse.half] as const
-    const restrict: Work = way.along
-      ? (from, upper) => k.restrictAlong(...g, ...to, row, from, upper)
-      : (from, upper) =>
-          k.restrictBoth(...g, ...to, row, from >> 1, upper === rows ? coarse.rows : upper >> 1)
-    const correct: Work = way.along
-      ? (from, upper) => k.correctAlong(...g, ...to, row, from, upper)
-      : (from, upper) => k.correctBoth(...g, ...to, row, way.apart, from >> 1, (upper + 1) >> 1)
     const bytes = 9 * grid.stride
-    // Even rows first, odd ones behind them: the first odd row is row 1.
-    if (again) {
-      sweep(rows, columns, bytes, [
-        [0, (from, upper) => k.relax(...g, from, upper, 0)],
-        [1, (from, upper) => k.relax(...g, from | 1, upper, 0)],
-        [2, (from, upper) => k.residual(...g, from, upper)],
-        [4, restrict],
-      ])
-    } else {
-      sweep(rows, columns, bytes, [
-        [0, (from, upper) => k.startEven(...g, from, upper)],
-        [1, (from, upper) => k.startOdd(...g, from | 1, upper)],
-        [2, (from, upper) => k.startResidual(...g, from, upper)],
-        [2, restrict],
-      ])
-    }
+    sweep(grid.rows, grid.columns, bytes, again ? own.again : own.start)
     visit(n + 1, false)
+    // A coarse grid visited twice costs little and mends what coarser grids represent badly (W-cycle).
     if (n + 1 < coarsest) visit(n + 1, true)
-    sweep(rows, columns, bytes, [
-      [0, correct],
-      [1, (from, upper) => k.relax(...g, from | 1, upper, 1)],
-      [2, (from, upper) => k.relax(...g, from, upper, 1)],
-    ])
+    sweep(grid.rows, grid.columns, bytes, own.up)
   }
 
-  const { rows, columns } = plan
+  // What the steps below take and leave.
+  let factor = 0
+  let scaling = 1
+  let source = 0
+  let sum = 0
+  const stepping: Step[] = [
+    [
+      0,
+      (from, to) => {
+        sum += k.step(single, size, stride, double, factor, scaling, from, to)
+      },
+    ],
+  ]
+  const steppingDown: Step[] = [...stepping, [1, blackOfScaled], [2, rest], [4, restrictTop]]
+  const descending: Step[] = [
+    [0, blackOfScaled],
+    [1, rest],
+    [2, restrictTop],
+  ]
+  const ascending: Step[] = [
+    [0, correctTop],
+    [1, blackOfZ],
+    [
+      2,
+      (from, to) => {
+        sum += k.redLast(single, size, stride, double, from, to)
+      },
+    ],
+  ]
+  const multiplying: Step[] = [
+    [0, (from, to) => k.direction(single, size, stride, double, factor, from, to)],
+    [1, (from, to) => k.eliminate(size, stride, double, doubleArrays.p, 0, from, to)],
+    [
+      2,
+      (from, to) => {
+        sum += k.product(size, stride, double, from, to)
+      },
+    ],
+  ]
+  const eliminating: Step[] = [[0, (from, to) => k.eliminate(size, stride, double, source, 1, from, to)]]
+  const resting: Step[] = [
+    ...eliminating,
+    [
+      1,
+      (from, to) => {
+        sum += k.trueResidual(single, size, stride, double, scaling, from, to)
+      },
+    ],
+  ]
+  function run(bytesOfRow: number, steps: Step[]): number {
+    sum = 0
+    sweep(rows, columns, bytesOfRow, steps)
+    return sumOver(sum)
+  }
+
   return {
     descend() {
-      sweep(rows, columns, 7 * stride, [
-        [0, blackOf(singleArrays.scaled)],
-        [1, rest],
-        [2, restrictTop],
-      ])
+      sweep(rows, columns, 7 * stride, descending)
     },
     step(alpha, scale, descend) {
-      let sum = 0
-      const first: Step = [
-        0,
-        (from, to) => {
-          sum += k.step(single, size, stride, double, alpha, scale, from, to)
-        },
-      ]
-      const steps: Step[] = descend
-        ? [first, [1, blackOf(singleArrays.scaled)], [2, rest], [4, restrictTop]]
-        : [first]
-      sweep(rows, columns, 7 * stride + 4 * doubleRow, steps)
-      return sumOver(sum)
+      factor = alpha
+      scaling = scale
+      return run(7 * stride + 4 * doubleRow, descend ? steppingDown : stepping)
     },
     up() {
       visit(0, false)
-      let sum = 0
-      sweep(rows, columns, 8 * stride + doubleRow, [
-        [0, correctTop],
-        [1, blackOf(singleArrays.z)],
-        [
-          2,
-          (from, to) => {
-            sum += k.redLast(single, size, stride, double, from, to)
-          },
-        ],
-      ])
-      return sumOver(sum)
+      return run(8 * stride + doubleRow, ascending)
     },
     product(beta) {
-      let sum = 0
-      sweep(rows, columns, stride + 9 * doubleRow, [
-        [0, (from, to) => k.direction(single, size, stride, double, beta, from, to)],
-        [1, (from, to) => k.eliminate(size, stride, double, doubleArrays.p, 0, from, to)],
-        [
-          2,
-          (from, to) => {
-            sum += k.product(size, stride, double, from, to)
-          },
-        ],
-      ])
-      return sumOver(sum)
+      factor = beta
+      return run(stride + 9 * doubleRow, multiplying)
     },
     trueResidual(scale) {
-      let sum = 0
-      sweep(rows, columns, stride + 9 * doubleRow, [
-        [0, (from, to) => k.eliminate(size, stride, double, doubleArrays.redX, 1, from, to)],
-        [
-          1,
-          (from, to) => {
-            sum += k.trueResidual(single, size, stride, double, scale, from, to)
-          },
-        ],
-      ])
-      return sumOver(sum)
+      source = doubleArrays.redX
+      scaling = scale
+      return run(stride + 9 * doubleRow, resting)
     },
-    eliminate(source) {
-      sweep(rows, columns, 9 * doubleRow, [
-        [0, (from, to) => k.eliminate(size, stride, double, source, 1, from, to)],
-      ])
+    eliminate(red) {
+      source = red
+      sweep(rows, columns, 9 * doubleRow, eliminating)
     },
+  }
+}
+
+interface Visit {
+  /** Down from x = 0, or from where x is; and up again. */
+  start: Step[]
+  again: Step[]
+  up: Step[]
+}
+
+/** The steps of a visit to a nine-point grid. Even rows come first, odd ones behind them: the first odd row is row 1. */
+function visitOf(grid: Grid, coarse: Grid, index: number, k: KernelExports): Visit {
+  const { at, size, stride, half, rows, way } = grid
+  const row = way.natural + 2 * way.apart * index
+  const to = [way.shares, way.sharesSize, coarse.at, coarse.size, coarse.stride, coarse.half] as const
+  const { restrictAlong, restrictBoth, correctAlong, correctBoth } = k
+  const restrict: Work = way.along
+    ? (from, upper) => restrictAlong(at, size, stride, half, ...to, row, from, upper)
+    : (from, upper) =>
+        restrictBoth(at, size, stride, half, ...to, row, from >> 1, upper === rows ? coarse.rows : upper >> 1)
+  const correct: Work = way.along
+    ? (from, upper) => correctAlong(at, size, stride, half, ...to, row, from, upper)
+    : (from, upper) => correctBoth(at, size, stride, half, ...to, row, way.apart, from >> 1, (upper + 1) >> 1)
+  return {
+    start: [
+      [0, (from, upper) => k.startEven(at, size, stride, half, from, upper)],
+      [1, (from, upper) => k.startOdd(at, size, stride, half, from | 1, upper)],
+      [2, (from, upper) => k.startResidual(at, size, stride, half, from, upper)],
+      [2, restrict],
+    ],
+    again: [
+      [0, (from, upper) => k.relax(at, size, stride, half, from, upper, 0)],
+      [1, (from, upper) => k.relax(at, size, stride, half, from | 1, upper, 0)],
+      [2, (from, upper) => k.residual(at, size, stride, half, from, upper)],
+      [4, restrict],
+    ],
+    up: [
+      [0, correct],
+      [1, (from, upper) => k.relax(at, size, stride, half, from | 1, upper, 1)],
+      [2, (from, upper) => k.relax(at, size, stride, half, from, upper, 1)],
+    ],
   }
 }

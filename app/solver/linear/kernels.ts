@@ -39,7 +39,30 @@ export interface KernelExports {
   galerkinRedAlong: RedGalerkin
   galerkinRedBoth: RedGalerkin
   invert: Sweep
+  invertCoarsest(
+    level: number,
+    size: number,
+    stride: number,
+    half: number,
+    columns: number,
+    rows: number,
+    inverse: number,
+    width: number,
+    work: number,
+    wide: number,
+  ): void
   joined(
+    size: number,
+    stride: number,
+    double: number,
+    columns: number,
+    into: number,
+    red: number,
+    black: number,
+    from: number,
+    to: number,
+  ): void
+  joinedWithGaps(
     single: number,
     size: number,
     stride: number,
@@ -64,7 +87,7 @@ export interface KernelExports {
     own: number,
     from: number,
     to: number,
-  ): void
+  ): number
   parted(
     size: number,
     stride: number,

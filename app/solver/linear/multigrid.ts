@@ -455,10 +455,11 @@ function dot(a: Float64Array, b: Float64Array): number {
 /**
  * Makes a system ready for `solve`: the hierarchy of grids and the factor of the coarsest. Numbers in the system are
  * copied. Nothing is thrown: a system that is not positive definite ends its solves as stalled. With `kernels` a
- * five-point system is solved by compiled arithmetic (compiled.ts), in the same way.
+ * five-point system is solved by compiled arithmetic (compiled.ts), in the same way; it takes over the memory of
+ * `before`, which must not be used any more.
  */
-export function prepareMultigrid(system: LinearSystem, kernels?: Kernels): Prepared {
-  if (kernels && !system.northEast && !system.northWest) return prepareCompiled(system, kernels)
+export function prepareMultigrid(system: LinearSystem, kernels?: Kernels, before?: Prepared): Prepared {
+  if (kernels && !system.northEast && !system.northWest) return prepareCompiled(system, kernels, before)
   const levels = [finest(system)]
   let last = levels[0] as Level
   while (last.columns * last.rows > coarsest) {

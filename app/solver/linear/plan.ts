@@ -11,10 +11,14 @@ export interface Plan {
   way: Way
   /** Coarse grids, finest first. */
   grids: Grid[]
-  /** Inverse matrix of the coarsest grid, bytes a row of it, and memory for its unknowns. */
+  /** Inverse matrix of the coarsest grid, bytes a row of it, and memory to make it in. */
   inverse: number
   width: number
   unknowns: number
+  work: number
+  wide: number
+  /** Cells without an equation. */
+  gaps: number
   /** Where rows in the order of the cells pass through: so many at a time. */
   stage: number
   staged: number
@@ -33,6 +37,9 @@ export interface Way {
   /** Memory for two coarse rows in the order of their columns, `apart` bytes from one another; one such for each part. */
   natural: number
   apart: number
+  /** Memory for the shares of the cells in the middle of four, while the coarse matrix is made; bytes a row. */
+  middles: number
+  middleRow: number
 }
 
 export interface Grid {
@@ -62,7 +69,7 @@ export const nineArrays = {
 export const singleArrays = { count: 10, scaled: 6, z: 7 }
 export const doubleArrays = { count: 11, blackOwn: 6, p: 7, q: 8, redX: 9 }
 
-export function upTo(value: number, multiple: number): number {
+function upTo(value: number, multiple: number): number {
   return Math.ceil(value / multiple) * multiple
 }
 
@@ -77,13 +84,21 @@ function halfOf(columns: number): number {
   return 4 * (upTo((columns + 1) >> 1, 4) + 4)
 }
 
-export function take(plan: Plan, bytes: number): number {
+function take(plan: Plan, bytes: number): number {
   const at = plan.bytes
   plan.bytes = upTo(at + bytes, 64)
   return at
 }
 
-const nowhere: Way = { along: false, shares: 0, sharesSize: 0, natural: 0, apart: 0 }
+const nowhere: Way = {
+  along: false,
+  shares: 0,
+  sharesSize: 0,
+  natural: 0,
+  apart: 0,
+  middles: 0,
+  middleRow: 0,
+}
 
 /** The finest grid's share of the memory; `along`: which way it is to be coarsened. */
 export function planFinest(columns: number, rows: number, along: boolean): Plan {
@@ -102,6 +117,9 @@ export function planFinest(columns: number, rows: number, along: boolean): Plan 
     inverse: 0,
     width: 0,
     unknowns: 0,
+    work: 0,
+    wide: 0,
+    gaps: 0,
     stage: 0,
     staged,
     sums: 0,
@@ -121,7 +139,17 @@ function wayTo(plan: Plan, fineHalf: number, coarse: Grid, along: boolean): Way 
   const sharesSize = sizeOf((coarse.rows + 2) * fineHalf + 16)
   const apart = upTo(Math.max(coarse.stride, fineHalf) + 32, 16)
   const shares = take(plan, 4 * sharesSize)
-  return { along, shares, sharesSize, apart, natural: take(plan, 2 * apart * mostParts) }
+  const natural = take(plan, 2 * apart * mostParts)
+  const middleRow = upTo(8 * (coarse.columns + 2), 64)
+  return {
+    along,
+    shares,
+    sharesSize,
+    apart,
+    natural,
+    middleRow,
+    middles: along ? 0 : take(plan, 8 * middleRow),
+  }
 }
 
 /** Adds the next coarser grid. */
@@ -147,4 +175,6 @@ export function planInverse(plan: Plan): void {
   plan.unknowns = last.columns * last.rows
   plan.width = 4 * upTo(plan.unknowns, 4)
   plan.inverse = take(plan, plan.unknowns * plan.width + 2 * plan.width)
+  plan.wide = 8 * upTo(plan.unknowns, 2)
+  plan.work = take(plan, plan.unknowns * plan.wide)
 }

@@ -21,7 +21,7 @@ import {
 // Hageman & Young 1981, chapter 9): with x_black = sum a x_red / D the product on red cells is
 //   q = own p + sum a (p - p_black).
 
-// p = z + beta p, rows from..to - 1.
+// p = z + beta p, rows from..to - 1; with beta = 0 whatever p held is gone.
 export function direction(
   single: usize,
   size: usize,
@@ -39,6 +39,11 @@ export function direction(
       const z = v128.load(c)
       const low = f64x2.promote_low_f32x4(z)
       const high = f64x2.promote_low_f32x4(v128.shuffle<f32>(z, z, 2, 3, 2, 3))
+      if (beta === 0) {
+        v128.store(p, low)
+        v128.store(p, high, 16)
+        continue
+      }
       v128.store(p, f64x2.add(low, f64x2.mul(factor, v128.load(p))))
       v128.store(p, f64x2.add(high, f64x2.mul(factor, v128.load(p, 16))), 16)
     }

@@ -13,7 +13,8 @@ import {
 } from './colours'
 
 // Reads rows from..to - 1 of a five-point system as it is given: `east` and `own` at row `from`, `north` at row from - 1,
-// `columns` doubles a row (links out of the grid are taken as 0), and lays it out by colours.
+// `columns` doubles a row (links out of the grid are taken as 0), and lays it out by colours. Returns the number of
+// cells without an equation.
 export function load5(
   single: usize,
   size: usize,
@@ -26,7 +27,8 @@ export function load5(
   ownGiven: usize,
   from: i32,
   to: i32,
-): void {
+): i32 {
+  let gaps = 0
   const two = 2 * size
   const width = <usize>columns << 3
   let e = eastGiven
@@ -43,6 +45,7 @@ export function load5(
       const own = load<f64>(o)
       const diagonal = own + west + east + south + north
       const unit = diagonal > 0 ? 1 / diagonal : 0
+      if (unit === 0) gaps++
       const c1 = s + (<usize>(i >> 1) << 2)
       const c2 = d + (<usize>(i >> 1) << 3)
       if ((i + j) & 1) {
@@ -64,6 +67,7 @@ export function load5(
       west = east
     }
   }
+  return gaps
 }
 
 // Numbers of rows from..to - 1 in the order of the cells, to red and black arrays of double precision.
@@ -82,16 +86,50 @@ export function parted(
   let c = given
   for (let j = from; j < to; j++) {
     const row = doubleRow(double, stride, j)
-    const even = row + (j & 1 ? black : red) * two
-    const odd = row + (j & 1 ? red : black) * two
-    for (let i = 0; i < columns; i++, c += 8) {
-      store<f64>((i & 1 ? odd : even) + (<usize>(i >> 1) << 3), load<f64>(c))
+    let even = row + (j & 1 ? black : red) * two
+    let odd = row + (j & 1 ? red : black) * two
+    let i = 0
+    for (; i + 4 <= columns; i += 4, c += 32, even += 16, odd += 16) {
+      const a = v128.load(c)
+      const b = v128.load(c, 16)
+      v128.store(even, v128.shuffle<f64>(a, b, 0, 2))
+      v128.store(odd, v128.shuffle<f64>(a, b, 1, 3))
     }
+    for (; i < columns; i++, c += 8) store<f64>((i & 1 ? odd : even) + (<usize>((i & 3) >> 1) << 3), load<f64>(c))
   }
 }
 
-// The other way round, cells without an equation left as they are.
+// The other way round, for a system with an equation for every cell.
 export function joined(
+  size: usize,
+  stride: usize,
+  double: usize,
+  columns: i32,
+  into: usize,
+  red: usize,
+  black: usize,
+  from: i32,
+  to: i32,
+): void {
+  const two = 2 * size
+  let c = into
+  for (let j = from; j < to; j++) {
+    const row = doubleRow(double, stride, j)
+    let even = row + (j & 1 ? black : red) * two
+    let odd = row + (j & 1 ? red : black) * two
+    let i = 0
+    for (; i + 4 <= columns; i += 4, c += 32, even += 16, odd += 16) {
+      const a = v128.load(even)
+      const b = v128.load(odd)
+      v128.store(c, v128.shuffle<f64>(a, b, 0, 2))
+      v128.store(c, v128.shuffle<f64>(a, b, 1, 3), 16)
+    }
+    for (; i < columns; i++, c += 8) store<f64>(c, load<f64>((i & 1 ? odd : even) + (<usize>((i & 3) >> 1) << 3)))
+  }
+}
+
+// The same where some cells have no equation: they are left as they are.
+export function joinedWithGaps(
   single: usize,
   size: usize,
   stride: usize,
