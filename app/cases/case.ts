@@ -54,6 +54,9 @@ const methods = Object.keys(methodWords) as CaseMethod[]
 /** Multigrid, and relaxation where that does not get there. */
 export const defaultMethod: CaseMethod = 'automatic'
 
+/** A number without a band is half a result; a case that is only tried may leave its verification out. */
+export const defaultVerify = true
+
 /** More cells than this are refused: a run would hold a server thread for too long. */
 export const mostCells = 1_000_000
 
@@ -80,6 +83,8 @@ export const caseSchema = z
       .nullable()
       .default(null),
     method: z.enum(methods).nullable().default(null),
+    /** Whether the run tests its own grid, steps in time and outer boundary. */
+    verify: z.boolean().nullable().default(null),
     overrides: list(overrideSchema, { most: 2000 })
       .default([])
       .refine(
@@ -104,6 +109,7 @@ export interface CaseSettings {
   cellSize: Quantity | null
   tolerance: number
   method: CaseMethod
+  verify: boolean
   overrides: Override[]
 }
 
@@ -121,6 +127,7 @@ export function settingsOf(base: Case | undefined, own: Case): CaseSettings {
     cellSize: own.cellSize ?? inherited?.cellSize ?? null,
     tolerance: own.tolerance ?? inherited?.tolerance ?? defaultTolerance,
     method: own.method ?? inherited?.method ?? defaultMethod,
+    verify: own.verify ?? inherited?.verify ?? defaultVerify,
     overrides: [
       ...own.overrides,
       ...(inherited?.overrides ?? []).filter((o) => !set.has(`${o.rowId} ${o.quantity}`)),

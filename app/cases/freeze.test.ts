@@ -239,6 +239,16 @@ describe('A frozen case', () => {
     expect(methodOf('sor', 'multigrid')).toBe('multigrid')
   })
 
+  it('asks for a verification unless the case, or the base case, leaves it out', () => {
+    const wanted = (inBase: boolean | null, own: boolean | null) =>
+      frozen({ ...full, cases: [base({ verify: inBase }), calcCase('Other', { verify: own })] }, 'Other')
+        .model.want
+    expect(wanted(null, null)).toEqual({ verify: true })
+    expect(wanted(false, null)).toBeUndefined()
+    expect(wanted(false, true)).toEqual({ verify: true })
+    expect(wanted(true, false)).toBeUndefined()
+  })
+
   it('says nothing of a toe or a screen that nobody gave', () => {
     const { model } = frozen({
       ...full,

@@ -187,6 +187,7 @@ export function freezeCase(inputs: CaseInputs, caseId: string): FreezeAnswer {
     })),
     points: inside.map(({ body: { name, x, y, source } }) => ({ name, x, y, ...sourced(source) })),
     solver: { method: settings.method, tolerance: settings.tolerance },
+    ...(settings.verify ? { want: { verify: true } } : {}),
   }
   return {
     ok: true,

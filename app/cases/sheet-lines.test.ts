@@ -105,6 +105,18 @@ describe('The case sheet', () => {
     expect(line('method').read(blank, 'guess')).toMatchObject({ ok: false })
   })
 
+  it('lets a case leave out the verification that the base case has', () => {
+    expect(line('verify').inherited(base)).toBe('with error bands')
+    const tried = typed('verify', blank, 'none')
+    expect([tried.verify, line('verify').own(tried), line('verify').inherited(tried)]).toEqual([
+      false,
+      'none',
+      'with error bands',
+    ])
+    expect(typed('verify', tried, '')).toEqual(blank)
+    expect(line('verify').read(blank, 'perhaps')).toMatchObject({ ok: false })
+  })
+
   it('refuses with the reason what cannot be read', () => {
     expect(line('xMax').read(blank, '-5')).toMatchObject({ ok: false })
     expect(line('w1 rate').read(blank, '-900')).toMatchObject({

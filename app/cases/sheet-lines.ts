@@ -15,6 +15,7 @@ import {
   type CaseMethod,
   defaultMethod,
   defaultTolerance,
+  defaultVerify,
   type Extent,
   methodWords,
   type Overridable,
@@ -170,7 +171,31 @@ function settingLines(units: ProjectUnits, base: Case | undefined): SheetLine[] 
           : { ok: false, message: `"${text}" is none of ${Object.values(methodWords).join(', ')}.` }
       },
     },
+    {
+      key: 'verify',
+      group,
+      label: 'Verification',
+      note: 'other grids, outer boundary',
+      unit: '',
+      choices: Object.values(verifyWords),
+      own: (body) => verifyText(body.verify),
+      inherited: (body) => verifyText(from(body)?.verify ?? defaultVerify),
+      read: (_body, text) => {
+        const word = text.trim().toLowerCase()
+        if (word === '') return { ok: true, set: { verify: null } }
+        if (word === verifyWords.yes || word === verifyWords.no)
+          return { ok: true, set: { verify: word === verifyWords.yes } }
+        return { ok: false, message: `"${text}" is neither ${verifyWords.yes} nor ${verifyWords.no}.` }
+      },
+    },
   ]
+}
+
+const verifyWords = { yes: 'with error bands', no: 'none' } as const
+
+function verifyText(verify: boolean | null | undefined): string {
+  if (verify === null || verify === undefined) return ''
+  return verify ? verifyWords.yes : verifyWords.no
 }
 
 function readExtent(body: Case, base: Extent | null, side: keyof Extent, text: string): LineInput {
@@ -312,6 +337,7 @@ export function copyOfCase(source: Case, name: string): Case {
     cellSize: null,
     tolerance: null,
     method: null,
+    verify: null,
     overrides: [],
   }
 }
@@ -344,6 +370,7 @@ export function firstBaseCase(inputs: CaseInputs): Case {
     cellSize: { value: roundStep(longer / 100), unit: inputs.project.units.length },
     tolerance: null,
     method: null,
+    verify: null,
     overrides: [],
   }
 }

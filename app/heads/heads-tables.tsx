@@ -1,7 +1,8 @@
 import { type Column, DataTable } from '~/components/data-table'
-import type { NamedFlow, Result } from '~/solver/result'
+import type { Band, NamedFlow, Result } from '~/solver/result'
 import { formatNumber, formatSigned } from '~/units'
 import { balanceState, errorInWords } from './account'
+import { bandInWords } from './verification'
 
 /** A named point of the run, with its head and what is known of the run compared with; in the run's unit. */
 export interface PointLine {
@@ -12,6 +13,7 @@ export interface PointLine {
   before: number | null
   drawdown: number | null
   why: string | null
+  band?: Band
 }
 
 /** Heads at named points. Choosing a name rings the point on the plan. */
@@ -40,6 +42,9 @@ export function PointTable({
     { head: 'y', unit, cell: (line) => formatNumber(line.y, 1) },
     { head: 'Head', unit, cell: (line) => <b className="font-semibold">{formatNumber(line.head, 3)}</b> },
   ]
+  if (lines.some((line) => line.band)) {
+    columns.push({ head: 'Error band', unit, cell: (line) => bandInWords(line.band) })
+  }
   if (compared) {
     columns.push(
       { head: `Head, ${compared}`, unit, cell: (line) => formatNumber(line.before, 3) },
@@ -90,6 +95,7 @@ interface WellLine {
   achieved: number
   cellHead: number
   wellHead: number | null
+  band: Band
 }
 
 /** Wells: the rate asked for and the rate that the ground can give, with the heads there. */
@@ -110,13 +116,14 @@ export function WellTable({
   onSelect: (name: string | null) => void
 }) {
   const lines = result.wells.map(
-    ({ name, requested, achieved, cellHead, wellHead }): WellLine => ({
+    ({ name, requested, achieved, cellHead, wellHead, band }): WellLine => ({
       name,
       kind: kinds.get(name) ?? '',
       requested: requested[0] ?? Number.NaN,
       achieved: achieved[0] ?? Number.NaN,
       cellHead: cellHead[0] ?? Number.NaN,
       wellHead: wellHead[0] ?? null,
+      band: band?.[0] ?? null,
     }),
   )
   const short = (line: WellLine) => line.achieved < line.requested * (1 - 1e-6)
@@ -152,6 +159,15 @@ export function WellTable({
           unit: units.length,
           cell: (line) => formatNumber(line.wellHead, 3),
         },
+        ...(lines.some((line) => line.band)
+          ? [
+              {
+                head: 'Error band',
+                unit: units.length,
+                cell: (line: WellLine) => bandInWords(line.band),
+              },
+            ]
+          : []),
       ]}
     />
   )

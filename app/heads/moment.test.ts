@@ -47,6 +47,7 @@ function falling(time: Model['time']): Model {
       },
     ],
     rings: [{ name: 'Site', polygon: square }],
+    want: { verify: true },
   }
 }
 
@@ -54,7 +55,11 @@ function falling(time: Model['time']): Model {
 function lengths(value: unknown, path = ''): [string, number][] {
   if (Array.isArray(value) && typeof value[0] === 'number') return [[path, value.length]]
   if (typeof value !== 'object' || value === null) return []
-  return Object.entries(value).flatMap(([key, one]) => (key === 'at' ? [] : lengths(one, `${path}.${key}`)))
+  return Object.entries(value).flatMap(([key, one]): [string, number][] => {
+    if (key === 'at') return []
+    if (key === 'band') return [[`${path}.band`, one.length]]
+    return lengths(one, `${path}.${key}`)
+  })
 }
 
 describe('A result in time', () => {
@@ -67,6 +72,8 @@ describe('A result in time', () => {
     for (const [path, length] of lengths({ ...last, balance: { ...last.balance, volumes: null } })) {
       expect([path, length]).toEqual([path, 1])
     }
+    expect(lengths(last).map(([path]) => path)).toContain('.verification.results.0.band')
+    expect(last.points[0]?.band).toEqual([result.points[0]?.band?.[1]])
     expect(last.points[0]?.head).toEqual([result.points[0]?.head[1]])
     expect(resultAt(result, 0).points[0]?.head).toEqual([result.points[0]?.head[0]])
     expect(resultAt(result, 0).balance.inflow).toEqual([result.balance.inflow[0]])

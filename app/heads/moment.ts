@@ -1,4 +1,4 @@
-import type { Result } from '~/solver/result'
+import type { Band, Result, Verification } from '~/solver/result'
 import { formatNumber } from '~/units'
 
 /**
@@ -13,28 +13,34 @@ export function resultAt(result: Result, at = result.times.length - 1): Result {
     inflow: only(one.inflow),
     outflow: only(one.outflow),
   })
+  const banded = <Row extends { band?: Band[] }>(row: Row): Row =>
+    row.band ? { ...row, band: only(row.band) } : row
   return {
     ...result,
     times: only(result.times),
-    points: result.points.map((point) => ({ ...point, head: only(point.head) })),
-    wells: result.wells.map((well) => ({
-      ...well,
-      requested: only(well.requested),
-      achieved: only(well.achieved),
-      cellHead: only(well.cellHead),
-      wellHead: only(well.wellHead),
-    })),
-    lines: result.lines.map((line) => ({ ...line, discharge: only(line.discharge) })),
-    rings: result.rings.map((ring) => ({
-      ...ring,
-      through: only(ring.through),
-      recharge: only(ring.recharge),
-      wells: only(ring.wells),
-      leakage: only(ring.leakage),
-      boundaries: only(ring.boundaries),
-      storage: only(ring.storage),
-      error: only(ring.error),
-    })),
+    points: result.points.map((point) => banded({ ...point, head: only(point.head) })),
+    wells: result.wells.map((well) =>
+      banded({
+        ...well,
+        requested: only(well.requested),
+        achieved: only(well.achieved),
+        cellHead: only(well.cellHead),
+        wellHead: only(well.wellHead),
+      }),
+    ),
+    lines: result.lines.map((line) => banded({ ...line, discharge: only(line.discharge) })),
+    rings: result.rings.map((ring) =>
+      banded({
+        ...ring,
+        through: only(ring.through),
+        recharge: only(ring.recharge),
+        wells: only(ring.wells),
+        leakage: only(ring.leakage),
+        boundaries: only(ring.boundaries),
+        storage: only(ring.storage),
+        error: only(ring.error),
+      }),
+    ),
     boundaries: result.boundaries.map(flow),
     recharge: result.recharge.map(flow),
     leakage: result.leakage.map(flow),
@@ -45,6 +51,35 @@ export function resultAt(result: Result, at = result.times.length - 1): Result {
       kinds: result.balance.kinds.map(flow),
       worstCell: only(result.balance.worstCell),
     },
+    ...(result.verification ? { verification: verificationAt(result.verification, only) } : {}),
+  }
+}
+
+function verificationAt(
+  verification: Verification,
+  only: <Value>(values: readonly Value[]) => Value[],
+): Verification {
+  const { formula, results } = verification
+  return {
+    ...verification,
+    formula: formula && {
+      ...formula,
+      results: formula.results.map((one) => ({
+        ...one,
+        formula: only(one.formula),
+        difference: only(one.difference),
+      })),
+    },
+    results: results.map((one) => ({
+      ...one,
+      band: only(one.band),
+      order: only(one.order),
+      extrapolated: only(one.extrapolated),
+      how: only(one.how),
+      gridError: only(one.gridError),
+      ...(one.timeError ? { timeError: only(one.timeError) } : {}),
+      swapped: one.swapped.map(({ text, values }) => ({ text, values: only(values) })),
+    })),
   }
 }
 

@@ -390,6 +390,46 @@ describe('A package of an unusual project', () => {
     expect(paper.words).not.toContain('5.5 Drawdown')
   })
 
+  it('prints the error band beside a head where the run has one, and what the run tried to get it', async () => {
+    const paper = read(
+      await drawPackage(
+        request((made) => {
+          const { result } = made.run
+          const point = result.points[0]
+          if (point) point.band = [[10.44, 10.472]]
+          result.verification = {
+            grid: {
+              grids: [
+                { columns: 48, rows: 32, cells: 1536, times: 0.5 },
+                { columns: 24, rows: 16, cells: 384, times: 1 },
+              ],
+              why: 'its own and one of half the cell size',
+            },
+            time: null,
+            outerBoundary: [{ text: 'River Lode closed.', done: true }],
+            formula: null,
+            results: [
+              {
+                name: 'points/P1',
+                band: [[10.44, 10.472]],
+                order: [2],
+                extrapolated: [10.45],
+                how: ['observed order'],
+                gridError: [0.016],
+                swapped: [{ text: 'River Lode closed.', values: [9.956] }],
+              },
+            ],
+          }
+        }),
+      ),
+    )
+    const one = paper.drawn().join(' ').replace(/\s+/g, ' ')
+    expect(one).toContain('P1 10.456 10.440 to 10.472')
+    expect(one).toContain('1536 and 384 cells')
+    expect(one).toContain('heads change by up to 0.50 m, most at P1 River Lode closed.')
+    expect(one).toContain('It says nothing of the inputs')
+  })
+
   it('prints beside a warning who accepted it, when and why, and says of one that nobody has accepted', async () => {
     const paper = read(
       await drawPackage(

@@ -7,6 +7,7 @@ import { acceptanceInWords, acceptanceOf } from '~/heads/acceptance'
 import { byGravity, kernelsInWords, methodWords, mostBalanceError, severityWords } from '~/heads/account'
 import type { HeadField } from '~/heads/field'
 import { momentInWords, resultAt } from '~/heads/moment'
+import { bandInWords, bandMeaning, verificationLines } from '~/heads/verification'
 import { levelUnit } from '~/projects/project'
 import { decodeHeads } from '~/solver/heads-buffer'
 import {
@@ -559,7 +560,12 @@ function headsSection({ content, heads, againstHeads }: DrawRequest): Content[] 
         `Heads, ${levelUnit(length, project.verticalDatum)}; case ${run.caseName}${momentInWords(result, project.units.time)}, run ${run.number}, ${localDay(content, run.endedAt)}. `,
       ),
     ),
-    subsection('5.2', 'Heads at named points', pointsTable(content)),
+    subsection(
+      '5.2',
+      'Heads at named points',
+      pointsTable(content),
+      ...(result.verification ? [text(bandMeaning)] : []),
+    ),
     subsection('5.3', 'Water balance', balanceTable(content)),
     subsection('5.4', 'Wells', wellsTable(content)),
     ...(drawdown && against
@@ -600,6 +606,7 @@ function pointsTable({ run, against, project }: GatheredContent): Piece {
       other,
       drawdown: now === null || other === null ? null : other - now,
       why: point.why ?? '',
+      band: bandInWords(point.band?.[0]),
     }
   })
   return table(
@@ -610,6 +617,7 @@ function pointsTable({ run, against, project }: GatheredContent): Piece {
     [
       { head: 'Point', cell: (p) => p.name },
       { head: 'Head', unit: length, cell: (p) => formatNumber(p.head, 3) },
+      { head: 'Error band', unit: length, optional: true, cell: (p) => p.band },
       ...(against
         ? [
             {
@@ -642,6 +650,7 @@ function wellsTable({ run, project }: GatheredContent): Piece {
       { head: 'Rate achieved', unit: rate, cell: (w) => formatNumber(w.achieved[0] ?? null) },
       { head: 'Head in the cell', unit: length, cell: (w) => formatNumber(w.cellHead[0] ?? null, 2) },
       { head: 'Head at the well face', unit: length, cell: (w) => formatNumber(w.wellHead[0] ?? null, 2) },
+      { head: 'Error band', unit: length, optional: true, cell: (w) => bandInWords(w.band?.[0], 2) },
     ],
     run.result.wells,
   )
@@ -885,6 +894,7 @@ function selfCheckTable({ run, project }: GatheredContent): Piece {
       `${formatNumber(sum(result.wells.map((well) => well.achieved)))} ${rate}`,
       `${formatNumber(sum(result.wells.map((well) => well.requested)))} ${rate} requested`,
     ],
+    ...verificationLines(result, project.units.length),
   ]
   return table(
     '8.2',

@@ -13,6 +13,7 @@ import { Heading, SectionPage } from '~/components/section-page'
 import { mostBalanceError } from '~/heads/account'
 import { resultAt } from '~/heads/moment'
 import { latestDoneRun } from '~/heads/runs.server'
+import { verificationLines } from '~/heads/verification'
 import { permit } from '~/projects/guard.server'
 import { can } from '~/projects/permissions'
 import { formatNumber, shownUnit, unitLabel } from '~/units'
@@ -48,6 +49,7 @@ export async function loader({ context }: Route.LoaderArgs) {
             outflow: result.balance.outflow[0] ?? null,
             abstraction: result.wells.reduce((sum, well) => sum + (well.achieved[0] ?? 0), 0),
             warnings: result.warnings,
+            verification: verificationLines(result, unitLabel(run.model.units.length)),
           }
         : null,
   }
@@ -159,14 +161,15 @@ export default function ChecksPage({ loaderData }: Route.ComponentProps) {
                 value: `${formatNumber(run.abstraction, 1)} ${rate}`,
                 limit: 'as section 3 asks',
               },
+              ...run.verification.map(([what, value, limit]) => ({ what, value, limit })),
             ]}
-            rowKey={(row) => row.what}
+            rowKey={(row) => `${row.what} ${row.limit}`}
             columns={[
               { head: 'Check', cell: (row) => row.what },
               {
                 head: 'Found',
                 words: true,
-                cell: (row) => <span className="whitespace-nowrap">{row.value}</span>,
+                cell: (row) => <span className="block min-w-40">{row.value}</span>,
               },
               { head: 'Held against', words: true, cell: (row) => row.limit },
             ]}

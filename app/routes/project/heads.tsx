@@ -24,6 +24,7 @@ import { type RunLine, shortHash, underWay } from '~/heads/run'
 import { RunWarnings } from '~/heads/run-warnings'
 import { findRun, listRuns, type Run, runPoints } from '~/heads/runs.server'
 import { useHeads } from '~/heads/use-heads'
+import { bandMeaning } from '~/heads/verification'
 import { permit } from '~/projects/guard.server'
 import { can } from '~/projects/permissions'
 import { levelUnit } from '~/projects/project'
@@ -243,6 +244,8 @@ function Computed({ data, sent }: { data: Ready; sent: SubmissionResult<string[]
       },
     [heads, beforeHeads, drawdown, model, result, length, datum, run, moment, against, project.number, shows],
   )
+  const bands = new Map(result.points.map(({ name, band }) => [name, band?.[0] ?? null]))
+  const lines = points.map((point) => ({ ...point, band: bands.get(point.name) ?? null }))
   const failed = [now, before].find((loaded) => loaded?.state === 'failed')
   const kinds = useMemo(() => new Map((model.wells ?? []).map(({ name, kind }) => [name, kind])), [model])
 
@@ -260,7 +263,7 @@ function Computed({ data, sent }: { data: Ready; sent: SubmissionResult<string[]
 
   const savePoints = () =>
     saveBlob(
-      new Blob([pointsCsv(points, length, against ? `run ${against.number}` : null)], {
+      new Blob([pointsCsv(lines, length, against ? `run ${against.number}` : null)], {
         type: 'text/csv;charset=utf-8',
       }),
       `${project.number}-run-${run.number}-points.csv`,
@@ -402,13 +405,14 @@ function Computed({ data, sent }: { data: Ready; sent: SubmissionResult<string[]
         Heads at named points
       </Heading>
       <PointTable
-        lines={points}
+        lines={lines}
         unit={length}
         compared={against ? `run ${against.number}` : null}
         selected={selected}
         near={near}
         onSelect={setSelected}
       />
+      {result.verification && <p className="mt-2 text-[0.93rem] text-flint-2">{bandMeaning}</p>}
       <Heading no="5.3">Water balance</Heading>
       <BalanceTables result={result} rate={rate} />
       <Heading no="5.4">Wells</Heading>
@@ -727,13 +731,16 @@ function cautionOf(flow: string): string {
 function pointsCsv(lines: readonly PointLine[], unit: string, compared: string | null): string {
   const head = ['point', `x (${unit})`, `y (${unit})`, `head (${unit})`]
   const more = compared ? [`head of ${compared} (${unit})`, `drawdown (${unit})`] : []
+  const banded = lines.some((line) => line.band)
+  const bands = banded ? [`error band from (${unit})`, `error band to (${unit})`] : []
   return toCsv([
-    [...head, ...more, 'why there is no head'],
+    [...head, ...bands, ...more, 'why there is no head'],
     ...lines.map((line) => [
       line.name,
       line.x,
       line.y,
       line.head,
+      ...(banded ? [line.band?.[0] ?? null, line.band?.[1] ?? null] : []),
       ...(compared ? [line.before, line.drawdown] : []),
       line.why,
     ]),
