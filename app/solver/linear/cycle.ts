@@ -108,7 +108,10 @@ export function cycleOf(
   const blackOfZ: Work = (from, to) => k.black(single, size, stride, singleArrays.z, from, to)
   const rest: Work = (from, to) => k.redRest(single, size, stride, from, to)
 
-  const visits = grids.slice(0, -1).map((grid, n) => visitOf(grid, grids[n + 1] as Grid, index, k))
+  // The first coarse grid, which costs most, is relaxed once a way; the smaller ones twice.
+  const visits = grids
+    .slice(0, -1)
+    .map((grid, n) => visitOf(grid, grids[n + 1] as Grid, index, k, n === 0 ? 1 : 2))
 
   /** Visits grid n: x from b, from x = 0 or, `again`, from where it is. */
   function visit(n: number, again: boolean): void {
@@ -222,8 +225,11 @@ interface Visit {
   up: Step[]
 }
 
-/** The steps of a visit to a nine-point grid. Even rows come first, odd ones behind them: the first odd row is row 1. */
-function visitOf(grid: Grid, coarse: Grid, index: number, k: KernelExports): Visit {
+/**
+ * The steps of a visit to a nine-point grid, `sweeps` relaxations each way. Even rows come first, odd ones behind them:
+ * the first odd row is row 1.
+ */
+function visitOf(grid: Grid, coarse: Grid, index: number, k: KernelExports, sweeps: number): Visit {
   const { at, size, stride, half, rows, way } = grid
   const row = way.natural + 2 * way.apart * index
   const to = [way.shares, way.sharesSize, coarse.at, coarse.size, coarse.stride, coarse.half] as const
@@ -235,23 +241,36 @@ function visitOf(grid: Grid, coarse: Grid, index: number, k: KernelExports): Vis
   const correct: Work = way.along
     ? (from, upper) => correctAlong(at, size, stride, half, ...to, row, from, upper)
     : (from, upper) => correctBoth(at, size, stride, half, ...to, row, way.apart, from >> 1, (upper + 1) >> 1)
+  const even: Work = (from, upper) => k.relax(at, size, stride, half, from, upper, 0)
+  const odd: Work = (from, upper) => k.relax(at, size, stride, half, from | 1, upper, 0)
+  const oddBack: Work = (from, upper) => k.relax(at, size, stride, half, from | 1, upper, 1)
+  const evenBack: Work = (from, upper) => k.relax(at, size, stride, half, from, upper, 1)
+  const residual: Work = (from, upper) => k.residual(at, size, stride, half, from, upper)
+  const startEven: Work = (from, upper) => k.startEven(at, size, stride, half, from, upper)
+  const startOdd: Work = (from, upper) => k.startOdd(at, size, stride, half, from | 1, upper)
+  const startResidual: Work = (from, upper) => k.startResidual(at, size, stride, half, from, upper)
+
+  const starting: Step[] = [
+    [0, startEven],
+    [1, startOdd],
+  ]
+  const again: Step[] = []
+  const up: Step[] = [[0, correct]]
+  for (let n = 0; n < sweeps; n++) {
+    again.push([2 * n, even], [2 * n + 1, odd])
+    up.push([2 * n + 1, oddBack], [2 * n + 2, evenBack])
+  }
+  const last = 2 * sweeps
+  const down: Step[] = [
+    [last, residual],
+    [last + 2, restrict],
+  ]
   return {
-    start: [
-      [0, (from, upper) => k.startEven(at, size, stride, half, from, upper)],
-      [1, (from, upper) => k.startOdd(at, size, stride, half, from | 1, upper)],
-      [2, (from, upper) => k.startResidual(at, size, stride, half, from, upper)],
-      [2, restrict],
-    ],
-    again: [
-      [0, (from, upper) => k.relax(at, size, stride, half, from, upper, 0)],
-      [1, (from, upper) => k.relax(at, size, stride, half, from | 1, upper, 0)],
-      [2, (from, upper) => k.residual(at, size, stride, half, from, upper)],
-      [4, restrict],
-    ],
-    up: [
-      [0, correct],
-      [1, (from, upper) => k.relax(at, size, stride, half, from | 1, upper, 1)],
-      [2, (from, upper) => k.relax(at, size, stride, half, from, upper, 1)],
-    ],
+    start:
+      sweeps === 1
+        ? [...starting, [2, startResidual], [2, restrict]]
+        : [...starting, ...again.slice(2), ...down],
+    again: [...again, ...down],
+    up,
   }
 }
