@@ -114,6 +114,8 @@ function note(all: RunRecord, taken: Taken): void {
   all.unresolvedFlow = Math.max(all.unresolvedFlow, taken.unresolvedFlow)
   all.converged = taken.converged
   all.cancelled = taken.cancelled
+  all.atRoundingFloor ||= taken.second.atRoundingFloor
+  all.kernels = taken.second.kernels
   all.history.push({ iterations: all.iterations, residual: taken.residual })
 }
 
