@@ -3,6 +3,9 @@
  *
  * Solves random cases whose answer is known in closed form with verification, and prints how often the true value of a
  * named result lies inside its error band, and how wide bands are against true errors (median of their ratio).
+ *
+ * 2026-12-01, 200 cases, seed 1: of 871 results 99.5 % inside; half of the bands within 4.2 true errors; 33 s of
+ * processor time.
  */
 import { coverage, type Judged, judgedCases, tightness } from './error-bands/judge'
 

@@ -11,7 +11,7 @@ import {
 import { cellAt } from './grid'
 import type { Position } from './model'
 import { signedArea } from './polygon'
-import type { CaptureResult, CaptureZone } from './result'
+import type { CaptureResult, CaptureSource, CaptureZone } from './result'
 import type { PlacedWell } from './wells'
 
 /** Where the water of every place of a raster goes, row by row from the lowest y; see `CaptureResult.drains`. */
@@ -89,7 +89,7 @@ export function captureOf(
     if (!((field.rates[index] as number) < 0)) return []
     const ring = ringRound(field, well, 'back')
     const zones = ring ? [...times, null].map((time): CaptureZone => zoneWithin(field, well, ring, time)) : []
-    return [{ name: well.name, zones }]
+    return [{ name: well.name, sources: ring ? sourcesOf(field, ring) : [], zones }]
   })
   return { result: { drains, wells, raster: { columns, rows, cells: step } }, raster }
 }
@@ -98,13 +98,31 @@ function span(edges: Float64Array, index: number, step: number, count: number): 
   return [edges[index * step] as number, edges[Math.min(count, (index + 1) * step)] as number]
 }
 
+const sourceLines = 200
+
+/** Where a well's water comes from, by lines against the flow that carry equal shares of it. */
+function sourcesOf(field: Velocities, ring: (share: number) => RingStart): CaptureSource[] {
+  const sources = new Map<string, CaptureSource>()
+  for (let k = 0; k < sourceLines; k++) {
+    const { x, y, cell } = ring((k + 0.5) / sourceLines)
+    const end = endOf(field, track(field, x, y, 'back', { cell }), 'back')
+    const key = `${end.at} ${end.name}`
+    const source = sources.get(key) ?? { ...end, share: 0 }
+    source.share += 1 / sourceLines
+    sources.set(key, source)
+  }
+  return [...sources.values()].sort((a, b) => b.share - a.share)
+}
+
 const firstLines = 48
 const mostLines = 600
 const closest = 1 / 4096
 
+/** A line against the flow from the ring round a well; `line`: its path, thinned. */
 interface Spoke {
   share: number
   path: number[]
+  line: Position[]
   end: Position
 }
 
@@ -128,21 +146,21 @@ function zoneWithin(
     if (left <= 0) {
       const part = Math.sqrt((time as number) / start.time)
       const end: Position = [well.x + part * (start.x - well.x), well.y + part * (start.y - well.y)]
-      return { share, path: [...end, 0], end }
+      return { share, path: [...end, 0], line: [end], end }
     }
     const found: Track = track(field, start.x, start.y, 'back' satisfies Direction, {
       record: true,
       within: left,
       cell: start.cell,
     })
-    return { share, path: found.path, end: [found.x, found.y] }
+    return { share, path: found.path, line: thinned(grid, found.path).line, end: [found.x, found.y] }
   }
   const spokes = Array.from({ length: firstLines }, (_, k) => spokeAt((k + 0.5) / firstLines))
   for (let k = 0; k < spokes.length && spokes.length < mostLines; ) {
     const a = spokes[k] as Spoke
     const b = spokes[(k + 1) % spokes.length] as Spoke
     const gap = b.share - a.share + (k + 1 === spokes.length ? 1 : 0)
-    if (gap > closest && apart(a.end, b.end) > far) spokes.splice(k + 1, 0, spokeAt(a.share + gap / 2))
+    if (gap > closest && parted(a, b, far)) spokes.splice(k + 1, 0, spokeAt(a.share + gap / 2))
     else k++
   }
   const outline: Position[] = []
@@ -151,9 +169,30 @@ function zoneWithin(
     const b = spokes[(k + 1) % spokes.length] as Spoke
     outline.push(a.end)
     // Where neighbours part, the zone ends along both of them, from where they were last together.
-    if (apart(a.end, b.end) > far) outline.push(...alongBoth(field, a, b, far / 2))
+    if (parted(a, b, far)) outline.push(...alongBoth(field, a, b, far / 2))
   }
   return { time, area: Math.abs(signedArea(outline)), outline }
+}
+
+/** Do the lines end, or run anywhere on their way, farther apart than that? */
+function parted(a: Spoke, b: Spoke, far: number): boolean {
+  if (apart(a.end, b.end) > far) return true
+  return (
+    a.line.some((place) => awayFrom(b.line, place) > far) ||
+    b.line.some((place) => awayFrom(a.line, place) > far)
+  )
+}
+
+function awayFrom(line: Position[], [x, y]: Position): number {
+  let nearest = apart(line[0] as Position, [x, y])
+  for (let k = 0; k + 1 < line.length; k++) {
+    const [a, b] = [line[k] as Position, line[k + 1] as Position]
+    const square = (b[0] - a[0]) ** 2 + (b[1] - a[1]) ** 2
+    const along = square > 0 ? ((x - a[0]) * (b[0] - a[0]) + (y - a[1]) * (b[1] - a[1])) / square : 0
+    const t = Math.min(1, Math.max(0, along))
+    nearest = Math.min(nearest, Math.hypot(a[0] + t * (b[0] - a[0]) - x, a[1] + t * (b[1] - a[1]) - y))
+  }
+  return nearest
 }
 
 function apart(a: Position, b: Position): number {

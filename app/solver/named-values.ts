@@ -7,6 +7,8 @@ export interface NamedValue {
   values: (number | null)[]
   /** Heads are measured from a datum and flows are not. */
   quantity: 'head' | 'flow' | 'gradient'
+  /** The head of a well's cells, where it has no radius: as low as the cells are small. */
+  ofCells?: true
 }
 
 /** The results that carry an error band and can be asked for by name. A well's is the head at its face, if it has one. */
@@ -17,11 +19,11 @@ export function namedValues(result: Result): NamedValue[] {
       values: head,
       quantity: 'head' as const,
     })),
-    ...result.wells.map(({ name, wellHead, cellHead }) => ({
-      name: `wells/${name}`,
-      values: wellHead.some((head) => head !== null) ? wellHead : cellHead,
-      quantity: 'head' as const,
-    })),
+    ...result.wells.map(({ name, wellHead, cellHead }): NamedValue => {
+      const named = { name: `wells/${name}`, quantity: 'head' as const }
+      const atFace = wellHead.some((head) => head !== null)
+      return atFace ? { ...named, values: wellHead } : { ...named, values: cellHead, ofCells: true }
+    }),
     ...result.lines.map(({ name, discharge }) => ({
       name: `lines/${name}`,
       values: discharge,

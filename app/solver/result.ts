@@ -153,11 +153,19 @@ export interface CaptureZone {
   outline: [x: number, y: number][]
 }
 
+/** Where a share of a well's water comes from. */
+export interface CaptureSource extends FlowLineEnd {
+  share: number
+}
+
 export interface CaptureResult {
   /** Where the water of the site goes: the area that drains there, and its share of all ground looked at. */
   drains: (FlowLineEnd & { area: number; share: number })[]
-  /** Every abstraction well that gives water, with its zone within each time asked for and, last, without limit. */
-  wells: { name: string; zones: CaptureZone[] }[]
+  /**
+   * Every abstraction well that gives water: where that comes from, and the ground it draws on within each time asked
+   * for and, last, without limit.
+   */
+  wells: { name: string; sources: CaptureSource[]; zones: CaptureZone[] }[]
   /** The places looked at: one for `cells` x `cells` cells. */
   raster: { columns: number; rows: number; cells: number }
 }

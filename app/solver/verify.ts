@@ -59,9 +59,13 @@ export function verificationOf(
   const grids = gridsOf({ ...ends, lines: withShiftedLines(d) }, own, choice, tries)
   const halved =
     model.time.kind === 'transient' ? tries(ends, { phase: 'steps halved', halveSteps: true }) : null
-  const outer = outerOf(ends, d, own, tries)
+  const outer =
+    columns * rows <= mostCells
+      ? outerOf(ends, d, own, tries)
+      : [{ text: `Not swapped: there are more than ${mostCells} cells.`, done: false, solved: null }]
   if (tries.cancelled) return null
-  const named = namedValues(own.result)
+  // The head of a well's cells depends on their size for good reason: only that at its face can converge.
+  const named = namedValues(own.result).filter(({ ofCells }) => !ofCells)
   const floor = floorOf([own, ...grids.solved.map(({ solved }) => solved)])
   const evidence: Evidence = {
     own,
