@@ -1,4 +1,4 @@
-import type { Model, Position } from '../model'
+import type { Model, Position } from '~/solver/model'
 import { evenGround, type Formula, headOf, plainWells, potentialOf } from './formula'
 
 /**

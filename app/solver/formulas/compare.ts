@@ -1,5 +1,5 @@
-import type { Model } from '../model'
-import type { FormulaComparison, Result } from '../result'
+import type { Model } from '~/solver/model'
+import type { FormulaComparison, Result } from '~/solver/result'
 import { circleFormula } from './circle'
 import { endlessFormula } from './endless'
 import { type Formula, meanRound } from './formula'

@@ -1,4 +1,4 @@
-import type { Model } from '../model'
+import type { Model } from '~/solver/model'
 import {
   type EvenGround,
   evenGround,

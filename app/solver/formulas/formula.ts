@@ -1,4 +1,4 @@
-import type { Model, Position } from '../model'
+import type { Model, Position } from '~/solver/model'
 
 /** A solution in closed form that holds for a whole model. */
 export interface Formula {

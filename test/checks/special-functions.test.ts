@@ -1,6 +1,6 @@
 import { describe, expect, it } from 'vitest'
-import published from '../../../test/checks/published.json'
-import { besselK0, leakyWellFunction, wellFunction } from './special-functions'
+import { besselK0, leakyWellFunction, wellFunction } from '~/solver/formulas/special-functions'
+import published from './published.json'
 
 function check<Inputs, Expected>(id: string): { source: string; inputs: Inputs; expected: Expected } {
   return published.find((entry) => entry.id === id) as unknown as {

@@ -1,7 +1,7 @@
 import { describe, expect, it } from 'vitest'
-import published from '../../../test/checks/published.json'
-import type { Boundary, Model, Position } from '../model'
-import { formulaOf } from './compare'
+import { formulaOf } from '~/solver/formulas/compare'
+import type { Boundary, Model, Position } from '~/solver/model'
+import published from './published.json'
 
 function check<Inputs, Expected>(id: string): { source: string; inputs: Inputs; expected: Expected } {
   return published.find((entry) => entry.id === id) as unknown as {
