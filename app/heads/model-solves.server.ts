@@ -1,3 +1,4 @@
+import { mostCells } from '~/cases/case'
 import { modelHash } from '~/cases/model-hash.server'
 import { deleteObject, getVerified, putBuffer } from '~/files/files.server'
 import { findJob, type Job, openJobs, startJob } from '~/jobs/jobs.server'
@@ -39,7 +40,7 @@ export async function startModelSolve(
       projectId: null,
       userId,
       kind: 'solve',
-      workerData: { model, input: modelHash(model), kernels: solverKernels() },
+      workerData: { model, input: modelHash(model), mostCells, kernels: solverKernels() },
       limitSeconds: longestSolveSeconds,
       onDone: async ({ result }, jobId) => {
         const stored = await putBuffer(Buffer.from(JSON.stringify(result)), {

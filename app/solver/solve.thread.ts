@@ -11,6 +11,8 @@ export interface SolveRequest {
   model: Model
   input?: string
   cancel?: SharedArrayBuffer | Int32Array
+  /** More are refused. */
+  mostCells?: number
   /** Compiled once, by whoever starts threads. */
   kernels?: Kernels
 }
@@ -25,7 +27,7 @@ export type SolveMessage =
 const progressEvery = 200
 
 function run(
-  { model, input, cancel, kernels }: SolveRequest,
+  { model, input, mostCells, cancel, kernels }: SolveRequest,
   post: (message: SolveMessage, move?: ArrayBuffer[]) => void,
 ): void {
   const flag = cancel instanceof Int32Array ? cancel : cancel ? new Int32Array(cancel) : null
@@ -33,6 +35,7 @@ function run(
   try {
     const solution = solveModel(model, {
       input,
+      mostCells,
       kernels,
       isCancelled: () => flag !== null && Atomics.load(flag, 0) !== 0,
       onProgress: (progress) => {

@@ -4,6 +4,7 @@ import { type Discretised, discretise } from './discretise'
 import type { Grid } from './grid'
 import type { Method } from './linear-step'
 import type { Model } from './model'
+import { ModelError } from './model-error'
 import { momentOf } from './moment'
 import { checkPoints } from './points'
 import { type Report, type RunRecord, recordOf } from './record'
@@ -17,6 +18,8 @@ export type { Progress }
 export interface SolveOptions extends SolverOptions {
   /** "sha256:…" of the model file, passed on into the result. */
   input?: string
+  /** More cells are refused; only the largest grid of all is when left out. */
+  mostCells?: number
 }
 
 /** Heads of the whole grid at one reported time. */
@@ -56,6 +59,13 @@ export const defaultTolerance = 1e-10
  */
 export function solveModel(model: Model, options: SolveOptions = {}): Solution {
   const first = discretise(model)
+  const cells = first.active.length
+  if (options.mostCells !== undefined && cells > options.mostCells) {
+    throw new ModelError(
+      'grid',
+      `${cells} cells are too many: at most ${options.mostCells} are computed here`,
+    )
+  }
   checkPoints(first)
   checkLinesAndRings(first)
   checkWanted(first)
