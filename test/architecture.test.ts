@@ -77,7 +77,7 @@ test('The linter refuses every import against the order of the book, and no othe
       const path = `app/${from}/to-${to}.tsx`
       const target = to === 'units' || to === 'environment.server' ? `~/${to}` : `~/${to}/something`
       write(path, `import { something } from '${target}'\nsomething()\n`)
-      if (from === 'solver' ? true : from !== to && !allowed[from]?.includes(to)) expected.add(path)
+      if (from !== to && !allowed[from]?.includes(to)) expected.add(path)
     }
     write(`app/${from}/upwards.tsx`, `import { something } from '../fit/something'\nsomething()\n`)
     write(`app/${from}/beside.tsx`, `import { something } from './something'\nsomething()\n`)
