@@ -41,15 +41,17 @@ export function gridError(values: number[], sizes: number[], own: number): GridE
   const order = (f2 - f1) * (f3 - f2) > 0 ? observedOrder(f2 - f1, f3 - f2, r2, r3) : null
   if (order !== null && order >= leastOrder) {
     const p = Math.min(order, formalOrder)
+    // Rounding makes second order a little more than second order.
+    const limited = order > formalOrder + 1e-3
     // f(h) = f0 + c h^p, with c from the finer pair and, at a limited order, no less than from the coarser one.
     const fine = (f2 - f1) / (r2 ** p - 1)
     const coarse = (f3 - f2) / (r3 ** p - r2 ** p)
-    const c = order > formalOrder && Math.abs(coarse) > Math.abs(fine) ? coarse : fine
+    const c = limited && Math.abs(coarse) > Math.abs(fine) ? coarse : fine
     return {
       error: safetyFactor * Math.abs(c) * (h[own] as number) ** p,
       order,
       extrapolated: f1 - fine,
-      how: order > formalOrder ? 'limited order' : 'observed order',
+      how: limited ? 'limited order' : 'observed order',
     }
   }
   const step = Math.max(Math.abs(f2 - f1) / (r2 - 1), Math.abs(f3 - f2) / (r3 - r2))

@@ -180,6 +180,71 @@ describe('the verification of a run', () => {
     expect(result.verification?.outerBoundary[0]?.text).toMatch(/"West" alone holds the level/)
   })
 
+  it('where a coarser grid has no place for a ring, a finer one is taken', () => {
+    const { result } = solveModel(
+      strip({
+        rings: [
+          {
+            name: 'Pit',
+            polygon: [
+              [282, 182],
+              [298, 182],
+              [298, 198],
+              [282, 198],
+            ],
+          },
+        ],
+        want: { verify: true },
+      }),
+    )
+    expect(result.verification?.grid.grids.map(({ times }) => times)).toEqual([0.25, 0.5, 1])
+    expect(result.verification?.grid.why).toMatch(/2 times as coarse: rings\[0\].polygon/)
+  })
+
+  it('halves steps in time, and names Theis where the sides are far off', () => {
+    const edges = [1, 1.5, 2.2, 3.3, 5, 7.5, 11, 16, 24, 36, 54, 80, 120, 180, 270, 400, 600].map(
+      (x) => x - 0.5,
+    )
+    const both = [...edges.map((x) => -x).reverse(), ...edges]
+    const far = both.at(-1) as number
+    const around: Position[] = [
+      [-far, -far],
+      [far, -far],
+      [far, far],
+      [-far, far],
+      [-far, -far],
+    ]
+    const { result } = solveModel(
+      strip({
+        extent: { x: [-far, far], y: [-far, far] },
+        grid: { xEdges: both, yEdges: both },
+        materials: [{ name: 'Sand', kx: 8, ky: 8, specificStorage: 1e-4 }],
+        time: {
+          kind: 'transient',
+          initialHead: 12,
+          report: 'steps',
+          stages: [{ duration: 0.2, firstStep: 0.002, growth: 1.4 }],
+        },
+        boundaries: [{ name: 'Far', kind: 'fixed head', line: around, head: 12 }],
+        wells: [{ ...well, x: 0, y: 0 }],
+        points: [{ name: 'P1', x: 20, y: 5 }],
+        want: { verify: true },
+      }),
+    )
+    const { verification } = result
+    expect(verification?.time).toEqual({ halved: true })
+    expect(verification?.formula?.source).toMatch(/Theis/)
+    const last = result.times.length - 1
+    const point = verification?.results.find(({ name }) => name === 'points/P1')
+    // Other runs report the ends of stages only: steps before have no band.
+    expect(point?.band[0]).toBeNull()
+    const [low, high] = point?.band[last] ?? [0, 0]
+    const exact = verification?.formula?.results[0]?.formula[last] as number
+    expect(exact).toBeGreaterThan(low)
+    expect(exact).toBeLessThan(high)
+    expect(high - low).toBeLessThan(0.2 * (12 - exact))
+  })
+
   it('a cancelled run says so and has no verification', () => {
     let stop = false
     const solution = solveModel(strip({ wells: [well], want: { verify: true } }), {
