@@ -6,8 +6,9 @@ import { fileURLToPath } from 'node:url'
 const root = dirname(dirname(fileURLToPath(import.meta.url)))
 const folder = join(root, 'app/solver/linear/kernels')
 
-/** Memory is the caller's. */
-const flags = ['--runtime', 'stub', '--noAssert', '--enable', 'simd', '--importMemory', '-O3']
+/** Memory is the caller's, of up to as many pages as there are addresses. */
+const memory = ['--importMemory', '--maximumMemory', '65536']
+const flags = ['--runtime', 'stub', '--noAssert', '--enable', 'simd', ...memory, '-O3']
 
 function sources(): Map<string, string> {
   const names = readdirSync(folder).filter((name) => name.endsWith('.as'))

@@ -1,12 +1,16 @@
-import { type Cycle, cycleOf } from './cycle'
-import type { KernelExports, Kernels } from './kernels'
+import { conjugateGradients } from './conjugate-gradients'
+import { cycleOf, type Part } from './cycle'
+import { type KernelExports, type Kernels, mostPages } from './kernels'
 import { doubleArrays, type Grid, nineArrays, type Plan, planCoarser, planFinest, planInverse } from './plan'
 import type { LinearOptions, LinearOutcome, LinearSystem, Prepared } from './system'
+import { Alone, countersOf, decideTogether, isTaken, meetings, offerTurn } from './team'
 
 /** A grid of at most so many cells is solved directly. */
 const coarsest = 64
 /** Links along rows stronger than those across by this factor (geometric mean): leave out only columns. */
 const leaning = 3
+/** Fewer cells are not worth a second thread's while. */
+const worthTwoThreads = 20_000
 
 /** Geometric mean of how much stronger one direction's links are than the other's, of a sample of the cells. */
 function lean(cells: number, along: (c: number) => number, across: (c: number) => number): number {
@@ -67,6 +71,7 @@ export function prepareCompiled(system: LinearSystem, kernels: Kernels, before?:
     before,
   )
   const prepared: Prepared = {
+    bytes: inner.bytes,
     solve(b, x, options) {
       const solution = transposed(x, columns, rows)
       const outcome = inner.solve(transposed(b, columns, rows), solution, options)
@@ -86,22 +91,28 @@ export function prepareCompiled(system: LinearSystem, kernels: Kernels, before?:
 
 /** Memory that grows, its views and the kernels that work in it. */
 interface Machine {
+  memory: WebAssembly.Memory
   kernels: KernelExports
   floats: Float32Array
   doubles: Float64Array
   grow: (bytes: number) => void
   /** What lies in the memory; null: zeros. */
   plan: Plan | null
+  shared: boolean
 }
 
-export function machineOf(kernels: Kernels): Machine {
-  const memory = new WebAssembly.Memory({ initial: 1, maximum: 65536 })
-  const instance = new WebAssembly.Instance(kernels.module, { env: { memory } })
+/** `shared`: memory that another thread can work in too. */
+export function machineOf(kernels: Kernels, shared: boolean): Machine {
+  const memory = new WebAssembly.Memory({ initial: 1, maximum: mostPages, shared })
+  const module = shared ? kernels.shared : kernels.module
+  const instance = new WebAssembly.Instance(module, { env: { memory } })
   const machine: Machine = {
+    memory,
     kernels: instance.exports as unknown as KernelExports,
     floats: new Float32Array(memory.buffer),
     doubles: new Float64Array(memory.buffer),
     plan: null,
+    shared,
     grow(bytes) {
       const missing = Math.ceil((bytes + 64 - memory.buffer.byteLength) / 65536)
       if (missing <= 0) return
@@ -225,13 +236,30 @@ function coarsened(plan: Plan, n: number, machine: Machine): Grid {
 const machines = new WeakMap<Prepared, Machine>()
 
 function prepareRows(system: LinearSystem, kernels: Kernels, before: Prepared | undefined): Prepared {
-  const machine = (before && machines.get(before)) ?? machineOf(kernels)
+  const { columns, rows } = system
+  const { helper } = columns * rows >= worthTwoThreads ? kernels : { helper: undefined }
+  let machine = (before && machines.get(before)) ?? machineOf(kernels, helper !== undefined)
   if (before) machines.delete(before)
   const plan = setUp(system, machine)
-  const { kernels: k, doubles } = machine
-  const { columns, rows, single, double, size, stride, stage, staged } = plan
-  const cycle = cycleOf(plan, k, doubles.subarray(plan.sums / 8), { index: 0, count: 1, meet: () => {} })
+  const { single, double, size, stride, stage, staged } = plan
   const { blackOwn, p, q, redX } = doubleArrays
+  const onItsOwn: Part = { index: 0, count: 1, meet: () => {} }
+  let { kernels: k, doubles } = machine
+  let cycle = cycleOf(plan, k, doubles, onItsOwn)
+  let turn = 0
+
+  /** Gives up a memory that another thread may still write to. */
+  function leaveMemory(): void {
+    const own = machineOf(kernels, false)
+    own.grow(plan.bytes)
+    own.doubles.set(doubles.subarray(0, Math.ceil(plan.bytes / 8)))
+    own.plan = plan
+    machine = own
+    k = own.kernels
+    doubles = own.doubles
+    cycle = cycleOf(plan, k, doubles, onItsOwn)
+    machines.set(prepared, own)
+  }
 
   /** Lays numbers in the order of the cells out by colours, in the places of two arrays. */
   function layOut(values: Float64Array, red: number, black: number): void {
@@ -259,13 +287,56 @@ function prepareRows(system: LinearSystem, kernels: Kernels, before: Prepared | 
 
   function solve(b: Float64Array, x: Float64Array, options: LinearOptions): LinearOutcome {
     if (isZero(b)) x.fill(0)
-    layOut(x, redX, blackOwn)
-    const outcome = conjugateGradients(cycle, options, {
-      layOut: () => layOut(b, q, blackOwn),
-      largest: () => k.largest(size, stride, double, p, 0, rows),
-    })
+    const outcome = solveTogether(b, x, options) ?? solveAlone(b, x, options)
     bringBack(x, redX)
     return outcome
+  }
+
+  function solveAlone(b: Float64Array, x: Float64Array, options: LinearOptions): LinearOutcome {
+    layOut(x, redX, blackOwn)
+    return conjugateGradients(cycle, options, {
+      layOut: () => layOut(b, q, blackOwn),
+      largest: () => k.largest(size, stride, double, p, 0, rows),
+      decide: (iterations, norm) => (options.watch?.(iterations, norm) ? 'cancel' : 'go on'),
+      alone: () => cycle,
+    })
+  }
+
+  /** With the helper; null when it does not come, or is lost on the way. */
+  function solveTogether(b: Float64Array, x: Float64Array, options: LinearOptions): LinearOutcome | null {
+    if (!helper || !machine.shared) return null
+    const counters = countersOf(machine.memory, plan)
+    turn++
+    if (!offerTurn(counters, turn)) return null
+    const { target, mostIterations } = options
+    helper.post({ module: kernels.shared, memory: machine.memory, plan, target, mostIterations, turn })
+    layOut(x, redX, blackOwn)
+    if (!isTaken(counters, turn)) return null
+    const started = performance.now()
+    const meeting = meetings(counters, 0)
+    const part: Part = { index: 0, count: 2, meet: meeting.meet }
+    try {
+      return conjugateGradients(cycleOf(plan, k, doubles, part), options, {
+        layOut() {
+          layOut(b, q, blackOwn)
+          meeting.meet()
+        },
+        largest: () => k.largest(size, stride, double, p, 0, rows),
+        decide(iterations, norm) {
+          // On a machine that is busy otherwise, threads wait for one another most of the time.
+          const slow = meeting.waited > 0.25 * (performance.now() - started)
+          const decision = options.watch?.(iterations, norm) ? 'cancel' : slow ? 'part' : 'go on'
+          return decideTogether(counters, meeting, decision)
+        },
+        alone() {
+          return cycle
+        },
+      })
+    } catch (error) {
+      if (!(error instanceof Alone)) throw error
+      leaveMemory()
+      return null
+    }
   }
 
   function precondition(r: Float64Array, z: Float64Array): void {
@@ -286,7 +357,7 @@ function prepareRows(system: LinearSystem, kernels: Kernels, before: Prepared | 
     for (let c = 0; c < z.length; c++) z[c] = (z[c] as number) * most
   }
 
-  const prepared = { solve, precondition }
+  const prepared: Prepared = { solve, precondition, bytes: plan.bytes }
   machines.set(prepared, machine)
   return prepared
 }
@@ -300,73 +371,4 @@ function largestOf(values: Float64Array): number {
   let most = 0
   for (let c = 0; c < values.length; c++) most = Math.max(most, Math.abs(values[c] as number))
   return most
-}
-
-interface Surroundings {
-  /** Lays the right-hand side out where the true residual is formed from it. */
-  layOut: () => void
-  /** Largest |p|. */
-  largest: () => number
-}
-
-/** Preconditioned conjugate gradients (Hestenes & Stiefel 1952) from where x is. */
-function conjugateGradients(
-  cycle: Cycle,
-  { target, mostIterations, watch }: LinearOptions,
-  { layOut, largest }: Surroundings,
-): LinearOutcome {
-  let scale = 1
-  function trueNorm(): number {
-    layOut()
-    return Math.sqrt(cycle.trueResidual(scale))
-  }
-  let norm = trueNorm()
-  // Single precision has no room for numbers far from 1.
-  if (norm > 0 && (norm < 1e-20 || norm > 1e20)) {
-    scale = 1 / norm
-    norm = trueNorm()
-  }
-  let truth = norm
-  let isTruth = true
-  let iterations = 0
-  let before = norm
-  let old = 0
-  let alpha = 0
-  let descended = false
-  let ended: LinearOutcome['ended'] | null = norm <= target ? 'converged' : null
-  while (ended === null) {
-    if (iterations >= mostIterations) {
-      ended = 'iterations'
-      break
-    }
-    if (!descended) cycle.descend()
-    const now = cycle.up()
-    const pq = now > 0 ? cycle.product(old > 0 ? now / old : 0) : 0
-    if (!(pq > 0)) {
-      ended = 'stalled'
-      break
-    }
-    old = now
-    alpha = now / pq
-    // No way down when this step is likely to be the last.
-    descended = norm * Math.min(1, norm / before) > 2 * target
-    before = norm
-    norm = Math.sqrt(cycle.step(alpha, scale, descended))
-    isTruth = false
-    iterations++
-    if (norm <= target) {
-      // Rounding lets the recurrence run ahead of the truth: the true residual decides, and is gone on from.
-      norm = trueNorm()
-      isTruth = true
-      descended = false
-      if (norm <= target) ended = 'converged'
-      else if (norm > 0.5 * truth) ended = 'stalled'
-      truth = norm
-      before = norm
-      old = 0
-    }
-    if (watch?.(iterations, norm) && ended === null) ended = 'cancelled'
-  }
-  const error = alpha * largest()
-  return { iterations, residual: isTruth ? norm : trueNorm(), ended, error }
 }

@@ -3,6 +3,8 @@ import { doubleArrays, type Grid, type Plan, singleArrays } from './plan'
 
 /** Working sets up to this many bytes stay in the cache that a core has to itself. */
 const cache = 200_000
+/** Grids of fewer cells are done by one thread while the others wait. */
+const worthSharing = 4096
 
 /** Works on the rows from..to - 1. */
 type Work = (from: number, to: number) => void
@@ -39,36 +41,36 @@ export interface Cycle {
 export function cycleOf(
   plan: Plan,
   k: KernelExports,
-  sums: Float64Array,
+  doubles: Float64Array,
   { index, count, meet }: Part,
 ): Cycle {
   const { single, double, size, stride, grids } = plan
   const coarsest = grids.length - 1
+  const sums = doubles.subarray(plan.sums / 8)
+
+  /** Is this thread on its own, at least for now? */
+  let alone = count === 1
 
   /**
    * Does the steps one after the other over all rows, in strips, so that what one leaves the next still finds in the
    * cache. A step needs its predecessor on the rows beside its own and stays so many rows behind. Where two parts of
    * the rows meet, what is left between them is done last, by the first thread.
    */
-  function sweep(rows: number, columns: number, bytesOfRow: number, steps: Step[]): void {
-    const parts = rows >= 16 * count && rows * columns >= 2048 ? count : 1
-    const share = 2 * Math.ceil(rows / parts / 2)
-    const start = index * share
+  function sweep(rows: number, bytesOfRow: number, steps: Step[]): void {
+    const share = alone ? rows : 2 * Math.ceil(rows / count / 2)
+    const start = alone ? 0 : index * share
     const end = Math.min(rows, start + share)
-    if (index < parts) {
-      const lines = Math.max(4, 2 * Math.floor(cache / bytesOfRow / 2))
-      for (let j = start; j < end; j += lines) {
-        const upper = Math.min(end, j + lines)
-        for (const [behind, work] of steps) {
-          const from = Math.max(start > 0 ? start + behind : 0, j - behind)
-          const to = upper === rows ? rows : upper - behind
-          if (from < to) work(from, to)
-        }
+    const lines = Math.max(4, 2 * Math.floor(cache / bytesOfRow / 2))
+    for (let j = start; j < end; j += lines) {
+      const upper = Math.min(end, j + lines)
+      for (const [behind, work] of steps) {
+        const from = Math.max(start > 0 ? start + behind : 0, j - behind)
+        const to = upper === rows ? rows : upper - behind
+        if (from < to) work(from, to)
       }
     }
-    if (count === 1) return
+    if (alone) return
     meet()
-    if (parts === 1) return
     if (index === 0) {
       for (let seam = share; seam < rows; seam += share) {
         for (const [behind, work] of steps) {
@@ -79,13 +81,15 @@ export function cycleOf(
     meet()
   }
 
+  // Two places a part, used in turn: by the time one is written again everybody has read it.
+  let turn = 0
   function sumOver(own: number): number {
-    sums[8 * index] = own
-    if (count === 1) return own
+    if (alone) return own
+    turn = 1 - turn
+    sums[8 * index + turn] = own
     meet()
     let sum = 0
-    for (let part = 0; part < count; part++) sum += sums[8 * part] as number
-    meet()
+    for (let part = 0; part < count; part++) sum += sums[8 * part + turn] as number
     return sum
   }
 
@@ -94,7 +98,7 @@ export function cycleOf(
   const toTop = [topWay.shares, topWay.sharesSize, top.at, top.size, top.stride, top.half] as const
   const topRow = topWay.natural + 2 * topWay.apart * index
   const doubleRow = 2 * stride
-  const { rows, columns } = plan
+  const { rows } = plan
   const { restrictRedAlong, restrictRedBoth, correctRedAlong, correctRedBoth } = k
   const restrictTop: Work = topWay.along
     ? (from, to) => restrictRedAlong(single, size, stride, ...toTop, topRow, from, to)
@@ -116,22 +120,28 @@ export function cycleOf(
   /** Visits grid n: x from b, from x = 0 or, `again`, from where it is. */
   function visit(n: number, again: boolean): void {
     const grid = grids[n] as Grid
+    if (!alone && grid.columns * grid.rows < worthSharing) {
+      if (index === 0) {
+        alone = true
+        visit(n, again)
+        alone = false
+      }
+      meet()
+      return
+    }
     const own = visits[n]
     if (!own) {
-      if (index === 0) {
-        const { at, size: bytes, stride: row, half } = grid
-        const { inverse, width, unknowns } = plan
-        k.dense(at, bytes, row, half, grid.columns, grid.rows, inverse, width, inverse + unknowns * width)
-      }
-      if (count > 1) meet()
+      const { at, size: bytes, stride: row, half } = grid
+      const { inverse, width, unknowns } = plan
+      k.dense(at, bytes, row, half, grid.columns, grid.rows, inverse, width, inverse + unknowns * width)
       return
     }
     const bytes = 9 * grid.stride
-    sweep(grid.rows, grid.columns, bytes, again ? own.again : own.start)
+    sweep(grid.rows, bytes, again ? own.again : own.start)
     visit(n + 1, false)
     // A coarse grid visited twice costs little and mends what coarser grids represent badly (W-cycle).
     if (n + 1 < coarsest) visit(n + 1, true)
-    sweep(grid.rows, grid.columns, bytes, own.up)
+    sweep(grid.rows, bytes, own.up)
   }
 
   // What the steps below take and leave.
@@ -185,13 +195,13 @@ export function cycleOf(
   ]
   function run(bytesOfRow: number, steps: Step[]): number {
     sum = 0
-    sweep(rows, columns, bytesOfRow, steps)
+    sweep(rows, bytesOfRow, steps)
     return sumOver(sum)
   }
 
   return {
     descend() {
-      sweep(rows, columns, 7 * stride, descending)
+      sweep(rows, 7 * stride, descending)
     },
     step(alpha, scale, descend) {
       factor = alpha
@@ -213,7 +223,7 @@ export function cycleOf(
     },
     eliminate(red) {
       source = red
-      sweep(rows, columns, 9 * doubleRow, eliminating)
+      sweep(rows, 9 * doubleRow, eliminating)
     },
   }
 }

@@ -1,3 +1,5 @@
+import type { Helper } from './team'
+
 /** What the compiled module exports (kernels/): addresses and sizes in bytes, rows from..to - 1. */
 export interface KernelExports {
   black(single: number, size: number, stride: number, source: number, from: number, to: number): void
@@ -246,14 +248,21 @@ type RedGalerkin = (
   to: number,
 ) => void
 
+/** Pages of 64 KB that a solver's memory may grow to: as many as there are addresses. */
+export const mostPages = 65536
+
 /**
  * The arithmetic of the fast method, compiled. Without it its TypeScript twin serves. It can be sent to a worker, which
- * then has nothing to compile.
+ * then has nothing to compile, but for the helper.
  */
 export interface Kernels {
   /** What a run reports. */
   name: string
   module: WebAssembly.Module
+  /** The same for memory that threads share. */
+  shared: WebAssembly.Module
+  /** A second thread (helper.thread.ts), if there is one. */
+  helper?: Helper
 }
 
 /**
@@ -261,5 +270,48 @@ export interface Kernels {
  * WebAssembly.CompileError where the machine has no SIMD of WebAssembly: then do without.
  */
 export function instantiateKernels(bytes: Uint8Array<ArrayBuffer>): Kernels {
-  return { name: 'wasm-simd', module: new WebAssembly.Module(bytes) }
+  return {
+    name: 'wasm-simd',
+    module: new WebAssembly.Module(bytes),
+    shared: new WebAssembly.Module(withSharedMemory(bytes)),
+  }
+}
+
+/** The same kernels with a second thread to share large systems with. */
+export function withHelper({ module, shared }: Kernels, helper: Helper): Kernels {
+  return { name: 'wasm-simd, 2 threads', module, shared, helper }
+}
+
+/**
+ * The module's one import is its memory; its limits' flags say whether threads may share it (WebAssembly core
+ * specification with threads, binary format: 1 has a maximum, 3 has one and is shared).
+ */
+function withSharedMemory(bytes: Uint8Array<ArrayBuffer>): Uint8Array<ArrayBuffer> {
+  const changed = bytes.slice()
+  let at = 8
+  function number(): number {
+    let value = 0
+    for (let shift = 0; ; shift += 7) {
+      const byte = changed[at++] ?? 0
+      value |= (byte & 127) << shift
+      if (byte < 128) return value
+    }
+  }
+  while (at < changed.length) {
+    const section = changed[at++]
+    const size = number()
+    if (section !== 2) {
+      at += size
+      continue
+    }
+    number()
+    // The names of the module and of the import, each with its length before it, and the kind: 2 is a memory.
+    for (let name = 0; name < 2; name++) {
+      const length = number()
+      at += length
+    }
+    if (changed[at] === 2 && changed[at + 1] === 1) changed[at + 1] = 3
+    break
+  }
+  return changed
 }

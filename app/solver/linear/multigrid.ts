@@ -591,5 +591,7 @@ export function prepareMultigrid(system: LinearSystem, kernels?: Kernels, before
     return { iterations, residual: norm, ended, error }
   }
 
-  return { solve, precondition }
+  let bytes = 8 * l.length
+  for (const level of levels) bytes += level.own.length * (9 * 8 + (level.down ? 4 * (8 + 4) : 0))
+  return { solve, precondition, bytes }
 }

@@ -45,4 +45,6 @@ export interface Prepared {
   solve(b: Float64Array, x: Float64Array, options: LinearOptions): LinearOutcome
   /** z = M r, one symmetric multigrid cycle: a preconditioner for Krylov methods elsewhere. */
   precondition(r: Float64Array, z: Float64Array): void
+  /** Memory held, in bytes. */
+  bytes: number
 }
