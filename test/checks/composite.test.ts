@@ -2,11 +2,11 @@ import { describe, expect, it } from 'vitest'
 import type { Position } from '~/solver/model'
 import {
   abstraction,
-  aroundACell,
   check,
   circle,
   extentOf,
   fixed,
+  growing,
   head,
   intoModel,
   relative,
@@ -35,7 +35,8 @@ describe('CO-07', () => {
   >('CO-07')
 
   it(`${title} (${source})`, () => {
-    const edges = aroundACell(10, 16, 1.15, 9000)
+    // A quarter of the site: the well in its corner gives a quarter of its rate.
+    const edges = growing(10, 16, 1.15, 9000)
     const material = (name: string, { T_m2_s: t, S }: Ground) => ({ name, kx: t, ky: t, specificStorage: S })
     const layer = { base: -1001, top: -1000 }
     const solution = solved({
@@ -47,7 +48,7 @@ describe('CO-07', () => {
       extent: extentOf(edges, edges),
       grid: { xEdges: edges, yEdges: edges },
       time: { kind: 'transient', initialHead: 0, stages: stagesTo(inputs.t_s, 20, 2 ** (1 / 8)) },
-      wells: [abstraction(0, 0, inputs.Q_m3_s)],
+      wells: [abstraction(0, 0, inputs.Q_m3_s / 4)],
       points: inputs.r_m.map((r) => ({ name: String(r), x: r, y: 0 })),
     })
     inputs.t_s.forEach((time, at) => {

@@ -223,7 +223,7 @@ describe('DW-09', () => {
     ['measured from its edge', expected.R0_m + expected.re_m, expected.Q_with_R0_plus_re_m3_s],
     ['measured from its centre', expected.R0_m, expected.Q_with_R0_only_m3_s],
   ] as const)(`${title}: the radius of influence %s (${source})`, (_, far, inflow) => {
-    const edges = growing(0.25, 120, 1.03, far)
+    const edges = growing(0.5, 60, 1.05, far)
     const solution = solvedByBoth({
       flow: 'unconfined',
       materials: [{ name: 'Ground', kx: inputs.K_m_s, ky: inputs.K_m_s }],

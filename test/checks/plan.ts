@@ -1,4 +1,5 @@
 import { expect } from 'vitest'
+import { solverKernels } from '~/heads/kernels.server'
 import type { Boundary, Model, Position, Stage, Well } from '~/solver/model'
 import { defaultTolerance, type Solution, solveModel } from '~/solver/solve'
 import published from './published.json'
@@ -33,7 +34,7 @@ export function plan(rest: Rest): Model {
 }
 
 function solvedBy(method: 'sor' | 'multigrid', model: Model): Solution {
-  const solution = solveModel({ ...model, solver: { ...model.solver, method } })
+  const solution = solveModel({ ...model, solver: { ...model.solver, method } }, { kernels: solverKernels() })
   const { result } = solution
   expect(result.method).toBe(method)
   expect(result.converged).toBe(true)
@@ -41,9 +42,9 @@ function solvedBy(method: 'sor' | 'multigrid', model: Model): Solution {
   return solution
 }
 
-/** The fast method's solution; it has converged and its balance closes at every reported time. */
-export function solved(rest: Rest): Solution {
-  return solvedBy('multigrid', plan(rest))
+/** One method's solution; it has converged and its balance closes at every reported time. */
+export function solved(rest: Rest, method: 'sor' | 'multigrid' = 'multigrid'): Solution {
+  return solvedBy(method, plan(rest))
 }
 
 /**
