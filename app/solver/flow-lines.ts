@@ -4,7 +4,7 @@ import { columnFaceCount, faceCount, faceOf } from './faces'
 import { exchangeFlow, type FaceFlow, type FlowModel } from './flow'
 import type { FlowField } from './flow-field'
 import { cellAt, type Grid } from './grid'
-import { thicknessAt } from './ground'
+import { type Profile, thicknessAt } from './ground'
 import type { FlowLineWish, Model, Position } from './model'
 import { ModelError, requireFinite } from './model-error'
 import { isInside } from './polygon'
@@ -177,13 +177,17 @@ function blockRound(grid: Grid, well: PlacedWell, margin: number): Block {
   }
 }
 
+function profileAt(d: Discretised, cell: number): Profile {
+  return d.profiles[d.profileOf[cell] as number] as Profile
+}
+
 const widestMargin = 3
 
 /**
  * Close to a well neither a velocity linear between faces nor the flows of a five-point grid follow the radial flow
  * (on the grid's axes they are 11 % too high two cells away, 3 % four). So the block of its cells and up to three more
- * on every side is treated as radial flow with an even drift, where nothing else acts in it and all its outline flows
- * to the well.
+ * on every side is treated as radial flow with an even drift, where its ground is one, nothing else acts in it and all
+ * its outline flows to the well.
  */
 function markRadial(field: Velocities, index: number): void {
   for (let margin = widestMargin; margin >= 1; margin--) if (markBlock(field, index, margin)) return
@@ -199,6 +203,8 @@ function markBlock(field: Velocities, index: number, margin: number): boolean {
   const split = columnFaceCount(grid)
   const towards = rate < 0 ? 1 : -1
   const cells: number[] = []
+  const ground = profileAt(d, (d.wells[index] as PlacedWell).shares[0]?.cell as number)
+  if (ground.kxy.some((cross) => cross !== 0)) return false
   let [qx, qy, water] = [0, 0, 0]
   for (let j = j0; j <= j1; j++) {
     for (let i = i0; i <= i1; i++) {
@@ -207,6 +213,7 @@ function markBlock(field: Velocities, index: number, margin: number): boolean {
       const south = split + cell
       if (d.active[cell] !== 1 || (d.fixedBy[cell] as number) >= 0 || field.radialTo.has(cell)) return false
       if ((field.wellsIn.get(cell) ?? []).some((other) => other !== index)) return false
+      if (profileAt(d, cell).material.join() !== ground.material.join()) return false
       const faces = [west, west + 1, south, south + columns]
       if (faces.some((face) => (d.wallShare[face] as number) > 0)) return false
       const outline: [at: boolean, face: number, inward: 1 | -1][] = [
@@ -248,7 +255,7 @@ function poreWater(d: Discretised, heads: Float64Array, saturation: Float64Array
   const porosities = d.model.materials.map((material) => material.porosity ?? 0)
   for (let cell = 0; cell < pore.length; cell++) {
     if (d.active[cell] !== 1) continue
-    const profile = d.profiles[d.profileOf[cell] as number] as Discretised['profiles'][number]
+    const profile = profileAt(d, cell)
     const top = profile.top[profile.top.length - 1] as number
     const level = d.unconfined ? (heads[cell] as number) : top
     if (d.unconfined && thicknessAt(profile, level) <= 0) continue
@@ -425,7 +432,7 @@ function radialTime(
 ): number {
   const { d } = field.flow
   const water = field.pore[cell] as number
-  const profile = d.profiles[d.profileOf[cell] as number] as Discretised['profiles'][number]
+  const profile = profileAt(d, cell)
   const root = Math.sqrt((profile.ky[0] as number) / (profile.kx[0] as number))
   const stretch = Math.sqrt(root)
   const dx = (x - well.x) * stretch

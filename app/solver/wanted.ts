@@ -72,7 +72,17 @@ export function addWanted(
   const { outcome } = run.reports[run.reports.length - 1] as Report
   if ((want.flowLines?.length ?? 0) > 0 || want.captureZones) {
     const velocities = velocitiesOf(run.lastField(), outcome)
-    if (want.flowLines) result.flowLines = flowLineResults(velocities)
+    if (want.flowLines) {
+      result.flowLines = flowLineResults(velocities)
+      for (const wish of want.flowLines) {
+        if (!('well' in wish) || result.flowLines.some(({ well }) => well === wish.well)) continue
+        result.warnings.push({
+          code: 'no-flow-lines',
+          severity: 'note',
+          text: `No flow line ${wish.direction === 'back' ? 'leads to' : 'leaves'} the well "${wish.well}".`,
+        })
+      }
+    }
     const times = want.captureZones?.times ?? []
     const capture = want.captureZones && captureOf(velocities, times, { isCancelled: options.isCancelled })
     if (capture) {

@@ -226,3 +226,30 @@ describe('PS-16b', () => {
     expect(Math.abs(up / edge - 1)).toBeLessThan(0.02)
   })
 })
+
+describe('a well in ground that conducts better one way (the transform of PS-14)', () => {
+  const [rate, tx, ty] = [0.01, 0.004, 0.001]
+  const stretched = (x: number, y: number) => x * x * Math.sqrt(ty / tx) + y * y * Math.sqrt(tx / ty)
+  const model = cutOut(
+    { x: [-405, 405], y: [-405, 405] },
+    1,
+    (x, y) => (rate / (4 * Math.PI * Math.sqrt(tx * ty))) * Math.log(stretched(x, y)),
+    {
+      materials: [{ name: 'Sand', kx: tx / 20, ky: ty / 20, porosity: 0.25 }],
+      wells: [{ name: 'W1', x: 0, y: 0, kind: 'abstraction', rate }],
+    },
+  )
+  const field = fieldOf(model)
+
+  it.each([
+    [200, 0],
+    [0, 100],
+    [150, 80],
+    [-60, 90],
+  ])('water from (%d, %d) moves straight to it, in the time of its ellipse', (x, y) => {
+    const found = track(field, x, y, 'forward', { record: true })
+    expect(found.end).toBe('well')
+    const time = (Math.PI * 0.25 * 20 * stretched(x, y)) / rate
+    expect(Math.abs(found.time / time - 1)).toBeLessThan(0.02)
+  })
+})
