@@ -72,12 +72,14 @@ interface Search {
   /** By cell: what its terms bring at p = 0 and how that falls with p, while they act as they do now. */
   given: Float64Array
   slope: Float64Array
-  /** What a cell lets go of when it is full, and what reaches it that depends on nothing. */
+  /** What a full cell lets flow on, and what a cell gets that depends on nothing, from storage too. */
   lets: Float64Array
   gets: Float64Array
   imbalance: Float64Array
   /** What the residual is relative to. */
   rightHandSide: number
+  /** What rounding alone may leave of the residual's norm: stored volumes over a short step. */
+  rounding: number
   residual: number
   iterations: number
   mostIterations: number
@@ -101,11 +103,12 @@ function searchOf(
   const count = d.active.length
   const lets = new Float64Array(count)
   const gets = source.slice()
+  let stored = 0
   for (let c = 0; c < count; c++) {
     lets[c] = (fall[c] as number) + (sink[c] as number)
     if (!storage) continue
-    lets[c] = (lets[c] as number) + (yields[c] as number) / storage.interval
     gets[c] = (gets[c] as number) + (storage.before[c] as number) / storage.interval
+    stored += ((yields[c] as number) / storage.interval) ** 2
   }
   for (const { cell, gravity } of terms) lets[cell] = (lets[cell] as number) + gravity
   const state = start
@@ -135,7 +138,8 @@ function searchOf(
     lets,
     gets,
     imbalance: new Float64Array(count),
-    rightHandSide: drivingFlow(balance, gets),
+    rightHandSide: drivingFlow(balance),
+    rounding: 4 * Number.EPSILON * Math.sqrt(stored),
     residual: Number.POSITIVE_INFINITY,
     iterations: 0,
     mostIterations: mostIterations(step.method, count),
@@ -156,6 +160,7 @@ function findWetSet(run: Search): boolean {
   const r = new Float64Array(count)
   const change = new Float64Array(count)
   const theta = new Float64Array(count)
+  const allowed = run.tolerance * run.rightHandSide + run.rounding
   let fewest = Number.POSITIVE_INFINITY
   let idle = 0
   let stuck = 0
@@ -173,7 +178,7 @@ function findWetSet(run: Search): boolean {
       (v, out) => nearly(run, v, out),
       r,
       change,
-      Math.max(0.3 * run.tolerance * run.rightHandSide, settled ? 0 : 1e-3 * norm),
+      Math.max(0.3 * allowed, settled ? 0 : 1e-3 * norm),
       stepsAtOnce(count),
     )
     let largest = 0
@@ -192,7 +197,10 @@ function findWetSet(run: Search): boolean {
     if (run.cancelled) return false
     settled = switched === 0
     if (settled) {
-      if (run.residual <= run.tolerance) return true
+      if (run.residual * run.rightHandSide <= allowed) {
+        run.atRoundingFloor = run.residual > run.tolerance
+        return true
+      }
       // Once or twice it may be that a drain or a seepage face came to act otherwise.
       stuck = run.residual > 0.5 * before ? stuck + 1 : 0
       if (stuck > 2 && run.residual < 1e-6) {
@@ -209,10 +217,10 @@ function findWetSet(run: Search): boolean {
 
 /**
  * Norm of what drives the flow: all that would enter a full cell from outside at no pressure, and the weight of the
- * water in it, which is there even when water rests.
+ * water in it, which is there even when water rests. Not what is stored: over a short step that is any amount.
  */
-function drivingFlow({ d, held, terms, fall }: SectionBalance, gets: Float64Array): number {
-  const given = gets.map((q, c) => Math.abs(q) + (fall[c] as number))
+function drivingFlow({ d, held, terms, fall, source }: SectionBalance): number {
+  const given = source.map((q, c) => q + (fall[c] as number))
   for (const { cell, conductance, level, cap, gravity } of terms) {
     given[cell] = (given[cell] as number) + conductance * Math.min(level, cap) + gravity
   }
@@ -263,7 +271,7 @@ function settleTerms(run: Search, first: boolean): void {
  */
 function letFall(run: Search, { p, theta }: SectionState, share: 0 | 1, out: Float64Array): void {
   const { balance, wet, given, slope, lets, gets, storage } = run
-  const { d, columns, rows, east, north, held, compressed } = balance
+  const { d, columns, rows, east, north, held, yields, compressed } = balance
   for (let j = rows - 1; j >= 0; j--) {
     for (let i = 0; i < columns; i++) {
       const c = j * columns + i
@@ -290,8 +298,10 @@ function letFall(run: Search, { p, theta }: SectionState, share: 0 | 1, out: Flo
         if (storage) q -= ((compressed[c] as number) * own) / storage.interval
         out[c] = q - share * (lets[c] as number)
       } else {
-        const full = lets[c] as number
-        theta[c] = full > 0 ? q / full : q > 0 && share === 1 ? Number.POSITIVE_INFINITY : 0
+        const kept = storage ? (yields[c] as number) / storage.interval : 0
+        const full = (lets[c] as number) + kept
+        const flow = q + share * kept
+        theta[c] = full > 0 ? flow / full : flow > 0 && share === 1 ? Number.POSITIVE_INFINITY : 0
       }
     }
   }

@@ -283,11 +283,14 @@ export function termFlow(term: Term, p: number): { q: number; slope: number } {
   return { q: conductance * rise, slope: conductance }
 }
 
-/** Volume stored in every cell: specific yield x theta + specific storage x p. */
+/**
+ * Volume stored in every cell beyond a full one at no pressure: specific yield x (theta - 1) + specific storage x p.
+ * From a full cell, so that short steps lose no digits to water that stays.
+ */
 export function sectionStored(balance: SectionBalance, { p, theta }: SectionState): Float64Array {
-  return balance.yields.map(
-    (full, cell) =>
-      full * (theta[cell] as number) + (balance.compressed[cell] as number) * (p[cell] as number),
+  const { yields, compressed } = balance
+  return yields.map(
+    (full, c) => full * ((theta[c] as number) - 1) + (compressed[c] as number) * (p[c] as number),
   )
 }
 
