@@ -315,22 +315,23 @@ function prepareRows(system: LinearSystem, kernels: Kernels, before: Prepared | 
     const started = performance.now()
     const meeting = meetings(counters, 0)
     const part: Part = { index: 0, count: 2, meet: meeting.meet }
+    let parted = false
     try {
       return conjugateGradients(cycleOf(plan, k, doubles, part), options, {
         layOut() {
           layOut(b, q, blackOwn)
-          meeting.meet()
+          if (!parted) meeting.meet()
         },
         largest: () => k.largest(size, stride, double, p, 0, rows),
         decide(iterations, norm) {
+          const wanted = options.watch?.(iterations, norm) ? 'cancel' : 'go on'
+          if (parted) return wanted
           // On a machine that is busy otherwise, threads wait for one another most of the time.
           const slow = meeting.waited > 0.25 * (performance.now() - started)
-          const decision = options.watch?.(iterations, norm) ? 'cancel' : slow ? 'part' : 'go on'
-          return decideTogether(counters, meeting, decision)
+          parted = slow && wanted === 'go on'
+          return decideTogether(counters, meeting, parted ? 'part' : wanted)
         },
-        alone() {
-          return cycle
-        },
+        alone: () => cycle,
       })
     } catch (error) {
       if (!(error instanceof Alone)) throw error
