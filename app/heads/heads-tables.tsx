@@ -2,6 +2,7 @@ import { type Column, DataTable } from '~/components/data-table'
 import type { Band, NamedFlow, Result } from '~/solver/result'
 import { formatNumber, formatSigned } from '~/units'
 import { balanceState, errorInWords } from './account'
+import { storageFlow, totalFlow } from './moment'
 import { bandInWords } from './verification'
 
 /** A named point of the run, with its head and what is known of the run compared with; in the run's unit. */
@@ -204,7 +205,7 @@ export function BalanceTables({ result, rate }: { result: Result; rate: string }
   const { balance } = result
   const error = balance.errorPercent[0] ?? Number.NaN
   const kinds = balance.kinds.map(({ kind, inflow, outflow }) => steady({ name: kind, inflow, outflow }))
-  const total = steady({ name: 'Total', inflow: balance.inflow, outflow: balance.outflow })
+  const total = steady(totalFlow(result))
   const named = [...result.boundaries, ...result.recharge, ...result.leakage].map(steady)
   const looks = { good: 'text-moss', warn: 'text-ochre', alarm: 'text-madder' }
   return (
@@ -212,7 +213,7 @@ export function BalanceTables({ result, rate }: { result: Result; rate: string }
       <DataTable
         caption="Water balance by kind"
         columns={flowColumns('Kind', rate)}
-        rows={[...kinds, total]}
+        rows={[...kinds, ...storageFlow(result).map(steady), total]}
         rowKey={(line) => line.name}
         chosen={(line) => line === total}
       />

@@ -1,7 +1,7 @@
 import { describe, expect, it } from 'vitest'
 import type { Model } from '~/solver/model'
 import { solveModel } from '~/solver/solve'
-import { momentInWords, resultAt } from './moment'
+import { momentInWords, resultAt, storageFlow, totalFlow } from './moment'
 
 /** A strip that a river falls beside, in two stages; everything that a result lists by time is in it. */
 function falling(time: Model['time']): Model {
@@ -84,9 +84,20 @@ describe('A result in time', () => {
     ])
   })
 
+  it('balances once what the ground gives from storage, or takes into it, is counted', () => {
+    for (const moment of [resultAt(result, 0), resultAt(result)]) {
+      const { inflow, outflow } = totalFlow(moment)
+      expect((inflow[0] ?? 0) / (outflow[0] ?? 1)).toBeCloseTo(1, 6)
+    }
+    // The river falls in the second stage: the ground drains.
+    expect(storageFlow(resultAt(result))[0]?.inflow[0]).toBeGreaterThan(0)
+  })
+
   it('is left as it is when it is steady', () => {
     const steady = solveModel(falling({ kind: 'steady' })).result
     expect(resultAt(steady)).toBe(steady)
+    expect(storageFlow(steady)).toEqual([])
+    expect(totalFlow(steady)).toMatchObject({ inflow: steady.balance.inflow })
     expect(momentInWords(steady, 'd')).toBe('')
   })
 })

@@ -1,4 +1,4 @@
-import type { Band, Result, Verification } from '~/solver/result'
+import type { Band, NamedFlow, Result, Verification } from '~/solver/result'
 import { formatNumber } from '~/units'
 
 /**
@@ -80,6 +80,32 @@ function verificationAt(
       ...(one.timeError ? { timeError: only(one.timeError) } : {}),
       swapped: one.swapped.map(({ text, values }) => ({ text, values: only(values) })),
     })),
+  }
+}
+
+/**
+ * Of a result at one moment: what the ground gives from storage or takes into it, as a flow in or out. It crosses no
+ * edge, but in time the others add up only with it. None in steady flow.
+ */
+export function storageFlow({ times, balance }: Result): NamedFlow[] {
+  if (times.length === 0) return []
+  return [
+    {
+      name: 'storage',
+      inflow: balance.storage.map((into) => Math.max(0, -into)),
+      outflow: balance.storage.map((into) => Math.max(0, into)),
+    },
+  ]
+}
+
+/** All flows in and out of a result at one moment, storage with them. */
+export function totalFlow(result: Result): NamedFlow {
+  const [storage] = storageFlow(result)
+  const { inflow, outflow } = result.balance
+  return {
+    name: 'Total',
+    inflow: inflow.map((flow, k) => flow + (storage?.inflow[k] ?? 0)),
+    outflow: outflow.map((flow, k) => flow + (storage?.outflow[k] ?? 0)),
   }
 }
 

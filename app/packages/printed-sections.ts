@@ -6,7 +6,7 @@ import { defaultTolerance } from '~/cases/case'
 import { acceptanceInWords, acceptanceOf } from '~/heads/acceptance'
 import { byGravity, kernelsInWords, methodWords, mostBalanceError, severityWords } from '~/heads/account'
 import type { HeadField } from '~/heads/field'
-import { momentInWords, resultAt } from '~/heads/moment'
+import { momentInWords, resultAt, storageFlow, totalFlow } from '~/heads/moment'
 import { bandInWords, bandMeaning, verificationLines } from '~/heads/verification'
 import { levelUnit } from '~/projects/project'
 import { decodeHeads } from '~/solver/heads-buffer'
@@ -666,7 +666,8 @@ function balanceTable(content: GatheredContent): Piece {
     ...result.recharge.map((part) => ({ ...part, kind: 'recharge' })),
     ...result.leakage.map((part) => ({ ...part, kind: 'leakage' })),
     ...(wells ? [{ ...wells, name: 'All wells', kind: 'wells' }] : []),
-    { name: 'Total', kind: '', inflow: result.balance.inflow, outflow: result.balance.outflow },
+    ...storageFlow(result).map((part) => ({ ...part, kind: 'ground' })),
+    { ...totalFlow(result), kind: '' },
   ]
   return table(
     '5.2',

@@ -221,7 +221,7 @@ describe('a water table in plan', () => {
     }
     const warnings = toAccept(model)
     expect(warnings.map(({ code }) => code)).toEqual(['steep-water-table'])
-    expect(warnings[0]?.text).toContain('at time 201')
+    expect(warnings[0]?.text).toContain('at time 201 d')
   })
 })
 

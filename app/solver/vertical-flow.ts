@@ -132,7 +132,7 @@ function stateOf(report: Report): State {
     greatest,
     x: centresOf(d.grid.xEdges),
     y: centresOf(d.grid.yEdges),
-    when: d.model.time.kind === 'transient' ? ` at time ${time}` : '',
+    when: d.model.time.kind === 'transient' ? ` at time ${time} ${d.model.units.time}` : '',
   }
 }
 

@@ -8,10 +8,13 @@ import { useRows } from '~/book/use-rows'
 import type { Estimate } from '~/checks/estimate'
 import { checkColumns, checkSchemas, EstimateSheet } from '~/checks/estimate-sheet'
 import { DataTable } from '~/components/data-table'
-import { Caution, Notice } from '~/components/notice'
+import { localTime } from '~/components/local-time'
+import { Caution } from '~/components/notice'
 import { Heading, SectionPage } from '~/components/section-page'
+import { acceptancesOf } from '~/heads/acceptances.server'
 import { mostBalanceError } from '~/heads/account'
 import { resultAt } from '~/heads/moment'
+import { RunWarnings } from '~/heads/run-warnings'
 import { latestDoneRun } from '~/heads/runs.server'
 import { verificationLines } from '~/heads/verification'
 import { permit } from '~/projects/guard.server'
@@ -38,6 +41,7 @@ export async function loader({ context }: Route.LoaderArgs) {
     run:
       run && result
         ? {
+            id: run.id,
             number: run.number,
             caseName: run.caseName,
             converged: result.converged,
@@ -49,6 +53,7 @@ export async function loader({ context }: Route.LoaderArgs) {
             outflow: result.balance.outflow[0] ?? null,
             abstraction: result.wells.reduce((sum, well) => sum + (well.achieved[0] ?? 0), 0),
             warnings: result.warnings,
+            acceptances: await acceptancesOf(db, project.id, run.id),
             verification: verificationLines(result, unitLabel(run.model.units.length)),
           }
         : null,
@@ -174,21 +179,14 @@ export default function ChecksPage({ loaderData }: Route.ComponentProps) {
               { head: 'Held against', words: true, cell: (row) => row.limit },
             ]}
           />
-          {run.warnings.map((warning) => (
-            <Notice
-              key={warning.code + warning.text}
-              tone={warning.severity === 'serious' ? 'alarm' : warning.severity === 'check' ? 'warn' : 'note'}
-              title={
-                warning.severity === 'serious'
-                  ? 'Not to be used as it is'
-                  : warning.severity === 'check'
-                    ? 'To be looked at'
-                    : 'For information'
-              }
-            >
-              {warning.text}
-            </Notice>
-          ))}
+          <RunWarnings
+            runId={run.id}
+            warnings={run.warnings}
+            acceptances={run.acceptances}
+            mayAccept={false}
+            result={undefined}
+            day={localTime(project.timeZone).day}
+          />
         </>
       ) : (
         <p className="text-flint-2">No run has finished yet.</p>
