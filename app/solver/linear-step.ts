@@ -12,7 +12,10 @@ export type Method = 'sor' | 'multigrid'
 export interface StepOptions {
   /** Norm of the residual to reach ... */
   target: number
-  /** ... with the estimated error of every head at most this share of the range of the heads' changes. */
+  /**
+   * ... with the estimated error of every head at most this share of the range of the heads' changes; infinite: it is
+   * not asked for, and need not be estimated.
+   */
   headTolerance: number
   /** Sweeps (relaxation) or cycles (multigrid). */
   mostIterations: number
@@ -150,6 +153,9 @@ function multigrid(d: Discretised, kernels: Kernels | undefined): LinearStep {
               options,
             )
         iterations += outcome.iterations
+        if (headTolerance === Number.POSITIVE_INFINITY) {
+          return { iterations, residual: outcome.residual, headError: Number.NaN, ended: outcome.ended }
+        }
         // What one more cycle would still change tells what is left.
         applyMatrix(matrix, columns, rows, y, rest)
         for (let cell = 0; cell < count; cell++)

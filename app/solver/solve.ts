@@ -54,8 +54,9 @@ export const defaultTolerance = 1e-10
  *
  * The model is laid out on its grid (discretise), where every cell has a balance: what flows through its faces
  * (flow), what its boundaries, wells and recharge bring, and what it stores. Newton's steps (newton) bring all
- * balances to zero; each is a linear system, solved by successive over-relaxation or multigrid (linear-step). Flows
- * are then added up by name (flow-field, moment), and the result written (account).
+ * balances to zero; each is a linear system, solved by successive over-relaxation or multigrid (linear-step). In a
+ * section with a free surface the set of wet cells is sought with them (section-balance, free-surface). Flows are then
+ * added up by name (flow-field, moment), and the result written (account).
  */
 export function solveModel(model: Model, options: SolveOptions = {}): Solution {
   const first = discretise(model)
