@@ -1,180 +1,186 @@
 /**
- * npm run bench
+ * npm run bench [-- --quick] [--plot FILE.svg]
  *
- * Times steady plan solves by over-relaxation and prints a table: medians of five runs after one to warm up, set-up
- * and results included, in this process on one thread. Three problems on square grids: one material between four
- * fixed sides; conductivity that varies log-normally (sigma of ln K 2, four cells to a zone) with 20 wells; a
- * channel a thousand times as conductive beside a wall of 1e-6, held on one short stretch.
+ * Times the linear solver on three kinds of problems (scripts/bench/problems.ts), with one thread and with two; live
+ * moves of a well in Node and in headless Chromium's web worker; and whole runs. With LAVANT_BENCH_ANCHORS=DIR, a folder
+ * with the program hypre_struct in it, the same problems are given to that library's structured multigrid in the same
+ * run, turn about; otherwise its columns say "not measured". --plot writes cost per cell against cells as a picture.
+ *
+ * npm run bench -- --problem FILE [--threads 1|2] [--method multigrid|sor|typescript]
+ *
+ * One JSON line for one problem file: seconds (medians), iterations, true relative residual, bytes a cell.
  */
-import type { Boundary, Ground, Model, Position } from '~/solver/model'
-import { solveModel } from '~/solver/solve'
+import { mkdtempSync, rmSync, writeFileSync } from 'node:fs'
+import { cpus, tmpdir } from 'node:os'
+import { join } from 'node:path'
+import { anchorsFolder, type LibraryTime, timeLibrary } from './bench/anchors.ts'
+import { engineTimes } from './bench/engine.ts'
+import { type BenchKernels, benchKernels } from './bench/kernels.ts'
+import { type LiveTime, moveOneWell } from './bench/live.ts'
+import { moveOneWellInBrowser } from './bench/live-in-browser.ts'
+import { type Measured, measure } from './bench/measure.ts'
+import { measureSor } from './bench/over-relaxation.ts'
+import { type Cost, costPlot } from './bench/plot.ts'
+import { readProblem, writeProblem } from './bench/problem-file.ts'
+import { type Kind, problemOf } from './bench/problems.ts'
+import { triadBandwidth } from './bench/timing.ts'
 
-const repeats = 5
-const sizes = process.argv.length > 2 ? process.argv.slice(2).map(Number) : [64, 128, 256, 512]
+const kinds: Kind[] = ['P1', 'P2', 'P3']
+/** Bytes that a cell must move to and from memory in one iteration, where no cache holds it. */
+const bytesMoved = 160
 
-/** Uniform numbers from 0 to 1, the same on every machine (linear congruence, Numerical Recipes' constants). */
-function numbersFrom(seed: number): () => number {
-  let state = seed
-  return () => {
-    state = (Math.imul(state, 1664525) + 1013904223) >>> 0
-    return (state + 0.5) / 4294967296
+class Refusal extends Error {}
+
+function optionOf(words: string[], option: string): string | undefined {
+  const at = words.indexOf(option)
+  if (at < 0) return undefined
+  const value = words[at + 1]
+  if (value === undefined || value.startsWith('--')) throw new Refusal(`${option} needs a value`)
+  return value
+}
+
+function repeatsFor(cells: number): number {
+  return cells <= 70_000 ? 25 : cells <= 300_000 ? 11 : cells <= 1_100_000 ? 5 : 3
+}
+
+function milliseconds(seconds: number): string {
+  return (1000 * seconds).toFixed(1).padStart(9)
+}
+
+function row(words: string[]): void {
+  console.log(words.join(' '))
+}
+
+async function oneProblem(file: string, words: string[]): Promise<void> {
+  const threads = Number(optionOf(words, '--threads') ?? 1)
+  const method = optionOf(words, '--method') ?? 'multigrid'
+  if (threads !== 1 && threads !== 2) throw new Refusal('--threads is 1 or 2')
+  if (!['multigrid', 'sor', 'typescript'].includes(method)) {
+    throw new Refusal('--method is multigrid, sor or typescript')
   }
+  const problem = readProblem(file)
+  const repeats = repeatsFor(problem.b.length)
+  const kernels = await benchKernels()
+  const means = method === 'typescript' ? undefined : threads === 2 ? kernels.two : kernels.one
+  const measured = method === 'sor' ? measureSor(problem) : measure(problem, means, repeats)
+  const name = method === 'sor' ? 'typescript' : (means?.name ?? 'typescript')
+  console.log(
+    JSON.stringify({
+      problem: problem.name,
+      method,
+      threads: method === 'multigrid' ? threads : 1,
+      kernels: name,
+      ...measured,
+    }),
+  )
+  await kernels.end()
 }
 
-const corners: Position[] = [
-  [0, 0],
-  [1000, 0],
-  [1000, 1000],
-  [0, 1000],
-]
-
-function fixedSides(heads: [south: number, east: number, north: number, west: number]): Boundary[] {
-  return heads.map((head, k) => ({
-    name: `Side ${k + 1}`,
-    kind: 'fixed head',
-    line: [corners[k] as Position, corners[(k + 1) % 4] as Position],
-    head,
-  }))
+function tableLine(name: string, threads: number, ours: Measured, library: LibraryTime | null): void {
+  const total = ours.setup + ours.solve
+  const theirs = library ? library.setup + library.solve : 0
+  row([
+    name.padEnd(8),
+    String(threads).padStart(7),
+    milliseconds(ours.setup),
+    milliseconds(ours.solve),
+    milliseconds(total),
+    String(ours.iterations).padStart(5),
+    ours.residual.toExponential(1).padStart(9),
+    ours.bytesPerCell.toFixed(0).padStart(7),
+    library ? milliseconds(theirs) : ' not measured',
+    library ? String(library.iterations).padStart(5) : '',
+    library ? (total / theirs).toFixed(2).padStart(6) : '',
+  ])
 }
 
-function square(cells: number, changes: Partial<Model>): Model {
-  return {
-    format: 'lavant-model',
-    version: 1,
-    units: { length: 'm', time: 'd' },
-    kind: 'plan',
-    flow: 'confined',
-    extent: { x: [0, 1000], y: [0, 1000] },
-    grid: { columns: cells, rows: cells },
-    time: { kind: 'steady' },
-    materials: [{ name: 'Sand', kx: 10, ky: 10 }],
-    ground: [{ material: 'Sand', base: -20, top: 0 }],
-    boundaries: fixedSides([11, 10, 11, 12]),
-    recharge: [{ name: 'Rain', rate: 0.001 }],
-    ...changes,
-  }
-}
-
-function homogeneous(cells: number): Model {
-  return square(cells, {})
-}
-
-function varied(cells: number): Model {
-  const next = numbersFrom(7)
-  const zones = cells / 4
-  const width = 1000 / zones
-  const names = 64
-  const normal = () => Math.sqrt(-2 * Math.log(next())) * Math.cos(2 * Math.PI * next())
-  const materials = Array.from({ length: names }, (_, k) => {
-    const conductivity = 10 * Math.exp(2 * normal())
-    return { name: `Sand ${k}`, kx: conductivity, ky: conductivity }
-  })
-  const ground: Ground[] = []
-  for (let j = 0; j < zones; j++) {
-    for (let i = 0; i < zones; i++) {
-      const [x, y] = [i * width, j * width]
-      ground.push({
-        material: `Sand ${Math.floor(next() * names)}`,
-        polygon: [
-          [x, y],
-          [x + width, y],
-          [x + width, y + width],
-          [x, y + width],
-        ],
-        base: -20,
-        top: 0,
-      })
+/** The table; returns what a cell costs on one thread. */
+function linearTable(kernels: BenchKernels, sizes: number[], anchors: string | null): Map<Kind, Cost[]> {
+  const folder = mkdtempSync(join(tmpdir(), 'lavant-bench-'))
+  const costs = new Map<Kind, Cost[]>(kinds.map((kind) => [kind, []]))
+  row(['\nproblem  threads   set-up     solve    total   iter  residual  bytes/     library        ratio'])
+  row(['                       ms        ms       ms                    cell     ms, iterations'])
+  try {
+    for (const kind of kinds) {
+      for (const n of sizes) {
+        const problem = problemOf(kind, n)
+        const repeats = repeatsFor(n * n)
+        const file = join(folder, `${kind}_${n}.bin`)
+        if (anchors) writeProblem(file, problem)
+        for (const threads of [1, 2]) {
+          const ours = measure(problem, threads === 2 ? kernels.two : kernels.one, repeats)
+          const library = anchors
+            ? timeLibrary(anchors, problem.name, file, threads, Math.min(repeats, 7))
+            : null
+          tableLine(problem.name, threads, ours, library)
+          if (threads === 1) costs.get(kind)?.push({ n, seconds: ours.setup + ours.solve })
+        }
+        rmSync(file, { force: true })
+      }
     }
+  } finally {
+    rmSync(folder, { recursive: true, force: true })
   }
-  const wells = Array.from({ length: 20 }, (_, k) => ({
-    name: `W${k}`,
-    x: 50 + 900 * next(),
-    y: 50 + 900 * next(),
-    kind: 'abstraction' as const,
-    rate: 50,
-  }))
-  return square(cells, { materials, ground, wells })
+  return costs
 }
 
-function walled(cells: number): Model {
-  return square(cells, {
-    materials: [
-      { name: 'Sand', kx: 10, ky: 1 },
-      { name: 'Channel', kx: 10_000, ky: 1000 },
-    ],
-    ground: [
-      { material: 'Sand', base: -20, top: 0 },
-      {
-        material: 'Channel',
-        polygon: [
-          [0, 400],
-          [1000, 550],
-          [1000, 600],
-          [0, 450],
-        ],
-        base: -20,
-        top: 0,
-      },
-    ],
-    walls: [
-      {
-        name: 'Box',
-        line: [
-          [200, 600],
-          [500, 650],
-          [480, 900],
-          [180, 850],
-          [200, 600],
-        ],
-        thickness: 1,
-        k: 1e-6,
-      },
-    ],
-    boundaries: [
-      {
-        name: 'Pond',
-        kind: 'fixed head',
-        line: [
-          [0, 0],
-          [0, 40],
-        ],
-        head: 10,
-      },
-    ],
-  })
-}
-
-function median(values: number[]): number {
-  return [...values].sort((a, b) => a - b)[Math.floor(values.length / 2)] as number
-}
-
-const problems: [string, (cells: number) => Model][] = [
-  ['one material', homogeneous],
-  ['log-normal K, 20 wells', varied],
-  ['walls and channel', walled],
-]
-
-console.log('problem                  cells        seconds  sweeps  residual  head error  converged')
-for (const [name, problem] of problems) {
-  for (const cells of sizes) {
-    const model = problem(cells)
-    const seconds: number[] = []
-    let result = solveModel(model).result
-    for (let k = 0; k < repeats; k++) {
-      const started = performance.now()
-      result = solveModel(model).result
-      seconds.push((performance.now() - started) / 1000)
-    }
-    console.log(
-      [
-        name.padEnd(24),
-        `${cells} x ${cells}`.padEnd(11),
-        median(seconds).toFixed(3).padStart(8),
-        String(result.iterations).padStart(7),
-        result.residual.toExponential(1).padStart(9),
-        result.headError.toExponential(1).padStart(11),
-        result.converged ? '  yes' : '  no',
-      ].join(' '),
-    )
+function liveTable(where: string, times: LiveTime[] | null): void {
+  if (!times) {
+    row([where.padEnd(28), 'not measured: no Chromium here'])
+    return
   }
+  for (const { kind, middle, p95 } of times) {
+    row([where.padEnd(28), kind, `${middle.toFixed(2).padStart(7)} ms`, `${p95.toFixed(2).padStart(7)} ms`])
+  }
+}
+
+async function everything(words: string[]): Promise<void> {
+  const quick = words.includes('--quick')
+  const sizes = quick ? [128, 256] : [128, 256, 512, 1024, 2048]
+  const anchors = anchorsFolder()
+  const kernels = await benchKernels()
+  const machine = `${cpus()[0]?.model.trim() ?? 'unknown processor'}, ${cpus().length} cores`
+  const date = new Date().toISOString().slice(0, 10)
+  console.log(`${date}, ${machine}, Node ${process.versions.node}`)
+  const bandwidth = triadBandwidth()
+  console.log(
+    `Memory bandwidth (triad, one thread): ${(bandwidth / 1e9).toFixed(1)} GB/s. At ${bytesMoved} bytes a cell and` +
+      ` iteration no solve outside the caches can take less than ${((1e9 * bytesMoved) / bandwidth).toFixed(1)} ns for that.`,
+  )
+  const costs = linearTable(kernels, sizes, anchors)
+  const plot = optionOf(words, '--plot')
+  if (plot) {
+    const lines = kinds.map((name) => ({ name, costs: costs.get(name) ?? [] }))
+    writeFileSync(plot, costPlot(lines, `one thread, ${machine}, ${date}`))
+  }
+  console.log('\nOne well moved on 256 x 256 cells, from the heads before: median and 95th percentile')
+  const moves = quick ? 100 : 400
+  liveTable(
+    'Node',
+    kinds.map((kind) => moveOneWell(kernels.bytes, kind, 256, moves)),
+  )
+  liveTable('Chromium, web worker', await moveOneWellInBrowser(kernels.path, kinds, 256, moves))
+  console.log('\nWhole runs, model in and results out')
+  for (const time of engineTimes(kernels.one, quick ? 128 : 512, quick ? 512 : 2048)) {
+    row([
+      time.what.padEnd(40),
+      `${time.seconds.toFixed(2).padStart(8)} s`,
+      `${String(time.iterations).padStart(7)} iterations`,
+      `residual ${time.residual.toExponential(1)}`,
+      time.converged ? 'converged' : 'NOT CONVERGED',
+      `${(time.memory / 1e6).toFixed(0)} MB`,
+    ])
+  }
+  await kernels.end()
+}
+
+try {
+  const words = process.argv.slice(2)
+  const file = optionOf(words, '--problem')
+  if (file) await oneProblem(file, words)
+  else await everything(words)
+} catch (error) {
+  if (!(error instanceof Refusal)) throw error
+  console.error(error.message)
+  process.exitCode = 2
 }

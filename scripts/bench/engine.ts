@@ -1,0 +1,127 @@
+import type { Kernels } from '../../app/solver/linear/kernels.ts'
+import type { Boundary, Ground, Model, Position } from '../../app/solver/model.ts'
+import { solveModel } from '../../app/solver/solve.ts'
+import { numbersFrom } from './problems.ts'
+
+const corners: Position[] = [
+  [0, 0],
+  [1000, 0],
+  [1000, 1000],
+  [0, 1000],
+]
+
+function side(name: string, k: number, head: number): Boundary {
+  return {
+    name,
+    kind: 'fixed head',
+    line: [corners[k] as Position, corners[(k + 1) % 4] as Position],
+    head,
+  }
+}
+
+/** Conductivity that varies log-normally (sigma of ln K 2, zones of side / 32) with 20 wells between two fixed sides. */
+function varied(cells: number, changes: Partial<Model>): Model {
+  const next = numbersFrom(7)
+  const normal = () => Math.sqrt(-2 * Math.log(next())) * Math.cos(2 * Math.PI * next())
+  const materials = Array.from({ length: 64 }, (_, k) => {
+    const conductivity = 10 * Math.exp(2 * normal())
+    return {
+      name: `Sand ${k}`,
+      kx: conductivity,
+      ky: conductivity,
+      specificStorage: 1e-5,
+      specificYield: 0.2,
+    }
+  })
+  const ground: Ground[] = []
+  const width = 1000 / 32
+  for (let j = 0; j < 32; j++) {
+    for (let i = 0; i < 32; i++) {
+      const [x, y] = [i * width, j * width]
+      const polygon: Position[] = [
+        [x, y],
+        [x + width, y],
+        [x + width, y + width],
+        [x, y + width],
+      ]
+      ground.push({ material: `Sand ${Math.floor(next() * 64)}`, polygon, base: -20, top: 0 })
+    }
+  }
+  return {
+    format: 'lavant-model',
+    version: 1,
+    units: { length: 'm', time: 'd' },
+    kind: 'plan',
+    flow: 'confined',
+    extent: { x: [0, 1000], y: [0, 1000] },
+    grid: { columns: cells, rows: cells },
+    time: { kind: 'steady' },
+    materials,
+    ground,
+    boundaries: [side('West', 3, 12), side('East', 1, 10)],
+    recharge: [{ name: 'Rain', rate: 0.001 }],
+    wells: Array.from({ length: 20 }, (_, k) => ({
+      name: `W${k}`,
+      x: 50 + 900 * next(),
+      y: 50 + 900 * next(),
+      kind: 'abstraction' as const,
+      rate: 50,
+    })),
+    ...changes,
+  }
+}
+
+export interface EngineTime {
+  what: string
+  seconds: number
+  iterations: number
+  converged: boolean
+  residual: number
+  /** Largest resident memory of the process by then, in bytes. */
+  memory: number
+}
+
+function timed(what: string, model: Model, kernels: Kernels): EngineTime {
+  const started = performance.now()
+  const { result } = solveModel(model, { kernels })
+  return {
+    what,
+    seconds: (performance.now() - started) / 1000,
+    iterations: result.iterations,
+    converged: result.converged,
+    residual: result.residual,
+    memory: process.resourceUsage().maxRSS * 1024,
+  }
+}
+
+/** Whole runs through solveModel: model in, results out. `large` cells a side for the largest. */
+export function* engineTimes(kernels: Kernels, cells: number, large: number): Generator<EngineTime> {
+  const steps = 100
+  yield timed(`steady, ${cells}^2`, varied(cells, {}), kernels)
+  yield timed(
+    `${steps} steps in time, ${cells}^2`,
+    varied(cells, {
+      time: {
+        kind: 'transient',
+        initialHead: 11,
+        stages: [{ duration: steps, firstStep: 1, growth: 1, largestStep: 1 }],
+      },
+    }),
+    kernels,
+  )
+  yield timed(
+    `unconfined, ${cells}^2`,
+    varied(cells, {
+      flow: 'unconfined',
+      ground: varied(cells, {}).ground.map((piece) => ({ ...piece, top: 30 })),
+    }),
+    kernels,
+  )
+  const small = Math.min(cells, 128)
+  yield timed(`steady by over-relaxation, ${small}^2`, varied(small, { solver: { method: 'sor' } }), kernels)
+  yield timed(
+    `steady, ${large}^2 (${((large * large) / 1e6).toFixed(1)} million cells)`,
+    varied(large, {}),
+    kernels,
+  )
+}
