@@ -95,7 +95,10 @@ interface Found {
   text: string
 }
 
-/** One reported moment, with the saturated thickness of every cell: 0 where there is no ground or it is dry. */
+/**
+ * One reported moment, with the saturated thickness of every cell: 0 where there is no ground or it is dry. Nobody asks
+ * for it, and it stays 0, in confined ground without a dig or water in it.
+ */
 interface State {
   report: Report
   d: Discretised
@@ -114,7 +117,8 @@ function stateOf(report: Report): State {
   const { flow, heads } = outcome
   const thickness = new Float64Array(heads.length)
   let greatest = 0
-  for (let cell = 0; cell < heads.length; cell++) {
+  const asked = d.unconfined || holdsPolygons(d) || d.exchanges.some((exchange) => standsInAHole(d, exchange))
+  for (let cell = 0; asked && cell < heads.length; cell++) {
     if (d.active[cell] !== 1) continue
     const profile = profileAt(d, cell)
     const h = d.unconfined ? (heads[cell] as number) : topOf(profile)
@@ -433,9 +437,14 @@ function steepEdges(state: State): Found[] {
   })
 }
 
+function holdsPolygons({ model }: Discretised): boolean {
+  return (model.boundaries ?? []).some(({ kind, polygon }) => kind === 'fixed head' && polygon !== undefined)
+}
+
 /** Faces between a cell held by a polygon and a free cell of the ground, without a wall. */
 function edgesOfHeldPolygons(d: Discretised): { face: number; cell: number; from: number }[] {
   const found: { face: number; cell: number; from: number }[] = []
+  if (!holdsPolygons(d)) return found
   const { columns, rows } = d.grid
   const byPolygon = (cell: number) => {
     const by = d.fixedBy[cell] as number
