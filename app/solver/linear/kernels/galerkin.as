@@ -100,26 +100,47 @@ export function sharesOf(
   to: i32,
 ): void {
   hold(levelGiven, sizeGiven, strideGiven, halfGiven)
+  const row = strideGiven
   for (let J = from; J < to; J++) {
     const j = along ? J : 2 * J
     let s = rowAt(shares, half, J)
-    for (let i = 1; i < columns; i += 2, s += 4) {
-      const w = counted(west(i, j), east(i, j))
-      const e = counted(east(i, j), west(i, j))
-      const sum = w + e + positive(at(OWN, i, j))
-      store<f32>(s, sum > 0 ? <f32>(w / sum) : 0)
-      store<f32>(s + sharesSize, sum > 0 ? <f32>(e / sum) : 0)
+    // The cell at c is in an odd column: `back` has the even column west of it, `on` the one east.
+    let c = rowAt(level, row, j) + half
+    for (let i = 1; i < columns; i += 2, s += 4, c += 4) {
+      const back = c - half
+      const on = back + 4
+      const w = link(back, EAST) + link(back - row, NORTH_EAST) + link(c, NORTH_WEST)
+      const e = link(c, EAST) + link(c, NORTH_EAST) + link(on - row, NORTH_WEST)
+      share(s, sharesSize, w, e, link(c, OWN))
     }
     if (along || j + 1 >= rows) continue
-    s = rowAt(shares, half, J)
-    for (let i = 0; i < columns; i += 2, s += 4) {
-      const b = counted(south(i, j + 1), north(i, j + 1))
-      const a = counted(north(i, j + 1), south(i, j + 1))
-      const sum = b + a + positive(at(OWN, i, j + 1))
-      store<f32>(s + 2 * sharesSize, sum > 0 ? <f32>(b / sum) : 0)
-      store<f32>(s + 3 * sharesSize, sum > 0 ? <f32>(a / sum) : 0)
+    s = rowAt(shares, half, J) + 2 * sharesSize
+    c = rowAt(level, row, j + 1)
+    for (let i = 0; i < columns; i += 2, s += 4, c += 4) {
+      const below = c - row
+      const b = link(below, NORTH) + link(below + half - 4, NORTH_EAST) + link(below + half, NORTH_WEST)
+      const a = link(c, NORTH) + link(c, NORTH_EAST) + link(c, NORTH_WEST)
+      share(s, sharesSize, b, a, link(c, OWN))
     }
   }
+}
+
+// Number of `array` of the cell that is at c in the first one.
+// @ts-ignore: decorator
+@inline
+function link(c: usize, array: usize): f64 {
+  return load<f32>(c + array * size)
+}
+
+// @ts-ignore: decorator
+@inline
+function share(s: usize, apart: usize, low: f64, high: f64, own: f64): void {
+  const a = counted(low, high)
+  const b = counted(high, low)
+  const sum = a + b + positive(own)
+  const unit: f64 = sum > 0 ? 1 / sum : 0
+  store<f32>(s, <f32>(a * unit))
+  store<f32>(s + apart, <f32>(b * unit))
 }
 
 // 1 minus the shares of the odd column i of row j, of the even column of odd row j, and of the cell in the middle of four.
@@ -147,20 +168,30 @@ function middleRow(columns: i32, rows: i32, J: i32, shares: usize, sharesSize: u
   const j = 2 * J + 1
   let to = into
   let s = rowAt(shares, half, J)
-  for (let i = 1; i <= columns; i += 2, to += 8, s += 4) {
-    const d = i < columns && j > 0 && j < rows ? diagonal(i, j) : 0
-    const unit = d > 0 ? 1 / d : 0
-    const w = aE(i - 1, j) * unit
-    const e = i < columns ? aE(i, j) * unit : 0
-    const b = j > 0 ? aN(i, j - 1) * unit : 0
-    const a = aN(i, j) * unit
-    if (unit === 0) {
+  if (j < 0 || j >= rows) {
+    for (let i = 1; i <= columns; i += 2, to += 8) {
       store<f64>(to, 0)
       store<f64>(to + apart, 0)
       store<f64>(to + 2 * apart, 0)
       store<f64>(to + 3 * apart, 0)
-      continue
     }
+    return
+  }
+  // The cell at c is in an odd column; past the last column everything is zero.
+  let c = rowAt(level, stride, j) + half
+  for (let i = 1; i <= columns; i += 2, to += 8, s += 4, c += 4) {
+    const back = c - half
+    const below = c - stride
+    const w = link(back, EAST)
+    const e = link(c, EAST)
+    const b = link(below, NORTH)
+    const a = link(c, NORTH)
+    const sw = link(back - stride, NORTH_EAST)
+    const se = link(back + 4 - stride, NORTH_WEST)
+    const nw = link(c, NORTH_WEST)
+    const ne = link(c, NORTH_EAST)
+    const d = link(c, OWN) + w + e + b + a + sw + se + nw + ne
+    const unit: f64 = i < columns && d > 0 ? 1 / d : 0
     const wBelow: f64 = load<f32>(s)
     const eBelow: f64 = load<f32>(s + sharesSize)
     const wAbove: f64 = load<f32>(s + half)
@@ -169,10 +200,10 @@ function middleRow(columns: i32, rows: i32, J: i32, shares: usize, sharesSize: u
     const noLeft: f64 = load<f32>(s + 3 * sharesSize)
     const soRight: f64 = load<f32>(s + 2 * sharesSize + 4)
     const noRight: f64 = load<f32>(s + 3 * sharesSize + 4)
-    store<f64>(to, unit * aNE(i - 1, j - 1) + w * soLeft + b * wBelow)
-    store<f64>(to + apart, unit * aNW(i + 1, j - 1) + e * soRight + b * eBelow)
-    store<f64>(to + 2 * apart, unit * aNW(i, j) + w * noLeft + a * wAbove)
-    store<f64>(to + 3 * apart, unit * aNE(i, j) + e * noRight + a * eAbove)
+    store<f64>(to, unit * (sw + w * soLeft + b * wBelow))
+    store<f64>(to + apart, unit * (se + e * soRight + b * eBelow))
+    store<f64>(to + 2 * apart, unit * (nw + w * noLeft + a * wAbove))
+    store<f64>(to + 3 * apart, unit * (ne + e * noRight + a * eAbove))
   }
 }
 
@@ -205,101 +236,114 @@ export function galerkinBoth(
     let s = rowAt(shares, half, J)
     let pNWLeft: f64 = 0
     let pNELeft: f64 = 0
-    for (let I = 0; 2 * I < columns; I++, s += 4, m += 8, mBelow += 8) {
+    // c: the cell in its even column and row; o and l: east and west of it; up: in the row above.
+    let c = rowAt(level, stride, j)
+    for (let I = 0; 2 * I < columns; I++, s += 4, m += 8, mBelow += 8, c += 4) {
       const i = 2 * I
+      const o = c + half
+      const l = o - 4
+      const up = c + stride
+      const down = c - stride
       const w: f64 = load<f32>(s)
       const e: f64 = load<f32>(s + sharesSize)
       const eLeft: f64 = load<f32>(s + sharesSize - 4)
-      const wLeft: f64 = load<f32>(s - 4)
       const so: f64 = load<f32>(s + 2 * sharesSize)
       const no: f64 = load<f32>(s + 3 * sharesSize)
       const noBelow: f64 = load<f32>(s + 3 * sharesSize - half)
-      const soLeft: f64 = load<f32>(s + 2 * sharesSize - 4)
-      const noLeft: f64 = load<f32>(s + 3 * sharesSize - 4)
-      const soRight: f64 = load<f32>(s + 2 * sharesSize + 4)
-      const noRight: f64 = load<f32>(s + 3 * sharesSize + 4)
-      const noRightBelow: f64 = load<f32>(s + 3 * sharesSize + 4 - half)
-      const wUp: f64 = load<f32>(s + half)
-      const eUp: f64 = load<f32>(s + sharesSize + half)
-      const wLeftUp: f64 = load<f32>(s + half - 4)
-      const eLeftUp: f64 = load<f32>(s + sharesSize + half - 4)
       const pSE = load<f64>(m + apart)
       const pNW = load<f64>(m + 2 * apart)
       const pNE = load<f64>(m + 3 * apart)
       const pNEBelow = load<f64>(mBelow + 3 * apart)
-      const last = i + 1 >= columns
-      const top = j + 1 >= rows
+      const E = link(c, EAST)
+      const N = link(c, NORTH)
+      const NE = link(c, NORTH_EAST)
+      const NW = link(c, NORTH_WEST)
       // (A p_east) at the cell, above and below it, and at the odd column east of it.
       let linkEast: f64 = 0
-      if (!last) {
-        const here = aE(i, j) * e + aNE(i, j) * pSE + aNW(i + 1, j - 1) * pNEBelow
-        const above = aE(i, j + 1) * pSE + aNW(i + 1, j) * e
-        const below = j > 0 ? aE(i, j - 1) * pNEBelow + aNE(i, j - 1) * e : 0
-        const k = i + 1
-        const back = aE(i, j) + aNE(i, j - 1) + aNW(k, j)
+      if (i + 1 < columns) {
+        const soRight: f64 = load<f32>(s + 2 * sharesSize + 4)
+        const noRightBelow: f64 = load<f32>(s + 3 * sharesSize + 4 - half)
+        const oEast = link(o, EAST)
+        const oNorth = link(o, NORTH)
+        const oNorthWest = link(o, NORTH_WEST)
+        const belowNorthEast = link(down, NORTH_EAST)
+        const belowNorthWest = link(o - stride, NORTH_WEST)
+        const here = E * e + NE * pSE + belowNorthWest * pNEBelow
+        const above = link(up, EAST) * pSE + oNorthWest * e
+        const below = link(down, EAST) * pNEBelow + belowNorthEast * e
         const beside =
-          back * e +
-          aE(k, j) * (e - 1) +
-          aN(k, j) * (e - pSE) +
-          aN(k, j - 1) * (e - pNEBelow) +
-          aNE(k, j) * (e - soRight) +
-          aNW(k + 1, j - 1) * (e - noRightBelow) +
-          at(OWN, k, j) * e
+          (E + belowNorthEast + oNorthWest + link(o, OWN)) * e +
+          oEast * (e - 1) +
+          oNorth * (e - pSE) +
+          link(o - stride, NORTH) * (e - pNEBelow) +
+          link(o, NORTH_EAST) * (e - soRight) +
+          link(down + 4, NORTH_WEST) * (e - noRightBelow)
         linkEast = here + so * above + noBelow * below - w * beside
       }
       let linkNorth: f64 = 0
       let linkNorthEast: f64 = 0
       let linkNorthWest: f64 = 0
-      if (!top) {
-        const k = j + 1
-        const here = aN(i, j) * no + aNE(i, j) * pNW + aNW(i, j) * pNELeft
-        const right = last ? 0 : aN(i + 1, j) * pNW + aNW(i + 1, j) * no
-        const left = i > 0 ? aN(i - 1, j) * pNELeft + aNE(i - 1, j) * no : 0
-        const back = aN(i, j) + aNE(i - 1, j) + aNW(i + 1, j)
+      if (j + 1 < rows) {
+        const wUp: f64 = load<f32>(s + half)
+        const eUp: f64 = load<f32>(s + sharesSize + half)
+        const wLeftUp: f64 = load<f32>(s + half - 4)
+        const eLeftUp: f64 = load<f32>(s + sharesSize + half - 4)
+        const noRight: f64 = load<f32>(s + 3 * sharesSize + 4)
+        const noLeft: f64 = load<f32>(s + 3 * sharesSize - 4)
+        const oNorth = link(o, NORTH)
+        const oNorthWest = link(o, NORTH_WEST)
+        const lNorth = link(l, NORTH)
+        const lNorthEast = link(l, NORTH_EAST)
+        const upEast = link(up, EAST)
+        const upWest = link(l + stride, EAST)
+        const upNorthEast = link(up, NORTH_EAST)
+        const upNorthWest = link(up, NORTH_WEST)
+        const here = N * no + NE * pNW + NW * pNELeft
+        const right = oNorth * pNW + oNorthWest * no
+        const left = lNorth * pNELeft + lNorthEast * no
         const beside =
-          back * no +
-          aN(i, k) * (no - 1) +
-          aE(i, k) * (no - pNW) +
-          aE(i - 1, k) * (no - pNELeft) +
-          aNE(i, k) * (no - wUp) +
-          aNW(i, k) * (no - eLeftUp) +
-          at(OWN, i, k) * no
+          (N + lNorthEast + oNorthWest + link(up, OWN)) * no +
+          link(up, NORTH) * (no - 1) +
+          upEast * (no - pNW) +
+          upWest * (no - pNELeft) +
+          upNorthEast * (no - wUp) +
+          upNorthWest * (no - eLeftUp)
         linkNorth = here + w * right + eLeft * left - so * beside
-        if (!last) {
-          linkNorthEast =
-            aNE(i, j) * pNE +
-            w * (aN(i + 1, j) * pNE + aNE(i + 1, j) * noRight) +
-            so * (aE(i, k) * pNE + aNE(i, k) * eUp)
-        }
-        if (i > 0) {
-          linkNorthWest =
-            aNW(i, j) * pNWLeft +
-            eLeft * (aN(i - 1, j) * pNWLeft + aNW(i - 1, j) * noLeft) +
-            so * (aE(i - 1, k) * pNWLeft + aNW(i, k) * wLeftUp)
-        }
+        linkNorthEast =
+          NE * pNE +
+          w * (oNorth * pNE + link(o, NORTH_EAST) * noRight) +
+          so * (upEast * pNE + upNorthEast * eUp)
+        linkNorthWest =
+          NW * pNWLeft +
+          eLeft * (lNorth * pNWLeft + link(l, NORTH_WEST) * noLeft) +
+          so * (upWest * pNWLeft + upNorthWest * wLeftUp)
       }
+      const isHeld = anyHeld(c, j, rows)
       const at1 = cellAt(coarse, coarseStride, coarseHalf, I, J)
       store<f32>(at1 + EAST * coarseSize, <f32>linkEast)
       store<f32>(at1 + NORTH * coarseSize, <f32>linkNorth)
       store<f32>(at1 + NORTH_EAST * coarseSize, <f32>linkNorthEast)
       store<f32>(at1 + NORTH_WEST * coarseSize, <f32>linkNorthWest)
-      store<f32>(at1 + OWN * coarseSize, <f32>heldBoth(i, j, columns, rows, w, eLeft, so, noBelow))
+      store<f32>(at1 + OWN * coarseSize, isHeld ? <f32>heldBoth(i, j, columns, rows, w, eLeft, so, noBelow) : 0)
       pNWLeft = pNW
       pNELeft = pNE
     }
   }
 }
 
+// Is any cell held within two cells of that at c, in row j? Looks at a few more than that.
+function anyHeld(c: usize, j: i32, rows: i32): bool {
+  let any = f32x4.splat(0)
+  for (let b = j > 0 ? -2 : 0; b <= 2; b++) {
+    if (j + b >= rows) break
+    const at = c + b * stride + OWN * size
+    any = v128.or(any, v128.or(v128.load(at - 4), v128.load(at + half - 4)))
+  }
+  return v128.any_true(any)
+}
+
 // Sum of coarse cell (i, j)'s row: sum over its cells of P (A P 1), from the defects of the shares.
 function heldBoth(i: i32, j: i32, columns: i32, rows: i32, w: f64, e: f64, so: f64, no: f64): f64 {
-  let sum: f64 = 0
-  for (let b = -2; b <= 2; b++) {
-    if (j + b < 0 || j + b >= rows) continue
-    for (let a = -2; a <= 2; a++) {
-      if (i + a >= 0 && i + a < columns) sum += Math.abs(at(OWN, i + a, j + b))
-    }
-  }
-  if (sum === 0) return 0
   const hasWest = i > 0
   const hasEast = i + 1 < columns
   const hasSouth = j > 0
