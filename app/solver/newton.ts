@@ -109,7 +109,8 @@ export function balancingOf(
  * system is within the tolerance: relative to what does not balance at the start in linear flow, to all that enters
  * and leaves cells otherwise. Linear models need one step; a flat unconfined base is linear in the unknown that is
  * used and needs few. False when it did not get there. A residual that rounding keeps above the tolerance counts as
- * there if the estimated head error is below 1e-6 of the range of heads.
+ * there if the estimated head error is below 1e-6 of the range of heads; so does what rounding alone can leave where
+ * next to nothing flows, relative to what it can resolve.
  */
 export function balanceCells(run: Balancing): boolean {
   const { d, flow, state, step } = run
@@ -130,6 +131,15 @@ export function balanceCells(run: Balancing): boolean {
     }
     // Below the tolerance's reach a step no longer helps: what is left is rounding.
     idleSteps = run.residual > 0.5 * before ? idleSteps + 1 : 0
+    if (idleSteps >= 2) {
+      const rounding = roundingOf(run)
+      if (norm <= rounding) {
+        run.rightHandSide = Math.max(run.rightHandSide, rounding / run.tolerance)
+        run.residual = norm / run.rightHandSide
+        note(run, run.residual)
+        return true
+      }
+    }
     if (idleSteps >= (flow.linear ? 2 : 8)) {
       run.atRoundingFloor = run.residual < 1e-6
       if (step.method === 'sor') run.headError = largestChange(run) / step.lambda
@@ -168,6 +178,22 @@ function headToleranceOf(step: LinearStep, tolerance: number): number {
   return step.method === 'sor' ? 1e-8 : Math.max(0.3 * tolerance, 1e-13)
 }
 
+/**
+ * What rounding alone may leave of the balance, where what flows is so little that the tolerance asks for less: as
+ * ground comes to rest. Each cell's flows and stored volume are differences of numbers as large as its diagonal times
+ * its head and thickness.
+ */
+function roundingOf({ d, matrix, heads }: Balancing): number {
+  let sum = 0
+  for (let c = 0; c < heads.length; c++) {
+    if (d.active[c] !== 1 || (d.fixedBy[c] as number) >= 0) continue
+    const weight = matrix.weight[c] as number
+    const level = Math.abs(heads[c] as number) + (d.unconfined ? weight : 0)
+    sum += ((matrix.diag[c] as number) * weight * level) ** 2
+  }
+  return 8 * Number.EPSILON * Math.sqrt(sum)
+}
+
 /** Largest change of head that would balance a cell by itself. */
 function largestChange(run: Balancing): number {
   const { d, matrix, state } = run
@@ -195,7 +221,8 @@ function takeStep(run: Balancing, norm: number): void {
     for (let cell = 0; cell < heads.length; cell++) {
       const h = heads[cell] as number
       const free = d.active[cell] === 1 && (d.fixedBy[cell] as number) < 0
-      trialHeads[cell] = free ? headAfter(flow, cell, h, share * (step.y[cell] as number)) : h
+      const next = free ? headAfter(flow, cell, h, share * (step.y[cell] as number)) : h
+      trialHeads[cell] = run.storage && d.unconfined ? stoppedAtBend(flow, cell, h, next) : next
     }
     if (flow.linear) break
     evaluate(flow, trialHeads, run.rates, run.trial, null, run.storage)
@@ -203,6 +230,19 @@ function takeStep(run: Balancing, norm: number): void {
     share /= 2
   }
   heads.set(trialHeads)
+}
+
+/**
+ * A full cell stores hundreds of times less than one that has a water table, a dry one less still. A step taken by the
+ * slope on one side of such a bend overshoots on the other; so it stops just past it, and the next one knows better.
+ */
+function stoppedAtBend({ d, storage, film }: FlowModel, cell: number, h: number, next: number): number {
+  const { profile } = storage[d.profileOf[cell] as number] as FlowModel['storage'][number]
+  const base = profile.base[0] as number
+  const top = profile.top[profile.top.length - 1] as number
+  if (h >= top && next < top) return Math.max(next, top - 1e-9 * (top - base))
+  if (h < base + film && next > base + film) return Math.min(next, base + 2 * film)
+  return next
 }
 
 function headSpread({ d, heads }: Balancing): number {

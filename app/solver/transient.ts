@@ -4,6 +4,7 @@ import type { StorageTerm } from './flow'
 import { firstHeadsGiven } from './initial-heads'
 import type { Method } from './linear-step'
 import type { Model, Stage, TransientTime } from './model'
+import { ModelError } from './model-error'
 import { type Moment, momentOf, type Totals, totalsOf, weighted, weightedTotals } from './moment'
 import { type RunRecord, recordOf } from './record'
 import { checkStages } from './stages'
@@ -38,6 +39,7 @@ export function solveTransient(
 ): RunRecord {
   const time = model.time as TransientTime
   checkStages(time.stages)
+  checkSteps(time.stages)
   const whole = time.stages.reduce((sum, stage) => sum + stage.duration, 0)
   // Every stage is laid out before the first is computed, so that a mistake in the last one is found at once.
   const stages = time.stages.map((_, stage) => (stage === 0 ? firstStage : discretise(model, stage)))
@@ -104,6 +106,23 @@ export function solveTransient(
   }
   all.history = thinned(all.history)
   return all
+}
+
+/** Refuses stages that given steps would take too long to get through. */
+function checkSteps(stages: Stage[]): void {
+  let steps = 0
+  for (const [index, stage] of stages.entries()) {
+    const control = stepControl(stage)
+    for (let left = stage.duration; left > 1e-12 * stage.duration && !control.automatic; steps++) {
+      if (steps >= mostSteps) {
+        throw new ModelError(
+          `time.stages[${index}]`,
+          `its steps are too small: all stages together may take ${mostSteps}, and more lead only part of the way`,
+        )
+      }
+      left -= control.next(left)
+    }
+  }
 }
 
 function note(all: RunRecord, taken: Taken): void {
