@@ -1,6 +1,7 @@
 import fc from 'fast-check'
 import { Matrix, solve } from 'ml-matrix'
 import { describe, expect, it } from 'vitest'
+import { solverKernels } from '~/heads/kernels.server'
 import { discretise } from '~/solver/discretise'
 import { emptyMatrix, evaluate, flowModelOf } from '~/solver/flow'
 import type { Model } from '~/solver/model'
@@ -136,11 +137,19 @@ function seesACentre(model: Model): boolean {
 }
 
 describe('against a direct solve of the same balance', () => {
-  it('relaxation ends at the same heads to 1e-10 of their range', () => {
+  it.each([
+    ['relaxation ends', 'sor', false],
+    ['multigrid ends', 'multigrid', false],
+    ['multigrid in compiled kernels ends', 'multigrid', true],
+  ] as const)('%s at the same heads to 1e-10 of their range', (_, method, compiled) => {
+    const kernels = compiled ? solverKernels() : undefined
     fc.assert(
       fc.property(randomModel, (model) => {
         fc.pre(seesACentre(model))
-        const { heads, result } = solveModel(model)
+        const by = { ...model, solver: { ...model.solver, method } }
+        const { heads, result } = solveModel(by, { kernels })
+        expect(result.method).toBe(method)
+        expect(result.kernels === 'typescript').toBe(!compiled)
         const direct = directHeads(model)
         expect(result.converged).toBe(true)
         const range = Math.max(...heads) - Math.min(...heads) + 1
