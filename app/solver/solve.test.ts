@@ -824,36 +824,42 @@ describe('hostile models', () => {
     expect(result.points[0]).toMatchObject({ head: [null], why: expect.stringContaining('no cell centre') })
   })
 
-  it('a contrast of 10^12, one small fixed head, one row, one column, one cell: all get their answer', () => {
-    solved({
-      ground: [
-        { material: 'Sand', base: 0, top: 10 },
-        { material: 'Gravel', polygon: square(20, 80), base: 0, top: 10 },
-        { material: 'Clay', polygon: square(40, 60), base: 0, top: 10 },
-      ],
-    })
-    solved({
-      boundaries: [
-        {
-          name: 'Pond',
-          kind: 'fixed head',
-          line: [
-            [0, 0],
-            [0, 4],
-          ],
-          head: 12,
-        },
-      ],
-      recharge: [{ name: 'Rain', rate: 0.001 }],
-    })
-    for (const grid of [
-      { columns: 30, rows: 1 },
-      { columns: 1, rows: 30 },
-      { columns: 1, rows: 1 },
-    ]) {
-      expect(inflow(solved({ grid }), 'West')).toBeCloseTo(10, 7)
-    }
-  })
+  it.each(['sor', 'multigrid'] as const)(
+    'a contrast of 10^12, one small fixed head, one row, one column, one cell: all get their answer by %s',
+    (method) => {
+      const solver = { method }
+      solved({
+        solver,
+        ground: [
+          { material: 'Sand', base: 0, top: 10 },
+          { material: 'Gravel', polygon: square(20, 80), base: 0, top: 10 },
+          { material: 'Clay', polygon: square(40, 60), base: 0, top: 10 },
+        ],
+      })
+      solved({
+        solver,
+        boundaries: [
+          {
+            name: 'Pond',
+            kind: 'fixed head',
+            line: [
+              [0, 0],
+              [0, 4],
+            ],
+            head: 12,
+          },
+        ],
+        recharge: [{ name: 'Rain', rate: 0.001 }],
+      })
+      for (const grid of [
+        { columns: 30, rows: 1 },
+        { columns: 1, rows: 30 },
+        { columns: 1, rows: 1 },
+      ]) {
+        expect(inflow(solved({ solver, grid }), 'West')).toBeCloseTo(10, 7)
+      }
+    },
+  )
 
   it('a river that cannot give what a well takes is reported as not converged', () => {
     const { result } = solveModel(
