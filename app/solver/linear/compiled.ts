@@ -153,7 +153,7 @@ export function setUp(system: LinearSystem, machine: Machine): Plan {
     const below = Math.max(0, from - 1)
     const place = north / 8 + (from > 0 ? 0 : columns)
     machine.doubles.set(system.north.subarray(below * columns, to * columns), place)
-    plan.gaps += k.load5(single, size, stride, double, columns, rows, stage, north, own, from, to)
+    plan.gaps |= k.load5(single, size, stride, double, columns, rows, stage, north, own, from, to)
   }
   const first = plan.grids[0] as Grid
   const toFirst = [way.shares, way.sharesSize, first.at, first.size, first.stride, first.half] as const

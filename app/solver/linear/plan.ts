@@ -17,7 +17,7 @@ export interface Plan {
   unknowns: number
   work: number
   wide: number
-  /** Cells without an equation. */
+  /** Not 0: there are cells without an equation. */
   gaps: number
   /** Where rows in the order of the cells pass through: so many at a time. */
   stage: number
@@ -130,7 +130,8 @@ export function planFinest(columns: number, rows: number, along: boolean): Plan 
   plan.waits = take(plan, 64)
   plan.single = take(plan, singleArrays.count * size)
   plan.double = take(plan, 2 * doubleArrays.count * size)
-  plan.stage = take(plan, 8 * columns * (3 * staged + 1))
+  // A little room before it: the cell west of the first one.
+  plan.stage = take(plan, 8 * columns * (3 * staged + 1) + 64) + 64
   planCoarser(plan, along)
   return plan
 }

@@ -94,6 +94,60 @@ function middleDefect(c: usize, two: usize, row2: usize): f64 {
   return part(own + left + right + below + above, w + e + b + a + own)
 }
 
+// Two neighbouring numbers.
+// @ts-ignore: decorator
+@inline
+function pair(c: usize, array: usize, two: usize): v128 {
+  return v128.load(c + array * two)
+}
+
+// @ts-ignore: decorator
+@inline
+function inverse(sum: v128): v128 {
+  return v128.and(f64x2.div(f64x2.splat(1), sum), f64x2.gt(sum, f64x2.splat(0)))
+}
+
+// @ts-ignore: decorator
+@inline
+function plus(a: v128, b: v128): v128 {
+  return f64x2.add(a, b)
+}
+
+// @ts-ignore: decorator
+@inline
+function times(a: v128, b: v128): v128 {
+  return f64x2.mul(a, b)
+}
+
+// @ts-ignore: decorator
+@inline
+function eastSums(c: usize, two: usize): v128 {
+  return plus(plus(pair(c, EAST, two), pair(c + 8, WEST, two)), pair(c, BLACK_OWN, two))
+}
+
+// @ts-ignore: decorator
+@inline
+function northSums(c: usize, two: usize, row2: usize): v128 {
+  return plus(plus(pair(c, NORTH, two), pair(c + 2 * row2, SOUTH, two)), pair(c + row2, BLACK_OWN, two))
+}
+
+// Two neighbouring shares.
+// @ts-ignore: decorator
+@inline
+function sharesAt(s: usize): v128 {
+  return f64x2.promote_low_f32x4(v128.load64_zero(s))
+}
+
+// The first of two neighbours goes to the even columns, the second to the odd ones.
+// @ts-ignore: decorator
+@inline
+function storeSplit(to: usize, half: usize, values: v128): void {
+  const singles = f32x4.demote_f64x2_zero(values)
+  v128.store32_lane(to, singles, 0)
+  v128.store32_lane(to + half, singles, 1)
+}
+
+// Two coarse cells at a time; one past the last is zeros on zeros.
 export function galerkinRedBoth(
   size: usize,
   stride: usize,
@@ -110,95 +164,110 @@ export function galerkinRedBoth(
 ): void {
   const two = 2 * size
   const row2 = 2 * stride
+  const one = f64x2.splat(1)
   for (let J = from; J < to; J++) {
     let c = doubleRow(double, stride, 2 * J)
     let s = rowAt(shares, stride, J)
-    for (let I = 0; 2 * I < columns; I++, c += 8, s += 4) {
+    let into = rowAt(coarse, coarseStride, J)
+    for (let I = 0; 2 * I < columns; I += 2, c += 16, s += 8, into += 4) {
       const up = c + 2 * row2
       const down = c - 2 * row2
-      const aW = at(c, WEST, two)
-      const aE = at(c, EAST, two)
-      const aS = at(c, SOUTH, two)
-      const aN = at(c, NORTH, two)
-      const eastUnit = part(1, eastSum(c, two))
-      const westUnit = part(1, eastSum(c - 8, two))
-      const northUnit = part(1, northSum(c, two, row2))
-      const southUnit = part(1, northSum(down, two, row2))
-      // Shares that C has in the four black cells beside it, and that its neighbours have there.
-      const w = aE * eastUnit
-      const e = at(c + 8, WEST, two) * eastUnit
-      const so = aN * northUnit
-      const no = at(up, SOUTH, two) * northUnit
-      const wLeft = aW * westUnit
-      const soBelow = aS * southUnit
-      const pSE: f64 = load<f32>(s + sharesSize)
-      const pNW: f64 = load<f32>(s + 2 * sharesSize)
-      const pNE: f64 = load<f32>(s + 3 * sharesSize)
-      const pNEBelow: f64 = load<f32>(s + 3 * sharesSize - stride)
-      const pNELeft: f64 = load<f32>(s + 3 * sharesSize - 4)
-      const pNWLeft: f64 = load<f32>(s + 2 * sharesSize - 4)
       const z = c + row2
-      const zW = at(z, WEST, two)
-      const zS = at(z, SOUTH, two)
-      const leftE = at(z - 8, EAST, two)
-      const leftS = at(z - 8, SOUTH, two)
-      const belowN = at(c - row2, NORTH, two)
-      const belowW = at(c - row2, WEST, two)
-      const eastHeld = at(c, BLACK_OWN, two)
-      const northHeld = at(z, BLACK_OWN, two)
-      const atEast =
-        aE * e + at(c + 8, WEST, two) * (e - 1) + zS * (e - pSE) + belowN * (e - pNEBelow) + eastHeld * e
-      const atNorth =
-        aN * no + at(up, SOUTH, two) * (no - 1) + zW * (no - pNW) + leftE * (no - pNELeft) + northHeld * no
-      const linkEast = aE * e + so * zW * pSE + soBelow * belowW * pNEBelow - w * atEast
-      const linkNorth = aN * no + w * zS * pNW + wLeft * leftS * pNELeft - so * atNorth
-      const linkNorthEast = (w * zS + so * zW) * pNE
-      const linkNorthWest = (wLeft * leftS + so * leftE) * pNWLeft
-      let own = at(c, RED_OWN, two)
-      const westHeld = at(c - 8, BLACK_OWN, two)
-      const southHeld = at(c - row2, BLACK_OWN, two)
-      const heldBlack =
-        eastHeld +
-        northHeld +
-        westHeld +
-        southHeld +
-        at(c + row2 + 8, BLACK_OWN, two) +
-        at(c + row2 - 8, BLACK_OWN, two) +
-        at(c - row2 + 8, BLACK_OWN, two) +
-        at(c - row2 - 8, BLACK_OWN, two) +
-        at(up, BLACK_OWN, two) +
-        at(up - 8, BLACK_OWN, two) +
-        (J > 0 ? at(down, BLACK_OWN, two) + at(down - 8, BLACK_OWN, two) : 0)
-      const heldMiddle =
-        at(z, RED_OWN, two) +
-        at(z - 8, RED_OWN, two) +
-        at(c - row2, RED_OWN, two) +
-        at(c - row2 - 8, RED_OWN, two)
-      if (heldBlack + heldMiddle > 0) {
-        const vE = eastHeld * eastUnit
-        const vW = westHeld * westUnit
-        const vN = northHeld * northUnit
-        const vS = southHeld * southUnit
-        const vNE = middleDefect(c, two, row2)
-        const vNW = middleDefect(c - 8, two, row2)
-        const vSE = J > 0 ? middleDefect(down, two, row2) : 0
-        const vSW = J > 0 ? middleDefect(down - 8, two, row2) : 0
-        const belowLeftN = at(c - row2 - 8, NORTH, two)
-        const belowLeftE = at(c - row2 - 8, EAST, two)
-        own += aE * vE + aW * vW + aN * vN + aS * vS
-        own += w * (zS * (vNE - vE) + belowN * (vSE - vE))
-        own += wLeft * (leftS * (vNW - vW) + belowLeftN * (vSW - vW))
-        own += so * (zW * (vNE - vN) + leftE * (vNW - vN))
-        own += soBelow * (belowW * (vSE - vS) + belowLeftE * (vSW - vS))
-      }
-      const at1 = cellAt(coarse, coarseStride, coarseHalf, I, J)
-      store<f32>(at1 + LINK_EAST * coarseSize, <f32>linkEast)
-      store<f32>(at1 + LINK_NORTH * coarseSize, <f32>linkNorth)
-      store<f32>(at1 + NORTH_EAST * coarseSize, <f32>linkNorthEast)
-      store<f32>(at1 + NORTH_WEST * coarseSize, <f32>linkNorthWest)
-      store<f32>(at1 + OWN * coarseSize, <f32>own)
+      const aE = pair(c, EAST, two)
+      const aN = pair(c, NORTH, two)
+      const eastUnit = inverse(eastSums(c, two))
+      const northUnit = inverse(northSums(c, two, row2))
+      // Shares that C has in the four black cells beside it, and that its neighbours have there.
+      const w = times(aE, eastUnit)
+      const e = times(pair(c + 8, WEST, two), eastUnit)
+      const so = times(aN, northUnit)
+      const no = times(pair(up, SOUTH, two), northUnit)
+      const wLeft = times(pair(c, WEST, two), inverse(eastSums(c - 8, two)))
+      const soBelow = times(pair(c, SOUTH, two), inverse(northSums(down, two, row2)))
+      const pSE = sharesAt(s + sharesSize)
+      const pNW = sharesAt(s + 2 * sharesSize)
+      const pNE = sharesAt(s + 3 * sharesSize)
+      const pNEBelow = sharesAt(s + 3 * sharesSize - stride)
+      const pNELeft = sharesAt(s + 3 * sharesSize - 4)
+      const pNWLeft = sharesAt(s + 2 * sharesSize - 4)
+      const zW = pair(z, WEST, two)
+      const zS = pair(z, SOUTH, two)
+      const leftE = pair(z - 8, EAST, two)
+      const leftS = pair(z - 8, SOUTH, two)
+      const belowN = pair(c - row2, NORTH, two)
+      const belowW = pair(c - row2, WEST, two)
+      const aEe = times(aE, e)
+      const aNno = times(aN, no)
+      let atEast = plus(aEe, times(pair(c + 8, WEST, two), f64x2.sub(e, one)))
+      atEast = plus(atEast, times(zS, f64x2.sub(e, pSE)))
+      atEast = plus(atEast, times(belowN, f64x2.sub(e, pNEBelow)))
+      atEast = plus(atEast, times(pair(c, BLACK_OWN, two), e))
+      let atNorth = plus(aNno, times(pair(up, SOUTH, two), f64x2.sub(no, one)))
+      atNorth = plus(atNorth, times(zW, f64x2.sub(no, pNW)))
+      atNorth = plus(atNorth, times(leftE, f64x2.sub(no, pNELeft)))
+      atNorth = plus(atNorth, times(pair(z, BLACK_OWN, two), no))
+      const beside = plus(times(so, times(zW, pSE)), times(soBelow, times(belowW, pNEBelow)))
+      const linkEast = f64x2.sub(plus(aEe, beside), times(w, atEast))
+      const above = plus(times(w, times(zS, pNW)), times(wLeft, times(leftS, pNELeft)))
+      const linkNorth = f64x2.sub(plus(aNno, above), times(so, atNorth))
+      const linkNorthEast = times(plus(times(w, zS), times(so, zW)), pNE)
+      const linkNorthWest = times(plus(times(wLeft, leftS), times(so, leftE)), pNWLeft)
+      storeSplit(into + LINK_EAST * coarseSize, coarseHalf, linkEast)
+      storeSplit(into + LINK_NORTH * coarseSize, coarseHalf, linkNorth)
+      storeSplit(into + NORTH_EAST * coarseSize, coarseHalf, linkNorthEast)
+      storeSplit(into + NORTH_WEST * coarseSize, coarseHalf, linkNorthWest)
+      const own = pair(c, RED_OWN, two)
+      const at1 = into + OWN * coarseSize
+      storeSplit(at1, coarseHalf, own)
+      if (!anyHeld(c, two, row2, J)) continue
+      store<f32>(at1, <f32>(f64x2.extract_lane(own, 0) + heldAround(c, two, row2, J)))
+      store<f32>(at1 + coarseHalf, <f32>(f64x2.extract_lane(own, 1) + heldAround(c + 8, two, row2, J)))
     }
   }
+}
+
+// Is anything held around the two coarse cells at c, but for these themselves? Looks at no fewer than that needs.
+function anyHeld(c: usize, two: usize, row2: usize, J: i32): bool {
+  let any = v128.or(around(c, BLACK_OWN, two), around(c + row2, BLACK_OWN, two))
+  any = v128.or(any, around(c - row2, BLACK_OWN, two))
+  any = v128.or(any, around(c + 2 * row2, BLACK_OWN, two))
+  if (J > 0) any = v128.or(any, around(c - 2 * row2, BLACK_OWN, two))
+  any = v128.or(any, v128.or(around(c + row2, RED_OWN, two), around(c - row2, RED_OWN, two)))
+  return v128.any_true(any)
+}
+
+// @ts-ignore: decorator
+@inline
+function around(c: usize, array: usize, two: usize): v128 {
+  return v128.or(pair(c - 8, array, two), pair(c + 8, array, two))
+}
+
+// What the shares hold back around the coarse cell at c: its row's sum of A P 1 less its own.
+function heldAround(c: usize, two: usize, row2: usize, J: i32): f64 {
+  const down = c - 2 * row2
+  const z = c + row2
+  const aW = at(c, WEST, two)
+  const aE = at(c, EAST, two)
+  const aS = at(c, SOUTH, two)
+  const aN = at(c, NORTH, two)
+  const eastUnit = part(1, eastSum(c, two))
+  const westUnit = part(1, eastSum(c - 8, two))
+  const northUnit = part(1, northSum(c, two, row2))
+  const southUnit = part(1, northSum(down, two, row2))
+  const vE = at(c, BLACK_OWN, two) * eastUnit
+  const vW = at(c - 8, BLACK_OWN, two) * westUnit
+  const vN = at(z, BLACK_OWN, two) * northUnit
+  const vS = at(c - row2, BLACK_OWN, two) * southUnit
+  const vNE = middleDefect(c, two, row2)
+  const vNW = middleDefect(c - 8, two, row2)
+  const vSE = J > 0 ? middleDefect(down, two, row2) : 0
+  const vSW = J > 0 ? middleDefect(down - 8, two, row2) : 0
+  let held = aE * vE + aW * vW + aN * vN + aS * vS
+  held += aE * eastUnit * (at(z, SOUTH, two) * (vNE - vE) + at(c - row2, NORTH, two) * (vSE - vE))
+  held += aW * westUnit * (at(z - 8, SOUTH, two) * (vNW - vW) + at(c - row2 - 8, NORTH, two) * (vSW - vW))
+  held += aN * northUnit * (at(z, WEST, two) * (vNE - vN) + at(z - 8, EAST, two) * (vNW - vN))
+  held += aS * southUnit * (at(c - row2, WEST, two) * (vSE - vS) + at(c - row2 - 8, EAST, two) * (vSW - vS))
+  return held
 }
 
 // Only every second column left out. Of row j: links of the odd column east of coarse column I to either side, what it
@@ -254,7 +323,6 @@ export function galerkinRedAlong(
     // West of the first column there is nothing.
     let wLeft: f64 = 0
     let eLeft: f64 = 0
-    let vLeft: f64 = 0
     let wLeftUp: f64 = 0
     let eLeftUp: f64 = 0
     let upLeft: f64 = 0
@@ -301,7 +369,6 @@ export function galerkinRedAlong(
       fromLeft = right * v + e * across
       wLeft = w
       eLeft = e
-      vLeft = v
       wLeftUp = wUp
       eLeftUp = eUp
       upLeft = up
