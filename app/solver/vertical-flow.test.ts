@@ -201,6 +201,11 @@ describe('a water table in plan', () => {
     const near = [side('West', 0, 10), side('East', 300, 10)]
     expect(codes(sandOnClay({ boundaries: [...near, dig(1)] }))).toContain('steep-edge')
     expect(codes(sandOnClay({ boundaries: [...near, dig(7)] }))).toEqual([])
+    // Confined, the flow stays horizontal unless the dig drains the ground below its top.
+    const confined: Partial<Model> = { flow: 'confined', ground: [{ material: 'Sand', base: -10, top: 0 }] }
+    const high = [side('West', 0, 60), side('East', 300, 60)]
+    expect(codes(sandOnClay({ ...confined, boundaries: [...high, dig(1)] }))).toEqual([])
+    expect(codes(sandOnClay({ ...confined, boundaries: [...high, dig(-5)] }))).toEqual(['steep-edge'])
   })
 
   it('is told of the stage in which it is steepest', () => {

@@ -409,12 +409,14 @@ function wholeThickness(d: Discretised, profile: Profile): number {
 
 /**
  * Edges of held polygons and of holes where the head changes, within one saturated thickness, by a good part of that
- * thickness.
+ * thickness; in confined ground where it is held below the top, so that the ground drains there.
  */
 function steepEdges(state: State): Found[] {
   const { d, when } = state
   const worst = new Map<number, { share: number; jump: number; cell: number }>()
   const look = (boundary: number, face: number, cell: number, level: number) => {
+    // Held over its whole depth at a level above its top, confined ground has horizontal flow however steep.
+    if (!d.unconfined && level >= topOf(profileAt(d, cell))) return
     const seen = withinOneThickness(state, face, cell, level)
     if (!seen || seen.share <= Math.max(greatestEdgeJump, worst.get(boundary)?.share ?? 0)) return
     worst.set(boundary, seen)
