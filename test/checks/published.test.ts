@@ -175,7 +175,7 @@ describe('PS-06', () => {
       if (r < 50) return
       for (const direction of ['east', 'north-east']) {
         expect(Math.abs(head(solution, `${r} ${direction}`) - (expected.head[index] as number))).toBeLessThan(
-          0.01,
+          0.0035,
         )
       }
     })
@@ -212,10 +212,10 @@ describe('PS-08', () => {
       points: inputs.points_from_centre_m.map(([x, y], index) => ({ name: String(index), x, y })),
     })
     expected.head.forEach((level, index) => {
-      expect(Math.abs(head(solution, String(index)) - level)).toBeLessThan(0.0002)
+      expect(Math.abs(head(solution, String(index)) - level)).toBeLessThan(5e-5)
     })
     const mean = solution.heads.reduce((sum, level) => sum + level, 0) / solution.heads.length
-    expect(Math.abs(mean - expected.mean_head)).toBeLessThan(0.0002)
+    expect(Math.abs(mean - expected.mean_head)).toBeLessThan(5e-5)
     const side = (inputs.recharge_m_s * inputs.x_extent_m ** 2) / 4
     expect(relative(side, expected.outflow_one_x_side_m3_s)).toBeLessThan(1e-7)
     for (const name of ['West', 'East', 'South', 'North']) {
@@ -256,12 +256,12 @@ describe('PS-09', () => {
     inputs.points_xy_from_river_m.forEach(([x, y], index) => {
       if (Math.hypot(x - a, y) < 30) return
       const drawdown = expected.drawdown[index] as number
-      expect(Math.abs(-head(solution, String(index)) - drawdown)).toBeLessThanOrEqual(0.01 * drawdown + 1e-9)
+      expect(Math.abs(-head(solution, String(index)) - drawdown)).toBeLessThanOrEqual(0.005 * drawdown + 1e-9)
     })
     const face = -faceHead(solution)
-    expect(relative(face, expected.drawdown[0] as number)).toBeLessThan(0.01)
+    expect(relative(face, expected.drawdown[0] as number)).toBeLessThan(0.001)
     const river = intoModel(solution, 'River')
-    expect(relative(river, expected.river_inflow_between_minus60_and_60_m3_s)).toBeLessThan(0.01)
+    expect(relative(river, expected.river_inflow_between_minus60_and_60_m3_s)).toBeLessThan(1e-6)
   })
 })
 
@@ -288,10 +288,10 @@ describe('PS-10', () => {
     inputs.points_xy_m.forEach(([px, py], index) => {
       if (Math.hypot(px - x, py - y) < 30) return
       const drawdown = expected.drawdown[index] as number
-      expect(relative(-head(solution, String(index)), drawdown)).toBeLessThan(0.005)
+      expect(relative(-head(solution, String(index)), drawdown)).toBeLessThan(0.002)
     })
     const face = -faceHead(solution)
-    expect(relative(face, expected.drawdown[0] as number)).toBeLessThan(0.005)
+    expect(relative(face, expected.drawdown[0] as number)).toBeLessThan(5e-4)
     expect(relative(intoModel(solution, 'West'), expected.inflow_from_x0_side)).toBeLessThan(1e-6)
     expect(relative(intoModel(solution, 'East'), expected.inflow_from_xL_side)).toBeLessThan(1e-6)
   })
@@ -404,6 +404,6 @@ describe('PS-15', () => {
 
   it(`${title} (${source})`, () => {
     expect(relative(intoModel(strip(false), 'Up'), expected.flow_without_wall)).toBeLessThan(1e-7)
-    expect(relative(intoModel(strip(true), 'Up'), expected.flow_m3_s)).toBeLessThan(0.01)
+    expect(relative(intoModel(strip(true), 'Up'), expected.flow_m3_s)).toBeLessThan(2e-4)
   })
 })
