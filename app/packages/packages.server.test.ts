@@ -195,8 +195,10 @@ describe('A revision of the package', { timeout: 240_000 }, () => {
     }
     expect(text).toContain(`error ${formatNumber(balance.errorPercent[0])} % of the inflow`)
     expect(points).toHaveLength(1)
-    for (const { name, head } of points) {
-      expect(text).toMatch(new RegExp(`^ *${name} +${formatNumber(head[0], 3).replace('.', '\\.')}$`, 'm'))
+    for (const { name, head, band } of points) {
+      const [low, high] = band?.[0] ?? [Number.NaN, Number.NaN]
+      const printed = [formatNumber(head[0], 3), `${formatNumber(low, 3)} to ${formatNumber(high, 3)}`]
+      expect(text).toMatch(new RegExp(`^ *${name} +${printed.join(' +').replaceAll('.', '\\.')}$`, 'm'))
     }
     expect(text).toMatch(new RegExp(`^ *W1 +100 +100 +${formatNumber(wells[0]?.cellHead[0], 2)}`, 'm'))
     expect(text).toContain(run?.inputSha256)
