@@ -16,7 +16,6 @@ import {
   sheet,
   sideLine,
   solved,
-  solvedByBoth,
   stagesTo,
 } from './plan'
 
@@ -260,8 +259,8 @@ describe('PT-12', () => {
 
   it(`${title} (${source})`, () => {
     // The river along x = 0; the well on a corner of four cells.
-    const xEdges = growing(10, 24, 1.15, 6000)
-    const yEdges = bothWays(growing(10, 14, 1.15, 6000))
+    const xEdges = growing(10, 20, 1.2, 6000)
+    const yEdges = bothWays(growing(10, 12, 1.2, 6000))
     const extent = extentOf(xEdges, yEdges)
     const solution = solved({
       ...sheet(inputs.T_m2_s, inputs.S),
@@ -308,7 +307,7 @@ describe('PT-13', () => {
     const times = [...inputs.t_s, change].sort((a, b) => a - b)
     const rates = times.map((end) => inputs.schedule[end <= change ? 0 : 1]?.Q_m3_s as number)
     const stages = stagesTo(times, 30, eightADoubling, [change])
-    const solution = solvedByBoth(lonelyWell(inputs, 10, 9000, rates, stages, inputs.points_xy_from_well_m))
+    const solution = solved(lonelyWell(inputs, 10, 9000, rates, stages, inputs.points_xy_from_well_m))
     for (const time of inputs.t_s) {
       const values = drawdowns(solution, times.indexOf(time))
       values.forEach((value, index) => {
@@ -325,7 +324,7 @@ describe('PT-16', () => {
   it(`${title}: a circle of small cells, its level let down at once (${source})`, () => {
     // A quarter of the site round a well of radius 1, twenty cells to the radius.
     const [t, S, drawdown] = [0.001, 0.001, 2]
-    const edges = growing(1 / 20, 24, 1.12, 400)
+    const edges = growing(1 / 20, 24, 1.15, 400)
     const extent = extentOf(edges, edges)
     const [, reach] = extent.x
     const round = circle(1, 1440).filter(([x, y]) => x > 0 && y > 0)
