@@ -131,7 +131,9 @@ function multigrid(d: Discretised, kernels: Kernels | undefined): LinearStep {
     lambda: 1,
     kernels: kernels?.name ?? 'typescript',
     solve(matrix, rightHandSide, { target, headTolerance, mostIterations: most, watch }) {
-      if (step.stale || !prepared) prepared = prepareMultigrid(systemOf(matrix, columns, rows), kernels)
+      if (step.stale || !prepared) {
+        prepared = prepareMultigrid(systemOf(matrix, columns, rows), kernels, prepared ?? undefined)
+      }
       step.stale = false
       const { y } = step
       y.fill(0)
