@@ -2,7 +2,7 @@ import type { KernelExports } from './kernels'
 import { doubleArrays, type Grid, type Plan, singleArrays } from './plan'
 
 /** Working sets up to this many bytes stay in the cache that a core has to itself. */
-const cache = 200_000
+const cache = 400_000
 /** Grids of fewer cells are done by one thread while the others wait. */
 const worthSharing = 4096
 
