@@ -1,6 +1,6 @@
-import { parentPort, workerData } from 'node:worker_threads'
+import { parentPort, Worker, workerData } from 'node:worker_threads'
 import { encodeHeads } from './heads-buffer'
-import type { Kernels } from './linear/kernels'
+import { type Kernels, withHelper } from './linear/kernels'
 import type { Model } from './model'
 import { ModelError } from './model-error'
 import type { Result } from './result'
@@ -26,6 +26,28 @@ export type SolveMessage =
 
 const progressEvery = 200
 
+/** A second thread for large systems, started when there is one; it ends with this thread. */
+function withSecondThread(kernels: Kernels): Kernels {
+  let worker: Worker | null = null
+  function start(): Worker {
+    const isSource = import.meta.url.endsWith('.ts')
+    const file = new URL(isSource ? './linear/helper.thread.ts' : './helper.js', import.meta.url)
+    // A thread of Node 20 does not take over `--import tsx`: it registers tsx itself, then loads the source.
+    const code = `import('tsx/esm/api').then(({ register }) => { register(); return import(${JSON.stringify(file.href)}) })`
+    const started = isSource ? new Worker(code, { eval: true }) : new Worker(file)
+    // Without it the solve goes on alone.
+    started.on('error', (error) => console.error('The second thread of a solve:', error))
+    started.unref()
+    return started
+  }
+  return withHelper(kernels, {
+    post(task) {
+      worker ??= start()
+      worker.postMessage(task)
+    },
+  })
+}
+
 function run(
   { model, input, mostCells, cancel, kernels }: SolveRequest,
   post: (message: SolveMessage, move?: ArrayBuffer[]) => void,
@@ -36,7 +58,7 @@ function run(
     const solution = solveModel(model, {
       input,
       mostCells,
-      kernels,
+      kernels: kernels && withSecondThread(kernels),
       isCancelled: () => flag !== null && Atomics.load(flag, 0) !== 0,
       onProgress: (progress) => {
         const now = performance.now()
