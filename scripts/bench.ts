@@ -9,12 +9,18 @@
  * npm run bench -- --problem FILE [--threads 1|2] [--method multigrid|sor|typescript]
  *
  * One JSON line for one problem file: seconds (medians), iterations, true relative residual, bytes a cell.
+ *
+ * npm run bench -- --run steady|steps|unconfined|sor [--cells N]
+ *
+ * One JSON line for one whole run on N x N cells, in a process of its own.
  */
+import { execFileSync } from 'node:child_process'
 import { mkdtempSync, rmSync, writeFileSync } from 'node:fs'
 import { cpus, tmpdir } from 'node:os'
 import { join } from 'node:path'
+import { fileURLToPath } from 'node:url'
 import { anchorsFolder, type LibraryTime, timeLibrary } from './bench/anchors.ts'
-import { engineTimes } from './bench/engine.ts'
+import { type EngineTime, runs } from './bench/engine.ts'
 import { type BenchKernels, benchKernels } from './bench/kernels.ts'
 import { type LiveTime, moveOneWell } from './bench/live.ts'
 import { moveOneWellInBrowser } from './bench/live-in-browser.ts'
@@ -134,6 +140,31 @@ function liveTable(where: string, times: LiveTime[] | null): void {
   }
 }
 
+/** In a process of its own, so that the memory it takes can be told. */
+function wholeRun(name: string, cells: number): void {
+  const words = ['--import', 'tsx', fileURLToPath(import.meta.url), '--run', name, '--cells', String(cells)]
+  const time: EngineTime = JSON.parse(execFileSync(process.execPath, words, { encoding: 'utf8' }))
+  row([
+    time.what.padEnd(34),
+    `${time.seconds.toFixed(2).padStart(8)} s`,
+    `${String(time.iterations).padStart(7)} iterations`,
+    `residual ${time.residual.toExponential(1)}`,
+    time.converged ? 'converged' : 'NOT CONVERGED',
+    `${(time.memory / 1e6).toFixed(0)} MB`,
+  ])
+}
+
+/** What wholeRun starts: one JSON line. */
+async function oneRun(name: string, words: string[]): Promise<void> {
+  const run = runs[name]
+  const cells = Number(optionOf(words, '--cells') ?? 512)
+  if (!run || !(cells >= 32))
+    throw new Refusal(`--run is one of ${Object.keys(runs).join(', ')}, --cells 32 or more`)
+  const kernels = await benchKernels()
+  console.log(JSON.stringify(run(cells, kernels.one)))
+  await kernels.end()
+}
+
 async function everything(words: string[]): Promise<void> {
   const quick = words.includes('--quick')
   const sizes = quick ? [128, 256] : [128, 256, 512, 1024, 2048]
@@ -161,23 +192,21 @@ async function everything(words: string[]): Promise<void> {
   )
   liveTable('Chromium, web worker', await moveOneWellInBrowser(kernels.path, kinds, 256, moves))
   console.log('\nWhole runs, model in and results out')
-  for (const time of engineTimes(kernels.one, quick ? 128 : 512, quick ? 512 : 2048)) {
-    row([
-      time.what.padEnd(40),
-      `${time.seconds.toFixed(2).padStart(8)} s`,
-      `${String(time.iterations).padStart(7)} iterations`,
-      `residual ${time.residual.toExponential(1)}`,
-      time.converged ? 'converged' : 'NOT CONVERGED',
-      `${(time.memory / 1e6).toFixed(0)} MB`,
-    ])
-  }
+  const side = quick ? 128 : 512
+  wholeRun('steady', side)
+  wholeRun('steps', side)
+  wholeRun('unconfined', side)
+  wholeRun('sor', 128)
+  wholeRun('steady', quick ? 512 : 2048)
   await kernels.end()
 }
 
 try {
   const words = process.argv.slice(2)
   const file = optionOf(words, '--problem')
-  if (file) await oneProblem(file, words)
+  const run = optionOf(words, '--run')
+  if (run) await oneRun(run, words)
+  else if (file) await oneProblem(file, words)
   else await everything(words)
 } catch (error) {
   if (!(error instanceof Refusal)) throw error

@@ -94,34 +94,29 @@ function timed(what: string, model: Model, kernels: Kernels): EngineTime {
   }
 }
 
-/** Whole runs through solveModel: model in, results out. `large` cells a side for the largest. */
-export function* engineTimes(kernels: Kernels, cells: number, large: number): Generator<EngineTime> {
-  const steps = 100
-  yield timed(`steady, ${cells}^2`, varied(cells, {}), kernels)
-  yield timed(
-    `${steps} steps in time, ${cells}^2`,
-    varied(cells, {
-      time: {
-        kind: 'transient',
-        initialHead: 11,
-        stages: [{ duration: steps, firstStep: 1, growth: 1, largestStep: 1 }],
-      },
-    }),
-    kernels,
-  )
-  yield timed(
-    `unconfined, ${cells}^2`,
-    varied(cells, {
+/** Whole runs through solveModel, model in and results out, by name. `cells` a side. */
+export const runs: Record<string, (cells: number, kernels: Kernels) => EngineTime> = {
+  steady: (cells, kernels) => timed(`steady, ${cells}^2`, varied(cells, {}), kernels),
+  steps: (cells, kernels) =>
+    timed(
+      `100 steps in time, ${cells}^2`,
+      varied(cells, {
+        time: {
+          kind: 'transient',
+          initialHead: 11,
+          stages: [{ duration: 100, firstStep: 1, growth: 1, largestStep: 1 }],
+        },
+      }),
+      kernels,
+    ),
+  unconfined: (cells, kernels) => {
+    const { ground } = varied(cells, {})
+    const model = varied(cells, {
       flow: 'unconfined',
-      ground: varied(cells, {}).ground.map((piece) => ({ ...piece, top: 30 })),
-    }),
-    kernels,
-  )
-  const small = Math.min(cells, 128)
-  yield timed(`steady by over-relaxation, ${small}^2`, varied(small, { solver: { method: 'sor' } }), kernels)
-  yield timed(
-    `steady, ${large}^2 (${((large * large) / 1e6).toFixed(1)} million cells)`,
-    varied(large, {}),
-    kernels,
-  )
+      ground: ground.map((piece) => ({ ...piece, top: 30 })),
+    })
+    return timed(`unconfined, ${cells}^2`, model, kernels)
+  },
+  sor: (cells, kernels) =>
+    timed(`steady by over-relaxation, ${cells}^2`, varied(cells, { solver: { method: 'sor' } }), kernels),
 }

@@ -42,7 +42,7 @@ export function relativeResidual({ columns, east, north, own, b }: Problem, x: F
   return norm(r) / norm(b)
 }
 
-/** Times one problem: the first times are thrown away, until V8 has compiled the kernels. */
+/** Times one problem; the first times, until V8 has compiled the kernels as well as it can, are thrown away. */
 export function measure(problem: Problem, kernels: Kernels | undefined, repeats: number): Measured {
   const { b } = problem
   const x = new Float64Array(b.length)
@@ -53,7 +53,8 @@ export function measure(problem: Problem, kernels: Kernels | undefined, repeats:
   let iterations = 0
   let ended = ''
   const target = tolerance * norm(b)
-  for (let k = -2; k < repeats; k++) {
+  const warmUp = b.length < 100_000 ? 20 : 2
+  for (let k = -warmUp; k < repeats; k++) {
     x.fill(0)
     const started = performance.now()
     prepared = prepareMultigrid(system, kernels, prepared)
