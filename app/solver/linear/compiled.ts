@@ -3,7 +3,7 @@ import { cycleOf, type Part } from './cycle'
 import { type KernelExports, type Kernels, mostPages } from './kernels'
 import { doubleArrays, type Grid, nineArrays, type Plan, planCoarser, planFinest, planInverse } from './plan'
 import type { LinearOptions, LinearOutcome, LinearSystem, Prepared } from './system'
-import { Alone, countersOf, decideTogether, isTaken, meetings, offerTurn } from './team'
+import { Alone, asked, countersOf, decideTogether, isTaken, mayAsk, meetings, offerTurn } from './team'
 
 /** A grid of at most so many cells is solved directly. */
 const coarsest = 64
@@ -304,20 +304,23 @@ function prepareRows(system: LinearSystem, kernels: Kernels, before: Prepared | 
 
   /** With the helper; null when it does not come, or is lost on the way. */
   function solveTogether(b: Float64Array, x: Float64Array, options: LinearOptions): LinearOutcome | null {
-    if (!helper || !machine.shared) return null
+    if (!helper || !machine.shared || !mayAsk(helper)) return null
     const counters = countersOf(machine.memory, plan)
     turn++
     if (!offerTurn(counters, turn)) return null
     const { target, mostIterations } = options
     helper.post({ module: kernels.shared, memory: machine.memory, plan, target, mostIterations, turn })
     layOut(x, redX, blackOwn)
-    if (!isTaken(counters, turn)) return null
+    if (!isTaken(counters, turn)) {
+      asked(helper, false)
+      return null
+    }
     const started = performance.now()
     const meeting = meetings(counters, 0)
     const part: Part = { index: 0, count: 2, meet: meeting.meet }
     let parted = false
     try {
-      return conjugateGradients(cycleOf(plan, k, doubles, part), options, {
+      const outcome = conjugateGradients(cycleOf(plan, k, doubles, part), options, {
         layOut() {
           layOut(b, q, blackOwn)
           if (!parted) meeting.meet()
@@ -333,9 +336,12 @@ function prepareRows(system: LinearSystem, kernels: Kernels, before: Prepared | 
         },
         alone: () => cycle,
       })
+      asked(helper, !parted)
+      return outcome
     } catch (error) {
       if (!(error instanceof Alone)) throw error
       leaveMemory()
+      asked(helper, false)
       return null
     }
   }

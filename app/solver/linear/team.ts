@@ -94,6 +94,32 @@ export function isTaken(counters: Int32Array, turn: number): boolean {
   return Atomics.compareExchange(counters, offer, turn, 0) === -turn
 }
 
+/** How long a helper that kept others waiting is left alone: so many solves, twice as many every time, up to a bound. */
+interface Rest {
+  solves: number
+  next: number
+}
+const longestRest = 128
+const rests = new WeakMap<Helper, Rest>()
+
+/** Is it worth asking this helper now? Counts the solves it is left alone for. */
+export function mayAsk(helper: Helper): boolean {
+  const rest = rests.get(helper)
+  if (!rest || rest.solves === 0) return true
+  rest.solves--
+  return false
+}
+
+/** What came of asking. */
+export function asked(helper: Helper, wasHelp: boolean): void {
+  if (wasHelp) {
+    rests.delete(helper)
+    return
+  }
+  const next = rests.get(helper)?.next ?? 1
+  rests.set(helper, { solves: next, next: Math.min(longestRest, 2 * next) })
+}
+
 const decisions: Decision[] = ['go on', 'cancel', 'part']
 
 /** The first thread says how both go on. */
