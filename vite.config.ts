@@ -12,7 +12,7 @@ const threadSources = Object.entries({
   solve: 'app/solver/solve.thread.ts',
   import: 'app/readings/import.thread.ts',
   draw: 'app/packages/draw.thread.ts',
-  helper: 'app/solver/linear/helper.thread.ts',
+  second: 'app/solver/linear/second.thread.ts',
 }).filter(([, source]) => existsSync(source))
 
 export default defineConfig({

@@ -1,6 +1,6 @@
 import { parentPort, Worker, workerData } from 'node:worker_threads'
 import { encodeHeads } from './heads-buffer'
-import { type Kernels, withHelper } from './linear/kernels'
+import { type Kernels, withTwoThreads } from './linear/kernels'
 import type { Model } from './model'
 import { ModelError } from './model-error'
 import type { Result } from './result'
@@ -31,7 +31,7 @@ function withSecondThread(kernels: Kernels): Kernels {
   let worker: Worker | null = null
   function start(): Worker {
     const isSource = import.meta.url.endsWith('.ts')
-    const file = new URL(isSource ? './linear/helper.thread.ts' : './helper.js', import.meta.url)
+    const file = new URL(isSource ? './linear/second.thread.ts' : './second.js', import.meta.url)
     // A thread of Node 20 does not take over `--import tsx`: it registers tsx itself, then loads the source.
     const code = `import('tsx/esm/api').then(({ register }) => { register(); return import(${JSON.stringify(file.href)}) })`
     const started = isSource ? new Worker(code, { eval: true }) : new Worker(file)
@@ -40,7 +40,7 @@ function withSecondThread(kernels: Kernels): Kernels {
     started.unref()
     return started
   }
-  return withHelper(kernels, {
+  return withTwoThreads(kernels, {
     post(task) {
       worker ??= start()
       worker.postMessage(task)

@@ -2,7 +2,7 @@ import { readFileSync } from 'node:fs'
 import { dirname, join } from 'node:path'
 import { fileURLToPath, pathToFileURL } from 'node:url'
 import { Worker } from 'node:worker_threads'
-import { instantiateKernels, type Kernels, withHelper } from '../../app/solver/linear/kernels.ts'
+import { instantiateKernels, type Kernels, withTwoThreads } from '../../app/solver/linear/kernels.ts'
 import { compileKernels } from '../compile-kernels.ts'
 
 const root = dirname(dirname(dirname(fileURLToPath(import.meta.url))))
@@ -21,7 +21,7 @@ export async function benchKernels(): Promise<BenchKernels> {
   const path = join(root, '.data/kernels/solver.wasm')
   const bytes = new Uint8Array(readFileSync(path))
   const one = instantiateKernels(bytes)
-  const source = pathToFileURL(join(root, 'app/solver/linear/helper.thread.ts')).href
+  const source = pathToFileURL(join(root, 'app/solver/linear/second.thread.ts')).href
   const code = `import('tsx/esm/api').then(({ register }) => { register(); return import(${JSON.stringify(source)}) })
     .then(() => require('node:worker_threads').parentPort.postMessage('ready'))`
   const worker = new Worker(code, { eval: true })
@@ -29,7 +29,7 @@ export async function benchKernels(): Promise<BenchKernels> {
     worker.once('message', () => resolve())
     worker.once('error', reject)
   })
-  const two = withHelper(one, { post: (task) => worker.postMessage(task) })
+  const two = withTwoThreads(one, { post: (task) => worker.postMessage(task) })
   return {
     bytes,
     path,

@@ -237,8 +237,8 @@ const machines = new WeakMap<Prepared, Machine>()
 
 function prepareRows(system: LinearSystem, kernels: Kernels, before: Prepared | undefined): Prepared {
   const { columns, rows } = system
-  const { helper } = columns * rows >= worthTwoThreads ? kernels : { helper: undefined }
-  let machine = (before && machines.get(before)) ?? machineOf(kernels, helper !== undefined)
+  const { second } = columns * rows >= worthTwoThreads ? kernels : { second: undefined }
+  let machine = (before && machines.get(before)) ?? machineOf(kernels, second !== undefined)
   if (before) machines.delete(before)
   const plan = setUp(system, machine)
   const { single, double, size, stride, stage, staged } = plan
@@ -302,17 +302,17 @@ function prepareRows(system: LinearSystem, kernels: Kernels, before: Prepared | 
     })
   }
 
-  /** With the helper; null when it does not come, or is lost on the way. */
+  /** With the second thread; null when it does not come, or is lost on the way. */
   function solveTogether(b: Float64Array, x: Float64Array, options: LinearOptions): LinearOutcome | null {
-    if (!helper || !machine.shared || !mayAsk(helper)) return null
+    if (!second || !machine.shared || !mayAsk(second)) return null
     const counters = countersOf(machine.memory, plan)
     turn++
     if (!offerTurn(counters, turn)) return null
     const { target, mostIterations } = options
-    helper.post({ module: kernels.shared, memory: machine.memory, plan, target, mostIterations, turn })
+    second.post({ module: kernels.shared, memory: machine.memory, plan, target, mostIterations, turn })
     layOut(x, redX, blackOwn)
     if (!isTaken(counters, turn)) {
-      asked(helper, false)
+      asked(second, false)
       return null
     }
     const started = performance.now()
@@ -336,12 +336,12 @@ function prepareRows(system: LinearSystem, kernels: Kernels, before: Prepared | 
         },
         alone: () => cycle,
       })
-      asked(helper, !parted)
+      asked(second, !parted)
       return outcome
     } catch (error) {
       if (!(error instanceof Alone)) throw error
       leaveMemory()
-      asked(helper, false)
+      asked(second, false)
       return null
     }
   }

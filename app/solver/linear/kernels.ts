@@ -1,4 +1,4 @@
-import type { Helper } from './team'
+import type { SecondThread } from './team'
 
 /** What the compiled module exports (kernels/): addresses and sizes in bytes, rows from..to - 1. */
 export interface KernelExports {
@@ -253,7 +253,7 @@ export const mostPages = 65536
 
 /**
  * The arithmetic of the fast method, compiled. Without it its TypeScript twin serves. It can be sent to a worker, which
- * then has nothing to compile, but for the helper.
+ * then has nothing to compile, but for the second thread.
  */
 export interface Kernels {
   /** What a run reports. */
@@ -261,8 +261,8 @@ export interface Kernels {
   module: WebAssembly.Module
   /** The same for memory that threads share. */
   shared: WebAssembly.Module
-  /** A second thread (helper.thread.ts), if there is one. */
-  helper?: Helper
+  /** A second thread (second.thread.ts), if there is one. */
+  second?: SecondThread
 }
 
 /**
@@ -278,8 +278,8 @@ export function instantiateKernels(bytes: Uint8Array<ArrayBuffer>): Kernels {
 }
 
 /** The same kernels with a second thread to share large systems with. */
-export function withHelper({ module, shared }: Kernels, helper: Helper): Kernels {
-  return { name: 'wasm-simd, 2 threads', module, shared, helper }
+export function withTwoThreads({ module, shared }: Kernels, second: SecondThread): Kernels {
+  return { name: 'wasm-simd, 2 threads', module, shared, second }
 }
 
 /**

@@ -3,10 +3,10 @@ import { join } from 'node:path'
 import { pathToFileURL } from 'node:url'
 import { Worker } from 'node:worker_threads'
 import { afterEach, describe, expect, it } from 'vitest'
-import { instantiateKernels, type Kernels, withHelper } from './kernels'
+import { instantiateKernels, type Kernels, withTwoThreads } from './kernels'
 import { prepareMultigrid } from './multigrid'
 import type { LinearSystem } from './system'
-import type { HelperTask } from './team'
+import type { SharedTask } from './team'
 
 const one = instantiateKernels(new Uint8Array(readFileSync(join(process.cwd(), '.data/kernels/solver.wasm'))))
 const n = 200
@@ -33,7 +33,7 @@ afterEach(async () => {
 })
 
 async function started(): Promise<Worker> {
-  const source = JSON.stringify(pathToFileURL(join(process.cwd(), 'app/solver/linear/helper.thread.ts')).href)
+  const source = JSON.stringify(pathToFileURL(join(process.cwd(), 'app/solver/linear/second.thread.ts')).href)
   const code = `import('tsx/esm/api').then(({ register }) => { register(); return import(${source}) })
     .then(() => require('node:worker_threads').parentPort.postMessage('ready'))`
   const worker = new Worker(code, { eval: true })
@@ -77,7 +77,7 @@ describe('two threads on one system', () => {
   it('find the heads that one thread finds', async () => {
     const worker = await started()
     let tasks = 0
-    const two = withHelper(one, {
+    const two = withTwoThreads(one, {
       post(task) {
         tasks++
         worker.postMessage(task)
@@ -88,15 +88,15 @@ describe('two threads on one system', () => {
   })
 
   it('are one when the second never comes', () => {
-    const { heads, milliseconds } = solved(withHelper(one, { post: () => {} }), 1)
+    const { heads, milliseconds } = solved(withTwoThreads(one, { post: () => {} }), 1)
     expect(apart(heads, alone)).toBe(0)
     expect(milliseconds).toBeLessThan(30_000)
   })
 
   it('go on as one when the second is lost in the middle of a solve', async () => {
     const worker = await started()
-    let told: HelperTask | null = null
-    const kernels = withHelper(one, {
+    let told: SharedTask | null = null
+    const kernels = withTwoThreads(one, {
       post(task) {
         told = task
         worker.postMessage(task)
@@ -114,7 +114,7 @@ describe('two threads on one system', () => {
 
   it('leave small systems to one', () => {
     let tasks = 0
-    const kernels = withHelper(one, { post: () => tasks++ })
+    const kernels = withTwoThreads(one, { post: () => tasks++ })
     const system: LinearSystem = {
       columns: 20,
       rows: 1,

@@ -10,11 +10,11 @@ import type { Plan } from './plan'
  */
 
 /** A thread that waits for tasks; whoever makes Kernels for two threads starts it. */
-export interface Helper {
-  post: (task: HelperTask) => void
+export interface SecondThread {
+  post: (task: SharedTask) => void
 }
 
-export interface HelperTask {
+export interface SharedTask {
   module: WebAssembly.Module
   memory: WebAssembly.Memory
   plan: Plan
@@ -79,7 +79,7 @@ export function meetings(counters: Int32Array, index: number): Meeting {
   return meeting
 }
 
-/** Offers a solve to the helper; false while it is not through with the last one. */
+/** Offers a solve to the second thread; false while it is not through with the last one. */
 export function offerTurn(counters: Int32Array, turn: number): boolean {
   if (Atomics.load(counters, offer) !== 0) return false
   for (let place = decided; place < places; place++) Atomics.store(counters, place, 0)
@@ -87,37 +87,37 @@ export function offerTurn(counters: Int32Array, turn: number): boolean {
   return true
 }
 
-/** Has the helper taken the offer? Waits a millisecond or two; after false it never will. */
+/** Has the second thread taken the offer? Waits a millisecond or two; after false it never will. */
 export function isTaken(counters: Int32Array, turn: number): boolean {
   const end = performance.now() + 2
   while (performance.now() < end) if (Atomics.load(counters, offer) === -turn) return true
   return Atomics.compareExchange(counters, offer, turn, 0) === -turn
 }
 
-/** How long a helper that kept others waiting is left alone: so many solves, twice as many every time, up to a bound. */
+/** How long a second thread that kept others waiting is left alone: so many solves, twice as many every time, up to a bound. */
 interface Rest {
   solves: number
   next: number
 }
 const longestRest = 128
-const rests = new WeakMap<Helper, Rest>()
+const rests = new WeakMap<SecondThread, Rest>()
 
-/** Is it worth asking this helper now? Counts the solves it is left alone for. */
-export function mayAsk(helper: Helper): boolean {
-  const rest = rests.get(helper)
+/** Is it worth asking this thread now? Counts the solves it is left alone for. */
+export function mayAsk(second: SecondThread): boolean {
+  const rest = rests.get(second)
   if (!rest || rest.solves === 0) return true
   rest.solves--
   return false
 }
 
 /** What came of asking. */
-export function asked(helper: Helper, wasHelp: boolean): void {
+export function asked(second: SecondThread, wasHelp: boolean): void {
   if (wasHelp) {
-    rests.delete(helper)
+    rests.delete(second)
     return
   }
-  const next = rests.get(helper)?.next ?? 1
-  rests.set(helper, { solves: next, next: Math.min(longestRest, 2 * next) })
+  const next = rests.get(second)?.next ?? 1
+  rests.set(second, { solves: next, next: Math.min(longestRest, 2 * next) })
 }
 
 const decisions: Decision[] = ['go on', 'cancel', 'part']
@@ -139,8 +139,8 @@ function kernelsOn(module: WebAssembly.Module, memory: WebAssembly.Memory): Kern
   return kernels
 }
 
-/** What the helper does with a task: its part of the solve, or nothing when the offer is void. */
-export function help({ module, memory, plan, target, mostIterations, turn }: HelperTask): void {
+/** What the second thread does with a task: its part of the solve, or nothing when the offer is void. */
+export function help({ module, memory, plan, target, mostIterations, turn }: SharedTask): void {
   const counters = countersOf(memory, plan)
   if (Atomics.compareExchange(counters, offer, turn, -turn) !== turn) return
   const { meet } = meetings(counters, 1)
