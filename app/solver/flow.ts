@@ -73,6 +73,8 @@ export interface FlowModel {
   film: number
   /** What profiles store, in transient models; empty in steady ones. */
   storage: ProfileStorage[]
+  /** Levels at which what a cell exchanges bends: those of drains, and those below which rivers draw no more. */
+  bends: { cell: number; level: number }[]
   /** Does a change of head change every flow in proportion? Then one step solves it. */
   linear: boolean
 }
@@ -90,11 +92,15 @@ export function flowModelOf(d: Discretised): FlowModel {
   // With a free surface storage is a matter of saturation: section-balance.ts.
   const stores = d.model.time.kind === 'transient' && d.model.flow !== 'free surface'
   const storage = stores ? storageOf(d) : []
+  const bends = d.exchanges.flatMap(({ kind, cell, head, floor }) => {
+    const level = kind === 'drain' || kind === 'seepage' ? head : floor
+    return level > Number.NEGATIVE_INFINITY && kind !== 'fixed' ? [{ cell, level }] : []
+  })
   if (!d.unconfined) {
     const level = (profile: Profile) => profile.top[profile.top.length - 1] as number
     const fullX = d.profiles.map((profile) => transmissivityAt(profile, profile.kx, level(profile)))
     const fullY = d.profiles.map((profile) => transmissivityAt(profile, profile.ky, level(profile)))
-    return { d, flows: [], fullX, fullY, film: 0, storage, linear }
+    return { d, flows: [], fullX, fullY, film: 0, storage, bends, linear }
   }
   let lowest = Number.POSITIVE_INFINITY
   for (const profile of d.profiles) lowest = Math.min(lowest, profile.base[0] as number)
@@ -109,7 +115,7 @@ export function flowModelOf(d: Discretised): FlowModel {
     kx: profile.kx[0] as number,
     ky: profile.ky[0] as number,
   }))
-  return { d, flows, fullX: [], fullY: [], film, storage, linear }
+  return { d, flows, fullX: [], fullY: [], film, storage, bends, linear }
 }
 
 /** A matrix of zeros for the model's cells; symmetric where confined, where opposite faces share their coefficient. */

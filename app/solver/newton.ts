@@ -225,6 +225,8 @@ function takeStep(run: Balancing, norm: number): void {
       trialHeads[cell] = run.storage && d.unconfined ? stoppedAtBend(flow, cell, h, next) : next
     }
     if (flow.linear) break
+    // In confined flow what bends does so between straight lines, where whole steps are known to arrive.
+    if (d.unconfined) stopAtLevels(flow, heads, trialHeads)
     evaluate(flow, trialHeads, run.rates, run.trial, null, run.storage)
     if (normOfFree(d, run.trial.imbalance) < (1 - 0.1 * share) * norm) break
     share /= 2
@@ -243,6 +245,22 @@ function stoppedAtBend({ d, storage, film }: FlowModel, cell: number, h: number,
   if (h >= top && next < top) return Math.max(next, top - 1e-9 * (top - base))
   if (h < base + film && next > base + film) return Math.min(next, base + 2 * film)
   return next
+}
+
+/**
+ * Beside a drain's level, or the level below which a river no longer draws more, the flow bends, and a step that knows
+ * one side only overshoots. A head that crosses such a level stops just above it, where the flow still answers to the
+ * head; one that stood there already goes on.
+ */
+function stopAtLevels({ d, bends }: FlowModel, heads: Float64Array, trialHeads: Float64Array): void {
+  for (const { cell, level } of bends) {
+    if ((d.fixedBy[cell] as number) >= 0) continue
+    const hair = 1e-9 * Math.max(d.headRange, Math.abs(level), 1e-3)
+    const h = heads[cell] as number
+    const next = trialHeads[cell] as number
+    const crosses = (h < level && next > level) || (h > level + 2 * hair && next < level)
+    if (crosses) trialHeads[cell] = level + hair
+  }
 }
 
 function headSpread({ d, heads }: Balancing): number {

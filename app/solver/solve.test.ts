@@ -646,6 +646,71 @@ describe('results', () => {
   })
 })
 
+describe('drains that hold the water table low', () => {
+  it.each([
+    [50, 0.1],
+    [1000, 2],
+    [10_000, 0.01],
+  ])('a drain of conductance %d at level %d is met by both methods', (conductance, level) => {
+    const solutions = (['sor', 'multigrid'] as const).map((method) =>
+      solveModel(
+        site({
+          flow: 'unconfined',
+          extent: { x: [0, 300], y: [0, 300] },
+          grid: { columns: 60, rows: 60 },
+          materials: [{ name: 'Sand', kx: 10, ky: 10 }],
+          ground: [{ material: 'Sand', base: 0 }],
+          boundaries: [
+            {
+              name: 'West',
+              kind: 'fixed head',
+              line: [
+                [0, 0],
+                [0, 300],
+              ],
+              head: 10,
+            },
+            {
+              name: 'East',
+              kind: 'fixed head',
+              line: [
+                [300, 0],
+                [300, 300],
+              ],
+              head: 10,
+            },
+            {
+              name: 'Drain',
+              kind: 'drain',
+              line: [
+                [150, 50],
+                [150, 250],
+              ],
+              level,
+              conductance,
+            },
+          ],
+          points: [{ name: 'P', x: 150, y: 150 }],
+          wells: [],
+          recharge: [],
+          walls: [],
+          lines: [],
+          rings: [],
+          solver: { method },
+        }),
+      ),
+    )
+    const [bySor, byMultigrid] = solutions.map(({ result }) => {
+      expect(result.converged).toBe(true)
+      return result.points[0]?.head[0] as number
+    }) as [number, number]
+    expect(bySor).toBeGreaterThan(level)
+    // What flows to the drain's middle comes from both sides: K h^2 / L a unit of its length (Dupuit 1863), near enough.
+    expect(bySor - level).toBeLessThan((1.2 * 10 * 100) / 150 / conductance + 1e-6)
+    expect(Math.abs(bySor - byMultigrid)).toBeLessThan(1e-8)
+  })
+})
+
 describe('hostile models', () => {
   it.each<[string, Partial<Model>, string, RegExp]>([
     ['no boundary', { boundaries: [] }, 'boundaries', /fixed head/],
