@@ -125,7 +125,8 @@ function someWells(
   apart: number,
 ): Well[] {
   const wells: Well[] = []
-  while (wells.length < count) {
+  // Where there is no room for one more, fewer will do.
+  for (let tries = 0; wells.length < count && tries < 300; tries++) {
     const [u, v] = [chance.between(0.2, 0.8), chance.between(0.2, 0.8)]
     const at = { x: x[0] + u * (x[1] - x[0]), y: y[0] + v * (y[1] - y[0]) }
     if (wells.some((well) => Math.hypot(well.x - at.x, well.y - at.y) < apart)) continue
