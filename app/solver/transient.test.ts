@@ -549,13 +549,13 @@ describe('hostile models through time', () => {
     ],
     [
       'heads for 99 of 100 cells at the start',
-      { time: { initialHead: new Array(99).fill(11) } },
+      { time: { initialHead: Array.from({ length: 99 }, () => 11) } },
       'time.initialHead',
       /99 values for 100 cells/,
     ],
     [
       'no head in one cell of the ground at the start',
-      { time: { initialHead: [...new Array(99).fill(11), null] } },
+      { time: { initialHead: [...Array.from({ length: 99 }, () => 11), null] } },
       'time.initialHead[99]',
       /null where there is ground/,
     ],
@@ -593,7 +593,12 @@ describe('hostile models through time', () => {
 
   it('a site where nothing happens stays as it is', () => {
     const { heads, result } = solved(site({ boundaries: [], time: { stages: [day, { duration: 1e6 }] } }))
-    expect(largestDifference(heads, new Array(100).fill(11.5))).toBe(0)
+    expect(
+      largestDifference(
+        heads,
+        Float64Array.from({ length: 100 }, () => 11.5),
+      ),
+    ).toBe(0)
     expect(result.balance.errorPercent).toEqual([0, 0])
   })
 

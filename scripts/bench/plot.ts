@@ -30,23 +30,37 @@ export function costPlot(lines: { name: string; costs: Cost[] }[], caption: stri
   for (const n of sizes) {
     parts.push(`<text x="${x(n).toFixed(1)}" y="${height - bottom + 18}" text-anchor="middle">${n}²</text>`)
   }
+  const names = apart(
+    lines.map(({ name, costs }) => ({ name, at: y(perCell(costs[costs.length - 1] as Cost)) + 4 })),
+  )
   lines.forEach(({ name, costs }, k) => {
     const colour = colours[k % colours.length]
     const points = costs.map((cost) => `${x(cost.n).toFixed(1)},${y(perCell(cost)).toFixed(1)}`)
-    const end = costs[costs.length - 1] as Cost
     parts.push(
       `<polyline points="${points.join(' ')}" fill="none" stroke="${colour}" stroke-width="2" />`,
       ...points.map((point) => {
         const [cx, cy] = point.split(',')
         return `<circle cx="${cx}" cy="${cy}" r="3" fill="${colour}" />`
       }),
-      `<text x="${width - right + 8}" y="${(y(perCell(end)) + 4).toFixed(1)}" fill="${colour}">${name}</text>`,
+      `<text x="${width - right + 8}" y="${names.get(name)?.toFixed(1)}" fill="${colour}">${name}</text>`,
     )
   })
   return `<svg xmlns="http://www.w3.org/2000/svg" viewBox="0 0 ${width} ${height}" font-family="sans-serif" font-size="12" fill="#777">
+<title>Cost per cell of a linear solve against the number of cells</title>
 <text x="${left - 48}" y="20">nanoseconds a cell, set-up and solve</text>
 ${parts.join('\n')}
 <text x="${left}" y="${height - 14}">cells; ${caption}</text>
 </svg>
 `
+}
+
+/** Places for names along a side, from the top down, at least a line apart. */
+function apart(labels: { name: string; at: number }[]): Map<string, number> {
+  let last = Number.NEGATIVE_INFINITY
+  const places = new Map<string, number>()
+  for (const { name, at } of labels.toSorted((a, b) => a.at - b.at)) {
+    last = Math.max(at, last + 14)
+    places.set(name, last)
+  }
+  return places
 }
