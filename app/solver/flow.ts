@@ -73,6 +73,10 @@ export interface FlowModel {
   film: number
   /** What profiles store, in transient models; empty in steady ones. */
   storage: ProfileStorage[]
+  /** Area of every cell, in transient models; empty in steady ones. */
+  areas: Float64Array
+  /** Volume stored by every cell for a unit of head, in confined transient models; else null. */
+  capacities: Float64Array | null
   /** Levels at which what a cell exchanges bends: those of drains, and those below which rivers draw no more. */
   bends: { cell: number; level: number }[]
   /** Does a change of head change every flow in proportion? Then one step solves it. */
@@ -92,6 +96,8 @@ export function flowModelOf(d: Discretised): FlowModel {
   // With a free surface storage is a matter of saturation: section-balance.ts.
   const stores = d.model.time.kind === 'transient' && d.model.flow !== 'free surface'
   const storage = stores ? storageOf(d) : []
+  const areas = stores ? areasOf(d) : new Float64Array(0)
+  const capacities = stores && !d.unconfined ? capacitiesOf(d, areas, storage) : null
   const bends = d.exchanges.flatMap(({ kind, cell, head, floor }) => {
     const level = kind === 'drain' || kind === 'seepage' ? head : floor
     return level > Number.NEGATIVE_INFINITY && kind !== 'fixed' ? [{ cell, level }] : []
@@ -100,7 +106,7 @@ export function flowModelOf(d: Discretised): FlowModel {
     const level = (profile: Profile) => profile.top[profile.top.length - 1] as number
     const fullX = d.profiles.map((profile) => transmissivityAt(profile, profile.kx, level(profile)))
     const fullY = d.profiles.map((profile) => transmissivityAt(profile, profile.ky, level(profile)))
-    return { d, flows: [], fullX, fullY, film: 0, storage, bends, linear }
+    return { d, flows: [], fullX, fullY, film: 0, storage, areas, capacities, bends, linear }
   }
   let lowest = Number.POSITIVE_INFINITY
   for (const profile of d.profiles) lowest = Math.min(lowest, profile.base[0] as number)
@@ -115,7 +121,28 @@ export function flowModelOf(d: Discretised): FlowModel {
     kx: profile.kx[0] as number,
     ky: profile.ky[0] as number,
   }))
-  return { d, flows, fullX: [], fullY: [], film, storage, bends, linear }
+  return { d, flows, fullX: [], fullY: [], film, storage, areas, capacities, bends, linear }
+}
+
+function areasOf({ grid: { columns, rows, xEdges, yEdges } }: Discretised): Float64Array {
+  const areas = new Float64Array(columns * rows)
+  for (let j = 0; j < rows; j++) {
+    const height = (yEdges[j + 1] as number) - (yEdges[j] as number)
+    for (let i = 0; i < columns; i++) {
+      areas[j * columns + i] = height * ((xEdges[i + 1] as number) - (xEdges[i] as number))
+    }
+  }
+  return areas
+}
+
+function capacitiesOf(
+  { active, profileOf }: Discretised,
+  areas: Float64Array,
+  storage: ProfileStorage[],
+): Float64Array {
+  return areas.map((area, cell) => {
+    return active[cell] === 1 ? area * (storage[profileOf[cell] as number] as ProfileStorage).full : 0
+  })
 }
 
 /** A matrix of zeros for the model's cells; symmetric where confined, where opposite faces share their coefficient. */
@@ -446,34 +473,63 @@ function confinedFaces(
   const { columns, rows } = d.grid
   const split = columnFaceCount(d.grid)
   for (let j = 0; j < rows; j++) {
+    const firstFace = j * (columns + 1) + 1
     for (let i = 0; i < columns; i++) {
       const cell = j * columns + i
-      if (i < columns - 1)
-        link(cell, cell + 1, conductance[j * (columns + 1) + i + 1] as number, matrix?.east)
-      if (j < rows - 1) {
-        const face = split + cell + columns
-        link(cell, cell + columns, conductance[face] as number, matrix?.north)
+      const h = heads[cell] as number
+      const held = (fixedBy[cell] as number) >= 0
+      let net = imbalance[cell] as number
+      // In confined flow a link of the matrix is one number for both its cells. There is none behind the last column.
+      const east = i < columns - 1 ? (conductance[firstFace + i] as number) : 0
+      if (east !== 0) {
+        const q = east * (h - (heads[cell + 1] as number))
+        net -= q
+        imbalance[cell + 1] = (imbalance[cell + 1] as number) + q
+        const otherHeld = (fixedBy[cell + 1] as number) >= 0
+        if (held || otherHeld) force(forcing, cell, cell + 1, held, otherHeld, Math.abs(q))
+        if (matrix) addLink(matrix, matrix.east, cell, cell + 1, held, otherHeld, east)
       }
+      const north = j < rows - 1 ? (conductance[split + cell + columns] as number) : 0
+      if (north !== 0) {
+        const q = north * (h - (heads[cell + columns] as number))
+        net -= q
+        imbalance[cell + columns] = (imbalance[cell + columns] as number) + q
+        const otherHeld = (fixedBy[cell + columns] as number) >= 0
+        if (held || otherHeld) force(forcing, cell, cell + columns, held, otherHeld, Math.abs(q))
+        if (matrix) addLink(matrix, matrix.north, cell, cell + columns, held, otherHeld, north)
+      }
+      imbalance[cell] = net
     }
   }
-  /** In confined flow a link of the matrix is one number for both its cells. */
-  function link(low: number, high: number, c: number, links: Float64Array | undefined): void {
-    if (c === 0) return
-    const q = c * ((heads[low] as number) - (heads[high] as number))
-    imbalance[low] = (imbalance[low] as number) - q
-    imbalance[high] = (imbalance[high] as number) + q
-    const lowFixed = (fixedBy[low] as number) >= 0
-    const highFixed = (fixedBy[high] as number) >= 0
-    if (highFixed) forcing[low] = (forcing[low] as number) + Math.abs(q)
-    if (lowFixed) forcing[high] = (forcing[high] as number) + Math.abs(q)
-    if (!matrix || !links) return
-    const { diag, own } = matrix
-    diag[low] = (diag[low] as number) + c
-    diag[high] = (diag[high] as number) + c
-    if (highFixed) own[low] = (own[low] as number) + c
-    if (lowFixed) own[high] = (own[high] as number) + c
-    if (!lowFixed && !highFixed) links[low] = c
-  }
+}
+
+/** What flows between a held cell and a free one forces the free one. */
+function force(
+  forcing: Float64Array,
+  low: number,
+  high: number,
+  lowHeld: boolean,
+  highHeld: boolean,
+  q: number,
+): void {
+  if (highHeld) forcing[low] = (forcing[low] as number) + q
+  if (lowHeld) forcing[high] = (forcing[high] as number) + q
+}
+
+function addLink(
+  { diag, own }: Matrix,
+  links: Float64Array,
+  low: number,
+  high: number,
+  lowHeld: boolean,
+  highHeld: boolean,
+  c: number,
+): void {
+  diag[low] = (diag[low] as number) + c
+  diag[high] = (diag[high] as number) + c
+  if (highHeld) own[low] = (own[low] as number) + c
+  if (lowHeld) own[high] = (own[high] as number) + c
+  if (!lowHeld && !highHeld) links[low] = c
 }
 
 /** Flows through the faces between cells of unconfined ground, into the balances and the matrix. */
@@ -550,41 +606,34 @@ function addStorage(
   matrix: Matrix | null,
   { interval, before }: StorageTerm,
 ): void {
-  const { d, storage, film } = model
-  const { columns, rows, xEdges, yEdges } = d.grid
-  for (let j = 0; j < rows; j++) {
-    const height = (yEdges[j + 1] as number) - (yEdges[j] as number)
-    for (let i = 0; i < columns; i++) {
-      const cell = j * columns + i
-      if (d.active[cell] !== 1) continue
-      const area = height * ((xEdges[i + 1] as number) - (xEdges[i] as number))
-      const own = storage[d.profileOf[cell] as number] as ProfileStorage
-      const h = heads[cell] as number
-      const rate = (area * storedAt(own, d.unconfined, film, h) - (before[cell] as number)) / interval
-      imbalance[cell] = (imbalance[cell] as number) - rate
-      forcing[cell] = (forcing[cell] as number) + Math.abs(rate)
-      if (!matrix) continue
-      const slope = (area * storageSlopeAt(own, d.unconfined, film, h)) / interval
-      matrix.diag[cell] = (matrix.diag[cell] as number) + slope
-      matrix.own[cell] = (matrix.own[cell] as number) + slope
-    }
+  const { d, areas, capacities, storage, film } = model
+  for (let cell = 0; cell < heads.length; cell++) {
+    if (d.active[cell] !== 1) continue
+    const h = heads[cell] as number
+    const own = storage[d.profileOf[cell] as number] as ProfileStorage
+    const area = areas[cell] as number
+    const stored = capacities ? (capacities[cell] as number) * h : area * storedAt(own, film, h)
+    const rate = (stored - (before[cell] as number)) / interval
+    imbalance[cell] = (imbalance[cell] as number) - rate
+    forcing[cell] = (forcing[cell] as number) + Math.abs(rate)
+    if (!matrix) continue
+    const capacity = capacities ? (capacities[cell] as number) : area * storageSlopeAt(own, film, h)
+    matrix.diag[cell] = (matrix.diag[cell] as number) + capacity / interval
+    matrix.own[cell] = (matrix.own[cell] as number) + capacity / interval
   }
 }
 
 /** Water stored in every cell at the given heads, from an arbitrary zero; volume, 0 where there is no ground. */
 export function storedVolumes(model: FlowModel, heads: Float64Array): Float64Array {
-  const { d, storage, film } = model
-  const { columns, rows, xEdges, yEdges } = d.grid
-  const volumes = new Float64Array(columns * rows)
-  for (let j = 0; j < rows; j++) {
-    const height = (yEdges[j + 1] as number) - (yEdges[j] as number)
-    for (let i = 0; i < columns; i++) {
-      const cell = j * columns + i
-      if (d.active[cell] !== 1) continue
-      const area = height * ((xEdges[i + 1] as number) - (xEdges[i] as number))
-      const own = storage[d.profileOf[cell] as number] as ProfileStorage
-      volumes[cell] = area * storedAt(own, d.unconfined, film, heads[cell] as number)
-    }
+  const { d, areas, capacities, storage, film } = model
+  const volumes = new Float64Array(heads.length)
+  for (let cell = 0; cell < heads.length; cell++) {
+    if (d.active[cell] !== 1) continue
+    const h = heads[cell] as number
+    const own = storage[d.profileOf[cell] as number] as ProfileStorage
+    volumes[cell] = capacities
+      ? (capacities[cell] as number) * h
+      : (areas[cell] as number) * storedAt(own, film, h)
   }
   return volumes
 }

@@ -64,11 +64,10 @@ function layerAbove(profile: Profile, layer: number): boolean {
 }
 
 /**
- * Water stored per unit of plan area at head `h`, from an arbitrary zero. Confined: full x h. Unconfined: the yield of
- * what is wet and the integral of specific storage x saturated thickness; continuous at the top.
+ * Water stored per unit of plan area of unconfined ground at head `h`, from an arbitrary zero: the yield of what is wet
+ * and the integral of specific storage x saturated thickness; continuous at the top.
  */
-export function storedAt(storage: ProfileStorage, unconfined: boolean, film: number, h: number): number {
-  if (!unconfined) return storage.full * h
+export function storedAt(storage: ProfileStorage, film: number, h: number): number {
   const { profile, specificStorage, specificYield } = storage
   const wet = (profile.base[0] as number) + film
   const level = Math.max(h, wet)
@@ -82,13 +81,7 @@ export function storedAt(storage: ProfileStorage, unconfined: boolean, film: num
 }
 
 /** d stored / d h, for `storedAt`. */
-export function storageSlopeAt(
-  storage: ProfileStorage,
-  unconfined: boolean,
-  film: number,
-  h: number,
-): number {
-  if (!unconfined) return storage.full
+export function storageSlopeAt(storage: ProfileStorage, film: number, h: number): number {
   const { profile, specificStorage, specificYield } = storage
   if (h < (profile.base[0] as number) + film) return dryShare * (specificYield[0] as number)
   let slope = 0
