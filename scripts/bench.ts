@@ -147,6 +147,7 @@ function wholeRun(name: string, cells: number): void {
   row([
     time.what.padEnd(34),
     `${time.seconds.toFixed(2).padStart(8)} s`,
+    `${((100 * time.linearSeconds) / time.seconds).toFixed(0).padStart(3)} % in linear solves`,
     `${String(time.iterations).padStart(7)} iterations`,
     `residual ${time.residual.toExponential(1)}`,
     time.converged ? 'converged' : 'NOT CONVERGED',

@@ -9,16 +9,19 @@ import {
 } from './flow'
 import { type FlowField, planField } from './flow-field'
 import { freeSurfaceBalancer } from './free-surface'
-import type { Kernels } from './linear/kernels'
-import { type LinearStep, linearStepOf, type Method, mostIterations } from './linear-step'
+import {
+  type LinearStep,
+  type LinearStepOptions,
+  linearStepOf,
+  type Method,
+  mostIterations,
+} from './linear-step'
 import { type Balancing, balanceCells, balancingOf, type Progress, type Watch } from './newton'
 import { reduceWells } from './reduced-wells'
 
 export type { Progress }
 
-export interface SolverOptions extends Watch {
-  /** Compiled kernels of the fast method; without them their TypeScript twins serve. */
-  kernels?: Kernels
+export interface SolverOptions extends Watch, LinearStepOptions {
   /** Takes every step in time as two of half its length. */
   halveSteps?: boolean
 }
@@ -70,7 +73,7 @@ export function balancerOf(
 ): Balancer {
   if (d.model.flow === 'free surface') return freeSurfaceBalancer(d, method, tolerance, options)
   const flow = flowModelOf(d)
-  const step = linearStepOf(method, d, options.kernels)
+  const step = linearStepOf(method, d, options)
   const matrix = emptyMatrix(flow)
   const most = mostIterations(method, d.active.length)
   let interval = 0

@@ -40,7 +40,7 @@ export function freeSurfaceBalancer(
   const flow = flowModelOf(d)
   const balance = sectionBalanceOf(d)
   const wet = new Uint8Array(d.active.length)
-  const step = linearStepOf(method, { ...d, active: wet }, options.kernels)
+  const step = linearStepOf(method, { ...d, active: wet }, options)
   return {
     d,
     solve(start, storage) {

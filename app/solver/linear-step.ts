@@ -46,14 +46,34 @@ export interface LinearStep {
   kernels: string
 }
 
+export interface LinearStepOptions {
+  /** Compiled kernels of the fast method; without them their TypeScript twins serve. */
+  kernels?: Kernels
+  /** Told how long each solve took, set-up included: seconds. */
+  onLinearSolve?: (seconds: number) => void
+}
+
 /** Sweeps (SOR) or cycles (multigrid) allowed for a model of `cells`. */
 export function mostIterations(method: Method, cells: number): number {
   return method === 'sor' ? Math.min(60_000, Math.max(200, Math.floor(2e11 / cells))) : 2000
 }
 
 /** The step solver of a method for a model's grid. */
-export function linearStepOf(method: Method, d: Discretised, kernels: Kernels | undefined): LinearStep {
-  return method === 'sor' ? relaxation(d) : multigrid(d, kernels)
+export function linearStepOf(
+  method: Method,
+  d: Discretised,
+  { kernels, onLinearSolve }: LinearStepOptions,
+): LinearStep {
+  const step = method === 'sor' ? relaxation(d) : multigrid(d, kernels)
+  if (!onLinearSolve) return step
+  const { solve } = step
+  step.solve = (matrix, rightHandSide, options) => {
+    const started = performance.now()
+    const outcome = solve(matrix, rightHandSide, options)
+    onLinearSolve((performance.now() - started) / 1000)
+    return outcome
+  }
+  return step
 }
 
 /** Successive over-relaxation (sor.ts), zones that hang together corrected as a whole where that is worth it. */

@@ -43,7 +43,7 @@ function solverOf(
   { kernels, isCancelled }: LinearisedOptions,
 ): (b: Float64Array) => Float64Array | null {
   const { d } = flow
-  const step = linearStepOf('multigrid', d, kernels)
+  const step = linearStepOf('multigrid', d, { kernels })
   return (given) => {
     const b = given.slice()
     let norm = 0

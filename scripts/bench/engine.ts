@@ -74,6 +74,8 @@ function varied(cells: number, changes: Partial<Model>): Model {
 export interface EngineTime {
   what: string
   seconds: number
+  /** Of these in linear solves, set-up included. */
+  linearSeconds: number
   iterations: number
   converged: boolean
   residual: number
@@ -83,10 +85,17 @@ export interface EngineTime {
 
 function timed(what: string, model: Model, kernels: Kernels): EngineTime {
   const started = performance.now()
-  const { result } = solveModel(model, { kernels })
+  let linearSeconds = 0
+  const { result } = solveModel(model, {
+    kernels,
+    onLinearSolve: (seconds) => {
+      linearSeconds += seconds
+    },
+  })
   return {
     what,
     seconds: (performance.now() - started) / 1000,
+    linearSeconds,
     iterations: result.iterations,
     converged: result.converged,
     residual: result.residual,
