@@ -336,8 +336,10 @@ describe.each([
       const cells = field.reduce((sum, value) => sum + value, 0)
       const materials = entry.materials.reduce((sum, { perLnK }) => sum + perLnK, 0)
       const scale = entry.materials.reduce((sum, { perLnK }) => sum + Math.abs(perLnK), 0)
-      // The correction at a wall's end knows K too, which the field leaves out; unconfined levels at faces move.
-      expect(Math.abs(cells - materials)).toBeLessThan((model.flow === 'unconfined' ? 0.02 : 0.005) * scale)
+      // The correction at a wall's end knows K too, which the field leaves out; unconfined levels at faces move. Where
+      // all K together are worth nothing, rounding is left.
+      const share = model.flow === 'unconfined' ? 0.02 : 0.005
+      expect(Math.abs(cells - materials)).toBeLessThan(share * scale + 1e-10)
     }
   })
 })
