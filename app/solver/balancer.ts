@@ -26,15 +26,8 @@ export interface SolverOptions extends Watch, LinearStepOptions {
   halveSteps?: boolean
 }
 
-/** Heads that balance, and how far they do. */
-export interface Outcome {
-  flow: FlowModel
-  /** Above the reference. */
-  heads: Float64Array
-  /** Share of each cell's pores that is full; null: wherever there is ground (plan flow and saturated sections). */
-  saturation: Float64Array | null
-  /** Flow of each well into the ground, as achieved. */
-  rates: number[]
+/** How far iterations came, and with what. */
+export interface Convergence {
   converged: boolean
   cancelled: boolean
   /** Stopped where rounding lets the residual fall no further. */
@@ -43,11 +36,24 @@ export interface Outcome {
   /** What did the arithmetic: 'typescript' or the name of compiled kernels. */
   kernels: string
   iterations: number
+  /** Of several steps in time the largest. */
   residual: number
+  /** Estimate of the largest error of any head left by stopping here; over several steps in time their sum. */
   headError: number
   /** Flows below this are within what the residual leaves open: volume/time. */
   unresolvedFlow: number
   history: { iterations: number; residual: number }[]
+}
+
+/** Heads that balance, and how far they do. */
+export interface Outcome extends Convergence {
+  flow: FlowModel
+  /** Above the reference. */
+  heads: Float64Array
+  /** Share of each cell's pores that is full; null: wherever there is ground (plan flow and saturated sections). */
+  saturation: Float64Array | null
+  /** Flow of each well into the ground, as achieved. */
+  rates: number[]
 }
 
 /** Balances the cells of one stage, in steady flow or over steps in time, in memory that it keeps. */

@@ -1,7 +1,6 @@
-import type { Outcome } from './balancer'
+import type { Convergence, Outcome } from './balancer'
 import type { Discretised } from './discretise'
 import type { FlowField } from './flow-field'
-import type { Method } from './linear-step'
 import type { Moment, Totals } from './moment'
 
 /** The ground at the end of a reported step, with the flows over that step; in steady flow, the steady state. */
@@ -14,7 +13,7 @@ export interface Report {
 }
 
 /** What one run of a model computed and how well, steady or through its stages. */
-export interface RunRecord {
+export interface RunRecord extends Convergence {
   /** The ground before the first step; null in steady flow. */
   initial: Outcome | null
   /** At least one. */
@@ -23,18 +22,6 @@ export interface RunRecord {
   volumes: Totals[]
   /** Steps in time. */
   steps: number
-  converged: boolean
-  cancelled: boolean
-  atRoundingFloor: boolean
-  method: Method
-  kernels: string
-  iterations: number
-  /** The largest of all steps. */
-  residual: number
-  /** Estimate of the largest error of any head left by stopping iterations here; the sum over all steps. */
-  headError: number
-  unresolvedFlow: number
-  history: { iterations: number; residual: number }[]
   /** Every flow of the last report; null before there is one. */
   lastField: (() => FlowField) | null
 }
